@@ -1,0 +1,1 @@
+"""Decide which sites to open, keep or close and which suppliers to sign."""

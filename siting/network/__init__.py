@@ -1,0 +1,1 @@
+"""What a study means in numbers: distances, freight, yearly money, arrays."""

@@ -1,0 +1,1 @@
+"""What the analyst gives: tables and settings, read, checked and frozen."""
