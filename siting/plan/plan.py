@@ -159,7 +159,7 @@ class CustomerLine:
     cost_to_serve: float
     """Money a year: own freight, delivery, handling, carbon and price, inbound at its site's average. No charges."""
     marginal_cost: Mapping[str, float]
-    """Money per unit of each good: dual of the demand row, verdicts held. Empty when single-sourced. Not for pricing."""
+    """Money per unit of each good: dual of the demand row, verdicts held; not for pricing. Empty if single-sourced."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

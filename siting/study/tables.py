@@ -16,13 +16,12 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from siting.study.settings import Settings
-
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
     from siting.arrays import Flags, Floats, Positions
     from siting.errors import Fault
+    from siting.study.settings import Settings
 
 IMPLIED_GOOD = "goods"
 """Name of the only good of a study without a `goods` table."""
