@@ -8,44 +8,25 @@ good a year; load = amount x the good's load.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+import numpy as np
+
+from siting.network.annualise import factors_of
+from siting.network.freight import LegLanes
+from siting.network.legs import direct_lanes, inbound_lanes, outbound_lanes
+from siting.network.parties import Parties
+from siting.study.tables import SiteRuling, SiteStanding, SupplierRuling, SupplierStanding
+
 if TYPE_CHECKING:
+    from collections.abc import Iterable
+
     from siting.arrays import Flags, Floats, Positions
     from siting.study.tables import RuleKind, Study
 
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class LegLanes:
-    """
-    The lanes of one leg, sorted by origin, destination and good; every array of shape (lanes,).
-
-    A lane is one origin, destination and good. Only lanes that exist are here: reach, bars, offers, demand above 0 and
-    single sourcing (origin too small to hold the customer whole) have removed the others.
-    """
-
-    origin: Positions
-    """Position of a supplier (inbound, direct) or a site (outbound)."""
-    destination: Positions
-    """Position of a site (inbound) or a customer (outbound, direct)."""
-    good: Positions
-    km: Floats
-    """Road km; NaN where nothing gives a distance (then unit_cost came from `lanes`)."""
-    km_given: Flags
-    """True where `lanes.road_km` gives the distance, False where it is estimated (or NaN)."""
-    freight: Floats
-    """Money per unit of the good, without the delivery charge."""
-    delivery: Floats
-    """Money per unit of the good for deliveries at drop_size; 0 inbound and where unit_cost is given."""
-    kg_co2e: Floats
-    """kg CO2e per unit of the good; 0 where no factor is set."""
-    cost: Floats
-    """All that moving one unit here costs: freight + delivery + carbon, + handling (outbound) or price (others)."""
-
-    def __len__(self) -> int:
-        """Return the number of lanes."""
-        return int(self.origin.shape[0])
+__all__ = ["LegLanes", "Network", "NetworkRule", "build_network"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -143,7 +124,7 @@ class Network:
     service_share: float
     """0 where not set."""
     annuity: float
-    """Yearly money per one-off money; 0 where the study has no one-off charge."""
+    """Yearly money per one-off money; 0 where the study sets no interest rate and life (no one-off charge)."""
 
     @property
     def two_echelons(self) -> bool:
@@ -152,5 +133,98 @@ class Network:
 
 
 def build_network(study: Study) -> Network:
-    """Return the numbers of a checked study."""
-    raise NotImplementedError
+    """
+    Return the numbers of a checked study.
+
+    Parameters
+    ----------
+    study
+        Checked: names agree, charges have an interest rate and a life, lanes that need a distance have one.
+
+    Returns
+    -------
+    network
+        Every array in the order of the study's tables; lanes sorted by origin, destination and good.
+
+    Raises
+    ------
+    SettingsError
+        If the interest rate or the life is out of its range.
+    """
+    parties = Parties.of(study)
+    settings, options, sites, suppliers = study.settings, study.options, study.sites, study.suppliers
+    annuity, worth = factors_of(settings)
+    proposed = _flags(option.standing is SiteStanding.PROPOSED for option in options)
+    running = _running_sites(study)
+    signed = _flags(row.standing is SupplierStanding.SIGNED for row in suppliers)
+    opening = _floats(option.opening_charge for option in options)
+    residual = _floats(option.residual_value for option in options)
+    signing = _floats(row.signing_charge for row in suppliers)
+    closing = np.where(running, _floats(row.closing_charge for row in sites), 0.0)
+    dropping = np.where(signed, _floats(row.dropping_charge for row in suppliers), 0.0)
+    return Network(
+        sites=parties.sites,
+        suppliers=parties.suppliers,
+        customers=parties.customers,
+        goods=parties.goods,
+        load=parties.load,
+        weight_t=parties.weight_t,
+        demand=parties.demand,
+        single_source=parties.single_source,
+        option_site=parties.option_site,
+        option_running=~proposed,
+        option_charge=_floats(option.yearly_charge for option in options)
+        + np.where(proposed, annuity * (opening - worth * residual), 0.0),
+        option_one_off=np.where(proposed, opening, 0.0),
+        option_capacity=parties.option_capacity,
+        option_least=_floats(option.least_throughput for option in options),
+        site_running=running,
+        site_closing=annuity * closing,
+        site_closing_one_off=closing,
+        site_pinned_open=_flags(row.ruling is SiteRuling.PINNED_OPEN for row in sites),
+        site_pinned_shut=_flags(row.ruling is SiteRuling.PINNED_SHUT for row in sites),
+        supplier_signed=signed,
+        supplier_charge=_floats(row.yearly_charge for row in suppliers) + np.where(signed, 0.0, annuity * signing),
+        supplier_one_off=np.where(signed, 0.0, signing),
+        supplier_dropping=annuity * dropping,
+        supplier_dropping_one_off=dropping,
+        supplier_capacity=parties.supplier_capacity,
+        supplier_least=_floats(row.least_yearly for row in suppliers),
+        supplier_pinned_signed=_flags(row.ruling is SupplierRuling.PINNED_SIGNED for row in suppliers),
+        supplier_pinned_unsigned=_flags(row.ruling is SupplierRuling.PINNED_UNSIGNED for row in suppliers),
+        offer_capacity=parties.offer_capacity,
+        offer_least=parties.offer_least,
+        inbound=inbound_lanes(study, parties),
+        outbound=outbound_lanes(study, parties),
+        direct=direct_lanes(study, parties),
+        rules=_rules(study),
+        fewest_sites=settings.fewest_sites or 0,
+        most_sites=len(sites) if settings.most_sites is None else settings.most_sites,
+        one_off_budget=math.inf if settings.one_off_budget is None else settings.one_off_budget,
+        service_km=math.inf if settings.service_km is None else settings.service_km,
+        service_share=settings.service_share or 0.0,
+        annuity=annuity,
+    )
+
+
+def _floats(numbers: Iterable[float]) -> Floats:
+    return np.fromiter(numbers, dtype=np.float64)
+
+
+def _flags(answers: Iterable[bool]) -> Flags:
+    return np.fromiter(answers, dtype=np.bool_)
+
+
+def _running_sites(study: Study) -> Flags:
+    """Return where a site runs: as its row says, or, where it has sizes, as one of them says."""
+    sizes = {size.site for size in study.sizes if size.standing is SiteStanding.RUNNING}
+    return _flags(row.standing is SiteStanding.RUNNING or row.site in sizes for row in study.sites)
+
+
+def _rules(study: Study) -> tuple[NetworkRule, ...]:
+    member = {row.site: ("site", i) for i, row in enumerate(study.sites)}
+    member |= {row.supplier: ("supplier", k) for k, row in enumerate(study.suppliers)}
+    return tuple(
+        NetworkRule(kind=row.rule, members=tuple(member[name] for name in row.members), number=row.number)
+        for row in study.rules
+    )
