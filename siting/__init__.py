@@ -1,1 +1,112 @@
-"""Decide which sites to open, keep or close and which suppliers to sign."""
+"""
+Decide which sites to open, keep or close and which suppliers to sign.
+
+Every public name is fetched when it is first used, so that importing the package costs nothing.
+"""
+
+from __future__ import annotations
+
+import importlib
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from siting.errors import AuditError, EngineError, Fault, PlanFileError, SettingsError, SitingError, StudyError
+    from siting.listener import Listener, Progress, Silent, Stop
+    from siting.network.network import Network, build_network
+    from siting.plan.audit import audit
+    from siting.plan.folder import read_plan_folder, write_plan_folder
+    from siting.plan.plan import Answer, Plan, Today
+    from siting.plan.proof import Outcome, Proof
+    from siting.solving.solve import solve
+    from siting.study.demo import demo_folder
+    from siting.study.fingerprint import fingerprint
+    from siting.study.read import read_study
+    from siting.study.settings import Settings, SolveSettings
+    from siting.study.tables import Study
+    from siting.study.write import write_study, write_workbook
+
+    __version__: str
+
+__all__ = [
+    "Answer",
+    "AuditError",
+    "EngineError",
+    "Fault",
+    "Listener",
+    "Network",
+    "Outcome",
+    "Plan",
+    "PlanFileError",
+    "Progress",
+    "Proof",
+    "Settings",
+    "SettingsError",
+    "Silent",
+    "SitingError",
+    "SolveSettings",
+    "Stop",
+    "Study",
+    "StudyError",
+    "Today",
+    "__version__",
+    "audit",
+    "build_network",
+    "demo_folder",
+    "fingerprint",
+    "read_plan_folder",
+    "read_study",
+    "solve",
+    "write_plan_folder",
+    "write_study",
+    "write_workbook",
+]
+
+_HOMES = {
+    "siting.errors": (
+        "AuditError",
+        "EngineError",
+        "Fault",
+        "PlanFileError",
+        "SettingsError",
+        "SitingError",
+        "StudyError",
+    ),
+    "siting.listener": ("Listener", "Progress", "Silent", "Stop"),
+    "siting.network.network": ("Network", "build_network"),
+    "siting.plan.audit": ("audit",),
+    "siting.plan.folder": ("read_plan_folder", "write_plan_folder"),
+    "siting.plan.plan": ("Answer", "Plan", "Today"),
+    "siting.plan.proof": ("Outcome", "Proof"),
+    "siting.solving.solve": ("solve",),
+    "siting.study.demo": ("demo_folder",),
+    "siting.study.fingerprint": ("fingerprint",),
+    "siting.study.read": ("read_study",),
+    "siting.study.settings": ("Settings", "SolveSettings"),
+    "siting.study.tables": ("Study",),
+    "siting.study.write": ("write_study", "write_workbook"),
+}
+
+
+def __getattr__(name: str) -> object:
+    """
+    Fetch a public name when it is first used.
+
+    Raises
+    ------
+    AttributeError
+        If the package has no such public name.
+    """
+    if name == "__version__":
+        return importlib.import_module("importlib.metadata").version("siting")
+    for home, names in _HOMES.items():
+        if name in names:
+            value: object = getattr(importlib.import_module(home), name)
+            globals()[name] = value
+            return value
+    msg = f"module {__name__!r} has no attribute {name!r}"
+    raise AttributeError(msg)
+
+
+def __dir__() -> list[str]:
+    """List the public names."""
+    return __all__

@@ -1,0 +1,99 @@
+"""The command-line shell: reads the command, hands it over, turns every error into one paragraph and an exit code."""
+
+from __future__ import annotations
+
+import argparse
+import os
+import sys
+from typing import TYPE_CHECKING
+
+from siting.commands import audit, check, plan
+from siting.commands.command import BAD_INPUT, FOUND, NO_PLAN_YET
+from siting.errors import SitingError
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+COMMANDS = (check, plan, audit)
+"""In the order of the help."""
+
+EXIT_CODES = (
+    "exit codes: 0 plan found and audited (check: no fault), 1 internal error, 2 bad input, 3 impossible, "
+    "4 stopped before any plan, 5 audit failed"
+)
+
+INTERNAL_ERROR = 1
+
+
+class _ShowVersion(argparse.Action):
+    """Print the version; it is looked up only when asked for, since the look-up takes time."""
+
+    def __call__(self, parser: argparse.ArgumentParser, *_rest: object) -> None:
+        """Print the version and end."""
+        from importlib.metadata import version
+
+        parser.exit(message=f"siting {version('siting')}\n")
+
+
+def make_parser() -> argparse.ArgumentParser:
+    """Return the parser of the whole command line."""
+    parser = argparse.ArgumentParser(
+        prog="siting",
+        description="Decide which sites to open, keep or close and which suppliers to sign, "
+        "with the cost of the plan proved to be within a stated distance of the best possible.",
+        epilog=EXIT_CODES,
+    )
+    parser.add_argument("--version", action=_ShowVersion, nargs=0, help="print the version and end")
+    commands = parser.add_subparsers(title="commands", metavar="COMMAND", required=True)
+    for command in COMMANDS:
+        command.add(commands)
+    return parser
+
+
+def main(given: Sequence[str] | None = None) -> int:
+    """
+    Run one command.
+
+    Parameters
+    ----------
+    given
+        The arguments; None = those of the process.
+
+    Returns
+    -------
+    exit_code
+        0 plan found and audited, 1 internal error, 2 bad input, 3 impossible, 4 stopped before any plan, 5 audit failed.
+    """
+    arguments = make_parser().parse_args(given)
+    try:
+        exit_code: int = arguments.run(arguments)
+        sys.stdout.flush()
+    except SitingError as error:
+        return _complain(str(error), error.exit_code)
+    except KeyboardInterrupt:
+        return _complain("Stopped before any plan was found.", NO_PLAN_YET)
+    except BrokenPipeError:  # whoever read the answer had enough of it, as `| head` does
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return FOUND
+    except OSError as error:
+        if not error.filename:
+            return _internal(error)
+        return _complain(f"{error.filename}: {error.strerror}. Check the path and its permissions.", BAD_INPUT)
+    except Exception as error:  # noqa: BLE001  (the last resort: a user gets a paragraph, never a traceback)
+        return _internal(error)
+    return exit_code
+
+
+def _internal(error: Exception) -> int:
+    if os.environ.get("SITING_DEBUG"):
+        raise error
+    return _complain(
+        f"Internal error, a fault of the program and not of the study: {type(error).__name__}: {error}. "
+        "Run the same command with SITING_DEBUG=1 in the environment to see where it happened.",
+        INTERNAL_ERROR,
+    )
+
+
+def _complain(text: str, exit_code: int) -> int:
+    sys.stderr.write(text.rstrip("\n") + "\n")
+    return exit_code

@@ -1,0 +1,104 @@
+"""`siting plan`: solve a study, audit the plan, show it, write it."""
+
+from __future__ import annotations
+
+import argparse
+from dataclasses import replace
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from siting.commands.command import FOUND, IMPOSSIBLE, NO_PLAN_YET, add_json, add_study, say, say_json
+
+if TYPE_CHECKING:
+    from siting.commands.command import Commands
+    from siting.plan.audit import AuditReport
+    from siting.plan.plan import Answer
+    from siting.study.settings import SolveSettings
+    from siting.study.tables import Study
+
+
+def add(commands: Commands) -> None:
+    """Add the command to the command line."""
+    from siting.study.settings import ENGINES
+
+    parser = commands.add_parser(
+        "plan",
+        help="find the plan: which sites to open, keep or close, which suppliers to sign",
+        description="Solve a study, audit the plan and print it. Ctrl-C stops and keeps the best plan so far.",
+    )
+    add_study(parser)
+    parser.add_argument("--out", metavar="DIR", type=Path, help="write the plan folder: plan, study, result tables")
+    parser.add_argument(
+        "--gap", type=_gap, metavar="FRACTION", help="stop within this fraction of the best; 1 %% is 0.01"
+    )
+    parser.add_argument("--time-limit", type=_seconds, metavar="SECONDS", help="stop after this long")
+    parser.add_argument("--engine", choices=ENGINES, help="how to search; auto picks")
+    parser.add_argument("--mps", metavar="FILE", type=Path, help="also write the exact model as free MPS")
+    parser.add_argument("--lp", metavar="FILE", type=Path, help="also write the exact model as an LP file")
+    parser.add_argument("--quiet", action="store_true", help="show no progress")
+    add_json(parser)
+    parser.set_defaults(run=run)
+
+
+def run(arguments: argparse.Namespace) -> int:
+    """
+    Solve, audit, write and print; return the exit code.
+
+    Raises
+    ------
+    SitingError
+        If the study has faults, the engine gives up, or the plan fails its audit.
+    """
+    from siting.commands.interrupt import run_stoppable
+    from siting.commands.progress import progress_on_stderr
+    from siting.listener import Stop
+    from siting.solving.solve import solve
+    from siting.study.demo import study_path
+    from siting.study.read import read_study
+
+    study = read_study(study_path(arguments.study))
+    _write_model(arguments, study)
+    settings = _solve_settings(arguments, study.settings.solve)
+    listener = progress_on_stderr(wanted=not (arguments.json or arguments.quiet))
+    stop = Stop()
+    answer = run_stoppable(lambda: solve(study, settings, listener=listener, stop=stop), stop)
+    report = _audited(study, answer)
+    if arguments.out:
+        _write_folder(arguments.out, study, answer, report)
+    _show(arguments, study, answer, report)
+    if answer.plan:
+        return FOUND
+    return IMPOSSIBLE if answer.proof.outcome == "impossible" else NO_PLAN_YET
+
+
+def _gap(text: str) -> float:
+    value = _number(text)
+    if not 0.0 <= value < 1.0:
+        msg = f"a gap is a fraction from 0 to below 1, got {text}; write 1 % as 0.01"
+        raise argparse.ArgumentTypeError(msg)
+    return value
+
+
+def _seconds(text: str) -> float:
+    value = _number(text)
+    if not 0.0 < value < float("inf"):
+        msg = f"a time limit is a number of seconds above 0, got {text}; write two minutes as 120"
+        raise argparse.ArgumentTypeError(msg)
+    return value
+
+
+def _number(text: str) -> float:
+    try:
+        return float(text)
+    except ValueError:
+        msg = f"{text!r} is not a number; write one such as 0.01 or 120"
+        raise argparse.ArgumentTypeError(msg) from None
+
+
+def _solve_settings(arguments: argparse.Namespace, of_study: SolveSettings) -> SolveSettings:
+    return replace(
+        of_study,
+        gap=of_study.gap if arguments.gap is None else arguments.gap,
+        time_limit_s=arguments.time_limit or of_study.time_limit_s,
+        engine=arguments.engine or of_study.engine,
+    )
