@@ -112,7 +112,7 @@ def find_lanes(ends: LegEnds, table: LaneTable, *, circuity: float, listed_only:
     keys, row = _listed(ends, table)
     if not listed_only:
         listed, setter = keys, row
-        keys = np.union1d(_grid(ends), listed)
+        keys = _merged(_grid(ends), listed)
         row = np.full(keys.shape[0], NO_ROW, dtype=np.int32)
         row[np.searchsorted(keys, listed)] = setter
     is_barred = np.append(table.barred, False)[row]  # NO_ROW takes the last element, here and below
@@ -151,6 +151,14 @@ def within_reach(lanes: FoundLanes, reach_km: Floats) -> FoundLanes:
         A lane longer by a relative `EDGE` is still within reach.
     """
     return lanes.only(~(lanes.km > reach_km[lanes.destination] * (1.0 + EDGE)))
+
+
+def _merged(some: Keys, others: Keys) -> Keys:
+    """Return the sorted keys in either; both are sorted and hold no key twice."""
+    if not (some.size and others.size):
+        return some if some.size else others
+    nearest = np.minimum(np.searchsorted(some, others), some.size - 1)
+    return np.sort(np.concatenate([some, others[some[nearest] != others]]), kind="stable")
 
 
 def _grid(ends: LegEnds) -> Keys:

@@ -123,7 +123,7 @@ def _holding_whole(lanes: FoundLanes, parties: Parties, capacity: Floats, good_c
     fits = whole[lanes.destination] <= capacity[lanes.origin] * (1.0 + EDGE)
     fits &= wanted <= good_capacity[lanes.origin, lanes.good] * (1.0 + EDGE)
     pair = lanes.origin.astype(np.int64) * len(parties.customers) + lanes.destination
-    _, of_pair = np.unique(pair, return_inverse=True)
+    of_pair = np.cumsum(np.append(False, pair[1:] != pair[:-1]))  # a pair lies together
     fitting = np.bincount(of_pair, weights=fits)[of_pair]
     needed = np.count_nonzero(parties.demand > 0, axis=1)[lanes.destination]
     return lanes.only(~asked | (fits & (fitting >= needed)))
