@@ -1,0 +1,511 @@
+"""
+Find the best plan of a small study by trying every verdict: the witness that shares nothing with the product.
+
+Costs are derived here from the tables with loops and the formulas of the documentation; nothing of `siting.network` or
+`siting.solving` is used. Flows come from `networkx.network_simplex` where the data are whole numbers of one good, and
+from CBC elsewhere: never from HiGHS, which the product uses.
+
+Sets of verdicts are visited from the cheapest lower bound up (charges + each demand at its cheapest way), and left out
+only once that bound is above the best plan found, so that the answer is the same as trying them all.
+"""
+
+from __future__ import annotations
+
+import itertools
+import math
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
+
+import networkx as nx
+import pulp
+from pyproj import Geod
+
+from siting.study.tables import (
+    Leg,
+    RuleKind,
+    SiteRuling,
+    SiteStanding,
+    SupplierRuling,
+    SupplierStanding,
+)
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator, Mapping
+
+    from siting.study.tables import OfferRow, SizeRow, Study
+
+    Pair = tuple[str, str]
+    """Customer and good."""
+    Way = tuple[Leg, str, str, str]
+    """Leg, origin, destination and good of one lane."""
+
+SLACK = 1e-9
+"""Relative: sums of quarters that agree to this are equal."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Lane:
+    """A lane that exists."""
+
+    km: float | None
+    cost: float
+    """Money per unit of the good, everything included."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Verdicts:
+    """One set of verdicts."""
+
+    options: Mapping[str, SizeRow | None]
+    """What is open at each site, None = nothing."""
+    signed: frozenset[str]
+    charge: float
+    """Money a year of all verdicts."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Best:
+    """The cheapest plan there is."""
+
+    cost: float
+    open_sites: frozenset[str]
+    sizes: Mapping[str, str]
+    signed: frozenset[str]
+
+
+@dataclass(kw_only=True)
+class Enumeration:
+    """Every verdict of one study, priced."""
+
+    study: Study
+    witness: str = "auto"
+    """`simplex`, `cbc`, or `auto`: network simplex where the data allow it."""
+    flows_solved: int = 0
+    demand: dict[Pair, float] = field(init=False)
+    lanes: dict[Way, Lane] = field(init=False)
+
+    def __post_init__(self) -> None:
+        """Derive demand and lanes from the tables."""
+        self.demand = {(row.customer, row.good): row.demand for row in self.study.all_demands}
+        self.load = {row.good: row.load for row in self.study.all_goods}
+        self.weight = {row.good: row.weight_t for row in self.study.all_goods}
+        self.offers: dict[Pair, OfferRow] = {(row.supplier, row.good): row for row in self.study.all_offers}
+        self.lanes = dict(_lanes(self.study, self.demand, self.offers))
+        self.single = {row.customer for row in self.study.customers if self.study.is_single_sourced(row)}
+        self.whole = self._is_whole()
+
+    def best(self) -> Best | None:
+        """Return the cheapest plan, or None where no set of verdicts can serve the demand."""
+        ranked = []
+        for verdicts in self._verdicts():
+            bound = self._lower_bound(verdicts)
+            if bound is not None:
+                ranked.append((bound, len(ranked), verdicts))
+        best: Best | None = None
+        for bound, _, verdicts in sorted(ranked, key=lambda entry: entry[:2]):
+            if best is not None and bound >= best.cost - SLACK * abs(best.cost):
+                break
+            flow = self._cheapest_flow(verdicts, math.inf if best is None else best.cost - verdicts.charge)
+            if flow is not None and (best is None or flow + verdicts.charge < best.cost):
+                best = _as_best(flow + verdicts.charge, verdicts)
+        return best
+
+    def cost_of(self, sizes: Mapping[str, str], signed: frozenset[str] = frozenset()) -> float | None:
+        """Return the cost with exactly these sites open (site to size) and suppliers signed; None where impossible."""
+        for verdicts in self._verdicts():
+            chosen = {site: option.size for site, option in verdicts.options.items() if option is not None}
+            if chosen == dict(sizes) and verdicts.signed == signed and self._lower_bound(verdicts) is not None:
+                flow = self._cheapest_flow(verdicts, math.inf)
+                return None if flow is None else flow + verdicts.charge
+        return None
+
+    def _verdicts(self) -> Iterator[Verdicts]:
+        """Yield every set of verdicts that rulings, rules, counts and the budget allow."""
+        study = self.study
+        choices: list[list[SizeRow | None]] = []
+        for row in study.sites:
+            options: list[SizeRow | None] = [option for option in study.options if option.site == row.site]
+            if row.ruling is SiteRuling.PINNED_SHUT:
+                options = []
+            choices.append(options if row.ruling is SiteRuling.PINNED_OPEN else [None, *options])
+        takes = [
+            {SupplierRuling.FREE: (False, True), SupplierRuling.PINNED_SIGNED: (True,)}.get(row.ruling, (False,))
+            for row in study.suppliers
+        ]
+        for opened in itertools.product(*choices):
+            options_of = {row.site: option for row, option in zip(study.sites, opened, strict=True)}
+            for taken in itertools.product(*takes):
+                signed = frozenset(row.supplier for row, yes in zip(study.suppliers, taken, strict=True) if yes)
+                charge, one_off = _charges(study, options_of, signed)
+                if _allowed(study, options_of, signed, one_off):
+                    yield Verdicts(options=options_of, signed=signed, charge=charge)
+
+    def _ways(self, verdicts: Verdicts) -> dict[Way, Lane]:
+        """Return the lanes whose ends are open and signed."""
+        shut = {site for site, option in verdicts.options.items() if option is None}
+        return {
+            way: lane
+            for way, lane in self.lanes.items()
+            if way[1] not in shut
+            and way[2] not in shut
+            and (way[0] is Leg.OUTBOUND or way[1] in verdicts.signed)
+        }
+
+    def _origins(self, ways: Mapping[Way, Lane], pair: Pair) -> dict[str, float]:
+        """Return the least money per unit from each origin to one customer and good."""
+        customer, good = pair
+        least: dict[str, float] = {}
+        for (leg, origin, destination, of), lane in ways.items():
+            if destination != customer or of != good or leg is Leg.INBOUND:
+                continue
+            cost = lane.cost
+            if leg is Leg.OUTBOUND and self.study.suppliers:
+                cost += min(
+                    (
+                        inbound.cost
+                        for (to, _, site, moved), inbound in ways.items()
+                        if to is Leg.INBOUND and site == origin and moved == good
+                    ),
+                    default=math.inf,
+                )
+            if math.isfinite(cost):
+                least[origin] = cost
+        return least
+
+    def _lower_bound(self, verdicts: Verdicts) -> float | None:
+        """Return charges + each demand at its cheapest way; None where some demand has no way."""
+        ways = self._ways(verdicts)
+        total = verdicts.charge
+        for pair, amount in self.demand.items():
+            costs = self._origins(ways, pair)
+            if not costs:
+                return None
+            total += amount * min(costs.values())
+        return total
+
+    def _cheapest_flow(self, verdicts: Verdicts, below: float) -> float | None:
+        """Return the cheapest flow, over every assignment of single-sourced customers; None where none is below."""
+        ways = self._ways(verdicts)
+        single = [
+            customer for customer in sorted(self.single) if any(name == customer for name, _ in self.demand)
+        ]
+        costs = {pair: self._origins(ways, pair) for pair in self.demand}
+        rest = sum(
+            amount * min(costs[pair].values()) for pair, amount in self.demand.items() if pair[0] not in single
+        )
+        best: float | None = None
+        for assignment in self._assignments(verdicts, single, costs):
+            bound = rest + sum(
+                amount * costs[pair][assignment[pair[0]]]
+                for pair, amount in self.demand.items()
+                if pair[0] in assignment
+            )
+            ceiling = below if best is None else min(below, best)
+            if math.isfinite(ceiling) and bound >= ceiling - SLACK * abs(ceiling):
+                continue
+            allowed = {
+                way: lane
+                for way, lane in ways.items()
+                if way[0] is Leg.INBOUND or assignment.get(way[2], way[1]) == way[1]
+            }
+            flow = self._flow(verdicts, allowed)
+            if flow is not None and (best is None or flow < best):
+                best = flow
+        return best
+
+    def _assignments(
+        self, verdicts: Verdicts, single: list[str], costs: Mapping[Pair, Mapping[str, float]]
+    ) -> Iterator[dict[str, str]]:
+        """Yield every assignment of the single-sourced customers to one origin each, within the sites' capacity."""
+        if not single:
+            yield {}
+            return
+        head, *tail = single
+        pairs = [pair for pair in self.demand if pair[0] == head]
+        origins = set.intersection(*(set(costs[pair]) for pair in pairs))
+        for origin in sorted(origins):
+            for others in self._assignments(verdicts, tail, costs):
+                assignment = {head: origin, **others}
+                option = verdicts.options.get(origin)
+                if option is None or self._load_at(origin, assignment) <= option.capacity * (1 + SLACK):
+                    yield assignment
+
+    def _load_at(self, origin: str, assignment: Mapping[str, str]) -> float:
+        return sum(
+            amount * self.load[good]
+            for (customer, good), amount in self.demand.items()
+            if assignment.get(customer) == origin
+        )
+
+    def _flow(self, verdicts: Verdicts, ways: Mapping[Way, Lane]) -> float | None:
+        self.flows_solved += 1
+        if self.whole and self.witness != "cbc":
+            return _flow_by_network_simplex(self, verdicts, ways)
+        return _flow_by_cbc(self, verdicts, ways)
+
+    def _is_whole(self) -> bool:
+        """Return whether one good of load 1 moves in whole numbers at whole costs, so that network simplex is exact."""
+        study = self.study
+        numbers = [
+            *self.demand.values(),
+            *(lane.cost for lane in self.lanes.values()),
+            *(value for option in study.options for value in (option.capacity, option.least_throughput)),
+            *(value for row in study.suppliers for value in (_unlimited(row.capacity), row.least_yearly)),
+            *(value for offer in study.all_offers for value in (_unlimited(offer.capacity), offer.least_yearly)),
+        ]
+        return (
+            len(study.all_goods) == 1
+            and self.load[study.all_goods[0].good] == 1.0
+            and study.settings.service_share is None
+            and all(math.isinf(number) or float(number).is_integer() for number in numbers)
+        )
+
+
+def _unlimited(capacity: float | None) -> float:
+    return math.inf if capacity is None else capacity
+
+
+def _as_best(cost: float, verdicts: Verdicts) -> Best:
+    sizes = {site: option.size for site, option in verdicts.options.items() if option is not None}
+    return Best(cost=cost, open_sites=frozenset(sizes), sizes=sizes, signed=verdicts.signed)
+
+
+def annuity(interest: float, years: float) -> float:
+    """Return yearly money per money paid once at the start of `years` years: 1 / (sum of discounted ones)."""
+    if interest == 0:
+        return 1 / years
+    return interest / (1 - (1 + interest) ** -years)
+
+
+def _charges(study: Study, options: Mapping[str, SizeRow | None], signed: frozenset[str]) -> tuple[float, float]:
+    """Return the yearly charge and the one-off money of a set of verdicts."""
+    settings = study.settings
+    interest, years = settings.interest_rate, settings.life_years
+    factor = 0.0 if interest is None or years is None else annuity(interest, years)
+    present = 1.0 if interest is None or years is None else (1 + interest) ** -years
+    charge = one_off = 0.0
+    for row in study.sites:
+        option = options[row.site]
+        if option is not None:
+            charge += option.yearly_charge
+            if option.standing is SiteStanding.PROPOSED:
+                charge += factor * (option.opening_charge - option.residual_value * present)
+                one_off += option.opening_charge
+        elif row.standing is SiteStanding.RUNNING:
+            charge += factor * row.closing_charge
+            one_off += row.closing_charge
+    for supplier in study.suppliers:
+        if supplier.supplier in signed:
+            charge += supplier.yearly_charge
+            if supplier.standing is SupplierStanding.OFFERED:
+                charge += factor * supplier.signing_charge
+                one_off += supplier.signing_charge
+        elif supplier.standing is SupplierStanding.SIGNED:
+            charge += factor * supplier.dropping_charge
+            one_off += supplier.dropping_charge
+    return charge, one_off
+
+
+def _allowed(
+    study: Study, options: Mapping[str, SizeRow | None], signed: frozenset[str], one_off: float
+) -> bool:
+    """Return whether counts, budget and rules allow a set of verdicts."""
+    settings = study.settings
+    count = sum(option is not None for option in options.values())
+    if settings.fewest_sites is not None and count < settings.fewest_sites:
+        return False
+    if settings.most_sites is not None and count > settings.most_sites:
+        return False
+    if settings.one_off_budget is not None and one_off > settings.one_off_budget + SLACK:
+        return False
+    for rule in study.rules:
+        held = [name in signed or options.get(name) is not None for name in rule.members]
+        number = rule.number or 0
+        holds = {
+            RuleKind.ONE_OF: sum(held) == 1,
+            RuleKind.NOT_TOGETHER: sum(held) <= 1,
+            RuleKind.TOGETHER: all(held) or not any(held),
+            RuleKind.NEEDS: not held[0] or all(held[1:]),
+            RuleKind.AT_MOST: sum(held) <= number,
+            RuleKind.AT_LEAST: sum(held) >= number,
+        }
+        if not holds[rule.rule]:
+            return False
+    return True
+
+
+def _lanes(
+    study: Study, demand: Mapping[Pair, float], offers: Mapping[Pair, OfferRow]
+) -> Iterator[tuple[Way, Lane]]:
+    """Yield every lane that exists, with what moving one unit on it costs."""
+    overrides = _overrides(study)
+    wanted = {good for _, good in demand}
+    for good in (row for row in study.all_goods if row.good in wanted):
+        receivers = [row for row in study.customers if (row.customer, good.good) in demand]
+        sellers = [row for row in study.suppliers if (row.supplier, good.good) in offers]
+        price = {row.supplier: offers[row.supplier, good.good].unit_price for row in sellers}
+        legs = (
+            (Leg.INBOUND, sellers, study.sites),
+            (Leg.OUTBOUND, study.sites, receivers),
+            (Leg.DIRECT, sellers, receivers),
+        )
+        for leg, origins, destinations in legs:
+            for origin, destination in itertools.product(origins, destinations):  # type: ignore[call-overload]  # rows of two tables
+                name, to = _name(origin), _name(destination)
+                given = overrides.get((leg, name, to, good.good)) or overrides.get((leg, name, to, ""))
+                lane = _priced(study, leg, origin, destination, good, given)
+                if lane is None:
+                    continue
+                extra = origin.handling_rate * good.load if leg is Leg.OUTBOUND else price[name]
+                yield (leg, name, to, good.good), Lane(km=lane.km, cost=lane.cost + extra)
+
+
+def _overrides(study: Study) -> dict[Way, tuple[float | None, float | None, bool, bool]]:
+    """Return road km, unit cost, barred and names-a-good of each row of `lanes`."""
+    table, found = study.lanes, {}
+    for n in range(len(table)):
+        good = table.names[table.good[n]] if table.good[n] >= 0 else ""
+        key = (table.LEGS[table.leg[n]], table.names[table.origin[n]], table.names[table.destination[n]], good)
+        km, money = float(table.road_km[n]), float(table.unit_cost[n])
+        found[key] = (
+            None if math.isnan(km) else km,
+            None if math.isnan(money) else money,
+            bool(table.barred[n]),
+            bool(good),
+        )
+    return found
+
+
+def _name(row: object) -> str:
+    for column in ("site", "supplier", "customer"):
+        if hasattr(row, column):
+            return str(getattr(row, column))
+    raise TypeError(row)
+
+
+def _priced(study, leg, origin, destination, good, given) -> Lane | None:  # type: ignore[no-untyped-def]  # noqa: ANN001 - rows of three tables
+    """Return km and freight, delivery and carbon per unit of a lane; None where it does not exist."""
+    settings = study.settings
+    km, money, barred, of_good = given or (None, None, False, False)
+    if barred or (leg is Leg.DIRECT and given is None):
+        return None
+    if km is None and None not in (origin.latitude, destination.latitude):
+        metres = Geod(ellps="WGS84").inv(
+            origin.longitude, origin.latitude, destination.longitude, destination.latitude
+        )[2]
+        km = metres / 1000 * settings.circuity
+    if money is None:
+        if km is None:
+            return None
+        rate = settings.inbound_rate if leg is Leg.INBOUND else settings.outbound_rate
+        cost = rate * km * good.load
+        if leg is not Leg.INBOUND and settings.drop_size is not None:
+            cost += settings.drop_charge / settings.drop_size * good.load
+    else:
+        cost = money if of_good else money * good.load
+    reach = None if leg is Leg.INBOUND else destination.reach_km
+    if reach is not None and km is not None and km > reach:
+        return None
+    if settings.emission_kg_per_tkm is not None and km is not None:
+        cost += settings.carbon_price_per_t * settings.emission_kg_per_tkm * good.weight_t * km / 1000
+    return Lane(km=km, cost=cost)
+
+
+def _flow_by_network_simplex(
+    search: Enumeration, verdicts: Verdicts, ways: Mapping[Way, Lane]
+) -> float | None:
+    """
+    Return the least cost of whole-number flows.
+
+    Everything leaves one source; a supplier and a site are two nodes with their capacity between them, and a least
+    volume is moved out of the arc into the balance of its two nodes.
+    """
+    study = search.study
+    graph = nx.DiGraph()
+    good = study.all_goods[0].good
+
+    def arc(tail: str, head: str, least: float, capacity: float, cost: float = 0.0) -> None:
+        for node, amount in ((tail, least), (head, -least)):
+            graph.add_node(node, demand=graph.nodes.get(node, {}).get("demand", 0) + int(amount))
+        limit = {} if math.isinf(capacity) else {"capacity": int(capacity - least)}
+        graph.add_edge(tail, head, weight=int(cost), **limit)
+
+    for row in study.suppliers:
+        if row.supplier not in verdicts.signed:
+            continue
+        offer = search.offers.get((row.supplier, good))
+        capacity = 0.0 if offer is None else min(_unlimited(row.capacity), _unlimited(offer.capacity))
+        least = max(row.least_yearly, 0.0 if offer is None else offer.least_yearly)
+        if least > capacity:
+            return None
+        arc("source", f"buy {row.supplier}", least, capacity)
+    for site, option in verdicts.options.items():
+        if option is None:
+            continue
+        if option.least_throughput > option.capacity:
+            return None
+        arc(f"into {site}", f"out of {site}", option.least_throughput, option.capacity)
+        if not study.suppliers:
+            arc("source", f"into {site}", 0, math.inf)
+    for (leg, origin, destination, _), lane in ways.items():
+        tail = f"out of {origin}" if leg is Leg.OUTBOUND else f"buy {origin}"
+        arc(tail, f"into {destination}" if leg is Leg.INBOUND else f"to {destination}", 0, math.inf, lane.cost)
+    total = 0
+    for (customer, _), amount in search.demand.items():
+        node = f"to {customer}"
+        graph.add_node(node, demand=graph.nodes.get(node, {}).get("demand", 0) + int(amount))
+        total += int(amount)
+    graph.add_node("source", demand=graph.nodes.get("source", {}).get("demand", 0) - total)
+    try:
+        return float(nx.network_simplex(graph)[0])
+    except nx.NetworkXUnfeasible:
+        return None
+
+
+def _flow_by_cbc(search: Enumeration, verdicts: Verdicts, ways: Mapping[Way, Lane]) -> float | None:
+    """Return the least cost of flows, solved by CBC."""
+    study, load, weight = search.study, search.load, search.weight
+    problem = pulp.LpProblem("flows", pulp.LpMinimize)
+    flow = {way: problem.add_variable(f"f{n}", 0) for n, way in enumerate(ways)}
+    problem += pulp.lpSum(ways[way].cost * amount for way, amount in flow.items())
+    for (customer, good), amount in search.demand.items():
+        served = [flow[way] for way in ways if way[0] is not Leg.INBOUND and way[2:] == (customer, good)]
+        problem += pulp.lpSum(served) == amount
+    for site, option in verdicts.options.items():
+        out = [way for way in ways if way[0] is Leg.OUTBOUND and way[1] == site]
+        through = pulp.lpSum(load[way[3]] * flow[way] for way in out)
+        if option is not None and not math.isinf(option.capacity):
+            problem += through <= option.capacity
+        if option is not None and option.least_throughput > 0:
+            problem += through >= option.least_throughput
+        for good in load if study.suppliers else ():
+            inflow = [flow[way] for way in ways if way[0] is Leg.INBOUND and way[2:] == (site, good)]
+            problem += pulp.lpSum(inflow) == pulp.lpSum(flow[way] for way in out if way[3] == good)
+    for row in study.suppliers:
+        if row.supplier not in verdicts.signed:
+            continue
+        sold = {good: [flow[way] for way in ways if way[1] == row.supplier and way[3] == good] for good in load}
+        volume = pulp.lpSum(load[good] * pulp.lpSum(amounts) for good, amounts in sold.items())
+        if not math.isinf(_unlimited(row.capacity)):
+            problem += volume <= row.capacity
+        if row.least_yearly > 0:
+            problem += volume >= row.least_yearly
+        for good, amounts in sold.items():
+            offer = search.offers.get((row.supplier, good))
+            if offer is not None and not math.isinf(_unlimited(offer.capacity)):
+                problem += pulp.lpSum(amounts) <= offer.capacity
+            if offer is not None and offer.least_yearly > 0:
+                problem += pulp.lpSum(amounts) >= offer.least_yearly
+    settings = study.settings
+    if settings.service_share is not None and settings.service_km is not None:
+        near = [
+            weight[way[3]] * flow[way]
+            for way, lane in ways.items()
+            if way[0] is not Leg.INBOUND and lane.km is not None and lane.km <= settings.service_km
+        ]
+        everything = sum(weight[good] * amount for (_, good), amount in search.demand.items())
+        problem += pulp.lpSum(near) >= settings.service_share * everything
+    problem.solve(pulp.PULP_CBC_CMD(msg=False))
+    if problem.status != pulp.LpStatusOptimal:
+        return None
+    return float(sum(ways[way].cost * (amount.value() or 0.0) for way, amount in flow.items()))
