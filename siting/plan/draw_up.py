@@ -45,7 +45,7 @@ GROWTH = 0.10
 NO_BOUNDS: Mapping[int, float] = {}
 
 
-def draw_up(
+def draw_up(  # noqa: PLR0913  # what a search hands over; all but the four inputs by name
     study: Study,
     network: Network,
     decisions: Decisions,
@@ -121,7 +121,7 @@ def draw_up(
         cost_lines=lines,
         service=service,
         tonnes_co2e=tonnes_co2e_of(study.settings, moves),
-        one_off=sum(line.one_off for line in (*sites, *suppliers)),
+        one_off=sum(line.one_off for line in sites) + sum(line.one_off for line in suppliers),
         today=today,
         warnings=_warnings(study, sites, service),
     )
@@ -285,7 +285,7 @@ def _customer_lines(network: Network, moves: AllMoves, marginal: Floats) -> tupl
         lines.append(
             CustomerLine(
                 customer=name,
-                origins=tuple(sorted(served[j], key=lambda origin, loads=served[j]: -loads[origin])),  # type: ignore[misc]
+                origins=tuple(sorted(served[j], key=served[j].__getitem__, reverse=True)),
                 load=load,
                 km=float(load_km[j]) / load if known else None,
                 cost_to_serve=float(cost[j]),
@@ -312,5 +312,7 @@ def _warnings(study: Study, sites: tuple[SiteLine, ...], service: Service) -> tu
     fuller = [(line.site, line.utilisation * (1 + GROWTH)) for line in sites if line.utilisation is not None]
     full = [f"{site} ({share:.0%})" for site, share in fuller if share > FULL_SHARE]
     if full:
-        warnings.append(f"With demand {GROWTH:.0%} higher these sites would be above {FULL_SHARE:.0%} full: {', '.join(full)}.")
+        warnings.append(
+            f"With demand {GROWTH:.0%} higher these sites would be above {FULL_SHARE:.0%} full: {', '.join(full)}."
+        )
     return tuple(warnings)

@@ -19,7 +19,8 @@ if TYPE_CHECKING:
 
     from siting.arrays import Flags, Floats, Positions
     from siting.network.decisions import Amounts, Decisions
-    from siting.network.network import LegLanes, Network
+    from siting.network.freight import LegLanes
+    from siting.network.network import Network
     from siting.study.tables import Study
 
 NEGLIGIBLE_SHARE = 1e-9
