@@ -255,6 +255,8 @@ class LaneTable:
     barred: Flags
     row: Positions
     """Row in the user's spreadsheet."""
+    attributes: Mapping[str, tuple[tuple[str, ...], Positions]] = field(default_factory=dict)
+    """Columns the program does not know: their different texts, and each row's position among them (-1 = blank)."""
 
     def __len__(self) -> int:
         """Return the number of rows."""

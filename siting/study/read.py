@@ -1,0 +1,134 @@
+"""Read a study: a folder of CSV tables with `study.toml`, or one .xlsx workbook with the same tables as sheets."""
+
+from __future__ import annotations
+
+import tomllib
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from siting.errors import Fault
+from siting.study.check import check_raw
+from siting.study.columns import TABLES
+from siting.study.gathering import nearest
+from siting.study.raw import RawStudy
+from siting.study.read_csv import read_csv
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable
+
+    from siting.study.raw import RawTable
+    from siting.study.tables import Study
+
+SETTINGS_FILE = "study.toml"
+
+NEAR_MISS = 0.78
+"""How alike, from 0 to 1, an unknown table and a known one must be for the unknown one to be a slip."""
+
+
+def read_study(path: Path | str) -> Study:
+    """
+    Read and check a study.
+
+    Parameters
+    ----------
+    path
+        A folder with `study.toml` and CSV tables, or an .xlsx workbook.
+
+    Returns
+    -------
+    study
+        Frozen; its warnings are in `study.warnings`.
+
+    Raises
+    ------
+    StudyError
+        If anything is wrong; the error lists every fault with its place and repair.
+    """
+    return check_raw(read_raw(path)).sound()
+
+
+def read_raw(path: Path | str) -> RawStudy:
+    """
+    Read a study without judging it.
+
+    Parameters
+    ----------
+    path
+        A folder with `study.toml` and CSV tables, or an .xlsx workbook.
+
+    Returns
+    -------
+    raw
+        Tables of text; what could not be read is among its faults.
+    """
+    path = Path(path)
+    if path.is_dir():
+        return _read_folder(path)
+    wrong = "there is no such folder or workbook" if not path.exists() else "neither a folder nor an .xlsx workbook"
+    fault = Fault(table="study", value=str(path), wrong=wrong, repair="Give a folder of CSV tables, or an .xlsx workbook")
+    return RawStudy(tables={}, faults=(fault,), unreadable=frozenset({*TABLES, SETTINGS_FILE}))
+
+
+def _read_folder(folder: Path) -> RawStudy:
+    tables: dict[str, RawTable] = {}
+    faults: list[Fault] = []
+    unreadable: set[str] = set()
+    for name in TABLES:
+        file = folder / f"{name}.csv"
+        if not file.exists():
+            continue
+        result = read_csv(file, name)
+        faults += result.faults
+        if result.table is None:
+            unreadable.add(name)
+        else:
+            tables[name] = result.table
+    settings, fault = _read_toml(folder / SETTINGS_FILE)
+    if fault is not None:
+        faults.append(fault)
+        unreadable.add(SETTINGS_FILE)
+    others = (file.stem for file in sorted(folder.glob("*.[cC][sS][vV]")) if file.name not in _FILES)
+    slips, strangers = sort_strangers(others, tables, "file")
+    return RawStudy(
+        tables=tables,
+        settings=settings,
+        faults=(*faults, *slips),
+        warnings=strangers,
+        unreadable=frozenset(unreadable),
+    )
+
+
+_FILES = frozenset(f"{name}.csv" for name in TABLES)
+
+
+def sort_strangers(
+    names: Iterable[str], tables: dict[str, RawTable], what: str
+) -> tuple[tuple[Fault, ...], tuple[Fault, ...]]:
+    """Return faults for files or sheets whose name is a slip of a table's, and warnings for all others."""
+    slips, strangers = [], []
+    for name in names:
+        near = nearest(name, TABLES, NEAR_MISS)
+        if near and near not in tables:
+            wrong = f"the {what} {name!r} looks like a slip of the table {near!r}"
+            slips.append(Fault(table=near, wrong=wrong, repair=f"Rename it to {near}, or to something less alike"))
+        else:
+            wrong = f"the {what} is not a table of a study and was not read"
+            strangers.append(Fault(table=name, wrong=wrong, repair="Nothing to do, unless it should be one"))
+    return tuple(slips), tuple(strangers)
+
+
+def _read_toml(file: Path) -> tuple[dict[str, object], Fault | None]:
+    if not file.exists():
+        wrong, repair = "the file is missing", 'Add it, with at least currency = "EUR" and unit = "t"'
+        return {}, Fault(table=SETTINGS_FILE, wrong=wrong, repair=repair)
+    try:
+        return tomllib.loads(file.read_bytes().decode("utf-8-sig")), None
+    except UnicodeDecodeError:
+        return {}, Fault(table=SETTINGS_FILE, wrong="the file is not text in UTF-8", repair="Save it as UTF-8")
+    except tomllib.TOMLDecodeError as error:
+        wrong = f"the file is not TOML ({error})"
+        repair = 'Write each setting on a line of its own, as in currency = "EUR"'
+        return {}, Fault(table=SETTINGS_FILE, wrong=wrong, repair=repair)
+    except OSError as error:
+        wrong = f"the file cannot be read ({error.strerror})"
+        return {}, Fault(table=SETTINGS_FILE, wrong=wrong, repair="Check that you may read it")
