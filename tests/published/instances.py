@@ -405,11 +405,6 @@ def hubs() -> Study:
     )
 
 
-def one_of_three(number: int) -> Study:
-    """Return the three depots with a rule that at least `number` of them open."""
-    names = tuple(row.site for row in three_depots().sites)
-    rule = RuleRow(rule=RuleKind.AT_LEAST, members=names, number=number)
-    return replace(three_depots(), rules=(rule,))
 
 
 TRANSPORT: dict[str, tuple[list[float], list[float], list[list[float]], float]] = {
