@@ -117,7 +117,9 @@ def _merged(columns: Sequence[tuple[tuple[str, ...], Positions]]) -> tuple[tuple
     names: dict[str, int] = {}
     merged = []
     for words, positions in columns:
-        new = np.array([names.setdefault(word, len(names)) if word else _ABSENT for word in words] + [_ABSENT], np.int32)
+        new = np.array(
+            [names.setdefault(word, len(names)) if word else _ABSENT for word in words] + [_ABSENT], np.int32
+        )
         merged.append(new[positions])
     return tuple(names), merged
 

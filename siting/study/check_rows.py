@@ -64,7 +64,12 @@ def check_header(spec: TableSpec, header: Sequence[str], gathering: Gathering) -
     for name in dict.fromkeys(header):
         if header.count(name) > 1 and name:
             gathering.fault(
-                spec.name, None, name, "", "the column is there more than once", "Keep one of them and delete the others"
+                spec.name,
+                None,
+                name,
+                "",
+                "the column is there more than once",
+                "Keep one of them and delete the others",
             )
     attributes = []
     for name in dict.fromkeys(header):
@@ -72,7 +77,9 @@ def check_header(spec: TableSpec, header: Sequence[str], gathering: Gathering) -
             continue
         near = _slip_of(name, spec.names)
         if not name.strip():
-            gathering.fault(spec.name, 1, "", "", "a column with cells in it has no name", "Name the column or clear it")
+            gathering.fault(
+                spec.name, 1, "", "", "a column with cells in it has no name", "Name the column or clear it"
+            )
         elif near:
             wrong = f"unknown column {name!r}, which looks like a slip of {near!r}"
             gathering.fault(spec.name, None, near, "", wrong, f"Rename it to {near}, or to something less alike")

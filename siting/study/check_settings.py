@@ -88,7 +88,9 @@ def _checked(
     for name, value in given.items():
         column = known.get(name)
         if column is None:
-            elsewhere = [f"[solve] {c.name}" if not prefix else c.name for c in (SETTINGS if prefix else SOLVE_SETTINGS)]
+            elsewhere = [
+                f"[solve] {c.name}" if not prefix else c.name for c in (SETTINGS if prefix else SOLVE_SETTINGS)
+            ]
             repair = did_you_mean(name, [*known, *elsewhere], "Delete it")
             gathering.fault(place, None, f"{prefix}{name}", _shown(value), "unknown setting", repair)
             continue
@@ -99,9 +101,7 @@ def _checked(
             values[name] = checked
     for column in columns:
         if column.required and column.name not in given:
-            gathering.fault(
-                place, None, column.name, "", "the setting is missing", f"Add it: {_example(column)}"
-            )
+            gathering.fault(place, None, column.name, "", "the setting is missing", f"Add it: {_example(column)}")
     return values
 
 
@@ -116,7 +116,9 @@ def _value(column: Column, value: object) -> object:
     if column.kind is Kind.YES_NO:
         if isinstance(value, bool):
             return value
-        return parse_yes_no(value) if isinstance(value, str) else Refusal("neither true nor false", "Write true or false")
+        return (
+            parse_yes_no(value) if isinstance(value, str) else Refusal("neither true nor false", "Write true or false")
+        )
     if not isinstance(value, str):
         return Refusal("not a text", f'Write it in quotes, as in {column.name} = "..."')
     if column.kind is Kind.CHOICE:

@@ -136,14 +136,10 @@ def _amount(
 
 
 def _fraction(name: str, meaning: str) -> Column:
-    return Column(
-        name=name, kind=Kind.NUMBER, meaning=meaning, low=0.0, high=1.0, high_open=True, fraction=True
-    )
+    return Column(name=name, kind=Kind.NUMBER, meaning=meaning, low=0.0, high=1.0, high_open=True, fraction=True)
 
 
-def _choice(
-    name: str, meaning: str, choices: type[StrEnum], *, blank: bool = True, required: bool = False
-) -> Column:
+def _choice(name: str, meaning: str, choices: type[StrEnum], *, blank: bool = True, required: bool = False) -> Column:
     words = tuple(str(choice) for choice in choices)
     return Column(
         name=name, kind=Kind.CHOICE, meaning=meaning, choices=words, enum=choices, blank=blank, required=required
@@ -327,9 +323,7 @@ RULES = TableSpec(
     row_type=RuleRow,
     columns=(
         _choice("rule", "What is asked of the members", RuleKind, required=True),
-        Column(
-            name="members", kind=Kind.NAMES, meaning="Sites or suppliers, separated by semicolons", required=True
-        ),
+        Column(name="members", kind=Kind.NAMES, meaning="Sites or suppliers, separated by semicolons", required=True),
         Column(name="number", kind=Kind.WHOLE, meaning="For at_most and at_least", low=0.0),
     ),
 )
@@ -361,9 +355,7 @@ SETTINGS: tuple[Column, ...] = (
     Column(name="fewest_sites", kind=Kind.WHOLE, meaning="Least number of open sites", low=0.0),
     Column(name="most_sites", kind=Kind.WHOLE, meaning="Greatest number of open sites", low=0.0),
     _amount("one_off_budget", "Most one-off money that may be spent", ONE_OFF),
-    Column(
-        name="single_source", kind=Kind.YES_NO, meaning="Whether each customer takes all its goods from one origin"
-    ),
+    Column(name="single_source", kind=Kind.YES_NO, meaning="Whether each customer takes all its goods from one origin"),
     _amount("emission_kg_per_tkm", "Emissions of freight; blank = not reported", "kg CO2e per tonne and km"),
     _amount("carbon_price_per_t", "Price of emissions; needs emission_kg_per_tkm", "money per tonne CO2e"),
 )

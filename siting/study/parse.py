@@ -183,7 +183,9 @@ def _worded(column: Column, text: str) -> Refusal | None:
             return Refusal("not spelt as expected", f"Write {UNLIMITED}")
         return Refusal("only a capacity can be unlimited", "Write a number such as 1250")
     if _CURRENCY.fullmatch(text.strip()):
-        return Refusal("not a number, since it has a unit or currency beside it", "Write the number alone, such as 1250")
+        return Refusal(
+            "not a number, since it has a unit or currency beside it", "Write the number alone, such as 1250"
+        )
     if re.fullmatch(r"\+[0-9.]+", text) or re.fullmatch(r"-?\.[0-9]+|-?[0-9]+\.", text):
         return Refusal("not written as a plain number", f"Write {float(text):g}")
     return None

@@ -65,7 +65,9 @@ def read_raw(path: Path | str) -> RawStudy:
     if path.is_dir():
         return _read_folder(path)
     wrong = "there is no such folder or workbook" if not path.exists() else "neither a folder nor an .xlsx workbook"
-    fault = Fault(table="study", value=str(path), wrong=wrong, repair="Give a folder of CSV tables, or an .xlsx workbook")
+    fault = Fault(
+        table="study", value=str(path), wrong=wrong, repair="Give a folder of CSV tables, or an .xlsx workbook"
+    )
     return RawStudy(tables={}, faults=(fault,), unreadable=frozenset({*TABLES, SETTINGS_FILE}))
 
 

@@ -112,7 +112,9 @@ class _Reading:
                 chunk = []
         self._keep(chunk)
         if self._ragged > MOST_LISTED:
-            self._fault(None, f"{self._ragged - MOST_LISTED} more rows have too few or too many cells", "Repair them too")
+            self._fault(
+                None, f"{self._ragged - MOST_LISTED} more rows have too few or too many cells", "Repair them too"
+            )
         return RawTable(
             header=tuple(self._header),
             columns=tuple(_joined(arrays) for arrays in zip(*self._chunks, strict=True)),
