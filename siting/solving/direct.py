@@ -1,0 +1,197 @@
+"""
+The engine `direct`: the whole model given to HiGHS, in-process, through PuLP.
+
+How the run ended is read from HiGHS itself: PuLP files a run stopped by its time limit under "Optimal".
+"""
+
+from __future__ import annotations
+
+import math
+import time
+from typing import TYPE_CHECKING, Any
+
+import highspy
+import numpy as np
+import pulp
+
+from siting.errors import EngineError
+from siting.listener import Progress
+from siting.solving.engine import EngineResult
+from siting.solving.highs import TOLERANCE, QuietHighs, has_solution, is_impossible
+from siting.solving.model import build_model
+
+if TYPE_CHECKING:
+    from siting.arrays import Floats
+    from siting.listener import Listener, Stop
+    from siting.network.decisions import Decisions
+    from siting.network.network import Network
+    from siting.solving.model import Model
+    from siting.study.settings import SolveSettings
+
+GAP_MARGIN = 0.999
+"""Share of the gap asked that the solver is told, so that pricing its plan anew cannot lift the gap above it."""
+
+LEAST_SECONDS = 0.01
+"""Time limit given to a solver when building the model used all of it: enough to return cleanly."""
+
+
+def direct(
+    network: Network,
+    settings: SolveSettings,
+    *,
+    listener: Listener,
+    stop: Stop,
+    start: Decisions | None = None,
+) -> EngineResult:
+    """
+    Search with HiGHS until the gap, the time limit or `stop`.
+
+    Parameters
+    ----------
+    network
+        What to decide.
+    settings
+        Gap and time limit; building the model counts as time.
+    listener
+        Gets `update` with elapsed seconds, best cost and bound in money a year.
+    stop
+        Once requested, the best decisions so far are returned.
+    start
+        Decisions known to be feasible, to begin from.
+
+    Returns
+    -------
+    result
+        Decisions, bound, and whether the study is impossible.
+
+    Raises
+    ------
+    EngineError
+        If HiGHS gives up without a plan for a reason of its own.
+    """
+    began = time.monotonic()
+    listener.update(Progress(elapsed_s=0.0, phase="stating the model"))
+    model = build_model(network)
+    if stop.requested:
+        return EngineResult(decisions=start, bound=None, note="stopped on request")
+    solver = InProcess(model, settings, listener=listener, stop=stop, start=start, began=began)
+    model.problem.solve(solver)
+    return _result(model, model.problem.solverModel)
+
+
+def column_values(model: Model, highs: highspy.Highs) -> Floats:
+    """
+    Return the value of each column of the model; a variable that no row and no cost mentions rests at its lower bound.
+
+    Parameters
+    ----------
+    model
+        As given to PuLP's HiGHS.
+    highs
+        Holds its solution.
+
+    Returns
+    -------
+    values
+        Shape (columns,).
+    """
+    solution = np.array(highs.getSolution().col_value)
+    values = np.array([variable.lowBound for variable in model.columns.all], dtype=np.float64)
+    place = np.array([getattr(variable, "index", -1) for variable in model.columns.all])
+    values[place >= 0] = solution[place[place >= 0]]
+    return values
+
+
+class InProcess(pulp.HiGHS):  # type: ignore[misc] # PuLP ships no types
+    """PuLP's in-process HiGHS, reporting to a listener and stopping on request."""
+
+    def __init__(  # noqa: PLR0913 - what a run needs, each named
+        self,
+        model: Model,
+        settings: SolveSettings,
+        *,
+        listener: Listener,
+        stop: Stop,
+        start: Decisions | None,
+        began: float,
+    ) -> None:
+        super().__init__(msg=True)
+        self._model = model
+        self._settings = settings
+        self._listener = listener
+        self._stop = stop
+        self._start = start
+        self._began = began
+
+    def createAndConfigureSolver(self, lp: pulp.LpProblem) -> None:  # noqa: N802 - overrides a method of PuLP
+        """Make a quiet HiGHS with our limits and our listener."""
+        highs = QuietHighs()
+        left = max(self._settings.time_limit_s - (time.monotonic() - self._began), LEAST_SECONDS)
+        options: dict[str, float] = {
+            "mip_rel_gap": self._settings.gap * GAP_MARGIN,
+            "mip_abs_gap": 0.0,
+            "mip_feasibility_tolerance": TOLERANCE,
+            "primal_feasibility_tolerance": TOLERANCE,
+            "time_limit": left,
+        }
+        for name, value in options.items():
+            highs.setOptionValue(name, value)
+        highs.cbMipLogging.subscribe(self._report)
+        highs.cbMipImprovingSolution.subscribe(self._report)
+        highs.cbMipInterrupt.subscribe(self._interrupt)
+        lp.solverModel = highs
+
+    def callSolver(self, lp: pulp.LpProblem) -> None:  # noqa: N802 - overrides a method of PuLP
+        """Hand over the start, if there is one, and run."""
+        if self._start is not None:
+            columns, values = self._model.binaries(self._start)
+            place = np.array([getattr(self._model.columns.all[column], "index", -1) for column in columns.tolist()])
+            known = place >= 0
+            lp.solverModel.setSolution(int(known.sum()), place[known].astype(np.int32), values[known])
+        lp.solverModel.run()
+
+    def findSolutionValues(self, lp: pulp.LpProblem) -> tuple[int, int]:  # noqa: ARG002, N802 - overrides a method of PuLP
+        """Leave the variables alone: values and outcome are read from HiGHS itself."""
+        return pulp.LpStatusNotSolved, pulp.LpSolutionNoSolutionFound
+
+    def _report(self, event: Any) -> None:  # noqa: ANN401 - highspy's event
+        out = event.data_out
+        self._listener.update(
+            Progress(
+                elapsed_s=time.monotonic() - self._began,
+                cost=_finite(out.mip_primal_bound, self._model.money),
+                bound=_finite(out.mip_dual_bound, self._model.money),
+                phase="searching",
+            )
+        )
+
+    def _interrupt(self, event: Any) -> None:  # noqa: ANN401 - highspy's event
+        if self._stop.requested:
+            event.interrupt()
+
+
+def _finite(value: float, money: float) -> float | None:
+    return value * money if math.isfinite(value) else None
+
+
+def _result(model: Model, highs: highspy.Highs) -> EngineResult:
+    if is_impossible(highs):
+        return EngineResult(decisions=None, bound=None, impossible=True)
+    status = highs.getModelStatus()
+    notes = {
+        highspy.HighsModelStatus.kOptimal: "",
+        highspy.HighsModelStatus.kTimeLimit: "stopped by the time limit",
+        highspy.HighsModelStatus.kInterrupt: "stopped on request",
+    }
+    found = has_solution(highs)
+    if not found and status not in notes:
+        msg = f"HiGHS gave up without a plan: {highs.modelStatusToString(status)}. Try the engine `cbc`."
+        raise EngineError(msg)
+    info = highs.getInfo()
+    whole = any(variable.cat == pulp.LpInteger for variable in model.problem.variables())
+    bound = info.mip_dual_bound if whole else info.objective_function_value
+    return EngineResult(
+        decisions=model.decisions(column_values(model, highs)) if found else None,
+        bound=_finite(bound, model.money) if whole or status == highspy.HighsModelStatus.kOptimal else None,
+        note=notes.get(status, f"HiGHS ended with: {highs.modelStatusToString(status)}"),
+    )
