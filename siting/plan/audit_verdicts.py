@@ -81,7 +81,8 @@ def _supplier(books: Books, line: SupplierLine) -> Iterator[str]:
     fitting = {True: ("stay", "drop"), False: ("sign", "leave")}[was]
     if line.verdict not in fitting or (books.of_today and was is not now):
         when = " today" if books.of_today else ""
-        yield f"supplier {name} is {'signed' if was else 'offered'}{when}, which does not go with verdict {line.verdict}"
+        standing = "signed" if was else "offered"
+        yield f"supplier {name} is {standing}{when}, which does not go with verdict {line.verdict}"
     limit = supplier_capacity(books, name)
     stated = math.inf if line.capacity is None else line.capacity
     if stated != limit and (math.inf in {stated, limit} or differs(stated, limit, limit)):
