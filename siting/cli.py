@@ -30,7 +30,7 @@ class _ShowVersion(argparse.Action):
 
     def __call__(self, parser: argparse.ArgumentParser, *_rest: object) -> None:
         """Print the version and end."""
-        from importlib.metadata import version
+        from importlib.metadata import version  # noqa: PLC0415  (only here is it worth its time)
 
         parser.exit(message=f"siting {version('siting')}\n")
 
@@ -62,38 +62,33 @@ def main(given: Sequence[str] | None = None) -> int:
     Returns
     -------
     exit_code
-        0 plan found and audited, 1 internal error, 2 bad input, 3 impossible, 4 stopped before any plan, 5 audit failed.
+        As `EXIT_CODES` says.
     """
     arguments = make_parser().parse_args(given)
     try:
         exit_code: int = arguments.run(arguments)
         sys.stdout.flush()
-    except SitingError as error:
-        return _complain(str(error), error.exit_code)
-    except KeyboardInterrupt:
-        return _complain("Stopped before any plan was found.", NO_PLAN_YET)
     except BrokenPipeError:  # whoever read the answer had enough of it, as `| head` does
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return FOUND
-    except OSError as error:
-        if not error.filename:
-            return _internal(error)
-        return _complain(f"{error.filename}: {error.strerror}. Check the path and its permissions.", BAD_INPUT)
-    except Exception as error:  # noqa: BLE001  (the last resort: a user gets a paragraph, never a traceback)
-        return _internal(error)
+    except (Exception, KeyboardInterrupt) as error:  # a user gets a paragraph, never a traceback
+        text, exit_code = _explained(error)
+        if exit_code == INTERNAL_ERROR and os.environ.get("SITING_DEBUG"):
+            raise
+        sys.stderr.write(text.rstrip("\n") + "\n")
     return exit_code
 
 
-def _internal(error: Exception) -> int:
-    if os.environ.get("SITING_DEBUG"):
-        raise error
-    return _complain(
+def _explained(error: BaseException) -> tuple[str, int]:
+    """Return what to tell the user about an error, and the exit code."""
+    if isinstance(error, SitingError):
+        return str(error), error.exit_code
+    if isinstance(error, KeyboardInterrupt):
+        return "Stopped before any plan was found.", NO_PLAN_YET
+    if isinstance(error, OSError) and error.filename:
+        return f"{error.filename}: {error.strerror}. Check the path and its permissions.", BAD_INPUT
+    text = (
         f"Internal error, a fault of the program and not of the study: {type(error).__name__}: {error}. "
-        "Run the same command with SITING_DEBUG=1 in the environment to see where it happened.",
-        INTERNAL_ERROR,
+        "Run the same command with SITING_DEBUG=1 in the environment to see where it happened."
     )
-
-
-def _complain(text: str, exit_code: int) -> int:
-    sys.stderr.write(text.rstrip("\n") + "\n")
-    return exit_code
+    return text, INTERNAL_ERROR

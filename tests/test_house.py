@@ -59,7 +59,9 @@ def public_functions() -> Iterator[str]:
                 yield f"{module_info.name}.{name}"
             elif inspect.isclass(value):
                 methods = inspect.getmembers(value, inspect.isfunction)
-                yield from (f"{module_info.name}.{name}.{method}" for method, _ in methods if not method.startswith("_"))
+                yield from (
+                    f"{module_info.name}.{name}.{method}" for method, _ in methods if not method.startswith("_")
+                )
 
 
 def places_of(pattern: str) -> list[str]:

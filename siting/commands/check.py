@@ -31,37 +31,22 @@ def add(commands: Commands) -> None:
 def run(arguments: argparse.Namespace) -> int:
     """Print what the study holds and its warnings, or its faults and warnings; return the exit code."""
     from siting.errors import StudyError
+    from siting.plan.contract import check_to_json
     from siting.study.demo import study_path
-    from siting.study.fingerprint import fingerprint
     from siting.study.read import read_study
 
+    faults: Sequence[Fault] = ()
     try:
         study = read_study(study_path(arguments.study))
     except StudyError as error:
-        if arguments.json:
-            say_json({"faults": _as_objects(error.faults), "warnings": _as_objects(error.warnings)})
-        else:
-            say("\n".join([str(error), *_warning_lines(error.warnings)]))
-        return BAD_INPUT
-    if arguments.json:
-        say_json({"faults": [], "warnings": _as_objects(study.warnings), "fingerprint": fingerprint(study)})
+        faults, warnings, text = error.faults, error.warnings, str(error)
     else:
-        say("\n".join([f"No fault. {_contents(study)}", *_warning_lines(study.warnings)]))
-    return FOUND
-
-
-def _as_objects(faults: Sequence[Fault]) -> list[dict[str, object]]:
-    return [
-        {
-            "table": fault.table,
-            "row": fault.row,
-            "column": fault.column,
-            "value": fault.value,
-            "wrong": fault.wrong,
-            "repair": fault.repair,
-        }
-        for fault in faults
-    ]
+        warnings, text = study.warnings, f"No fault. {_contents(study)}"
+    if arguments.json:
+        say_json(check_to_json(faults, warnings))
+    else:
+        say("\n".join([text, *_warning_lines(warnings)]))
+    return BAD_INPUT if faults else FOUND
 
 
 def _warning_lines(warnings: Sequence[Fault]) -> list[str]:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 import sys
 from typing import TYPE_CHECKING, Protocol, TypeAlias
 
@@ -50,4 +49,6 @@ def say(text: str) -> None:
 
 def say_json(answer: Mapping[str, object]) -> None:
     """Print a command's answer as one JSON object."""
-    say(json.dumps(answer, ensure_ascii=False, indent=2, allow_nan=False))
+    from siting.plan.contract import to_text
+
+    say(to_text(answer))

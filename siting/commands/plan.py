@@ -52,6 +52,7 @@ def run(arguments: argparse.Namespace) -> int:
     from siting.commands.interrupt import run_stoppable
     from siting.commands.progress import progress_on_stderr
     from siting.listener import Stop
+    from siting.plan.folder import write_plan_folder
     from siting.solving.solve import solve
     from siting.study.demo import study_path
     from siting.study.read import read_study
@@ -64,7 +65,7 @@ def run(arguments: argparse.Namespace) -> int:
     answer = run_stoppable(lambda: solve(study, settings, listener=listener, stop=stop), stop)
     report = _audited(study, answer)
     if arguments.out:
-        _write_folder(arguments.out, study, answer, report)
+        write_plan_folder(arguments.out, study, answer, report)
     _show(arguments, study, answer, report)
     if answer.plan:
         return FOUND
@@ -102,3 +103,40 @@ def _solve_settings(arguments: argparse.Namespace, of_study: SolveSettings) -> S
         time_limit_s=arguments.time_limit or of_study.time_limit_s,
         engine=arguments.engine or of_study.engine,
     )
+
+
+def _write_model(arguments: argparse.Namespace, study: Study) -> None:
+    if arguments.mps is None and arguments.lp is None:
+        return
+    from siting.network.network import build_network
+    from siting.solving.export import write_models
+
+    write_models(build_network(study), mps=arguments.mps, lp=arguments.lp)
+
+
+def _audited(study: Study, answer: Answer) -> AuditReport | None:
+    """Return the audit of the plan, None without one; a plan that fails is an error and never shown."""
+    from siting.errors import AuditError
+    from siting.plan.audit import audit
+
+    if answer.plan is None:
+        return None
+    report = audit(study, answer.plan)
+    if not report.passed:
+        listed = "\n".join(f"  {fault}" for fault in report.faults)
+        msg = f"The plan found fails its audit and is not shown; this is a fault of the program:\n{listed}"
+        raise AuditError(msg)
+    return report
+
+
+def _show(arguments: argparse.Namespace, study: Study, answer: Answer, report: AuditReport | None) -> None:
+    from siting.commands.plan_text import answer_text
+    from siting.plan.contract import summary_to_json
+    from siting.study.fingerprint import fingerprint
+
+    if arguments.json:
+        say_json(summary_to_json(answer, report, fingerprint=fingerprint(study)))
+        return
+    say(answer_text(study, answer))
+    if arguments.out:
+        say(f"\nWritten to {arguments.out}; `siting audit {arguments.out}` checks it again.")
