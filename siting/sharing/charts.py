@@ -1,0 +1,160 @@
+"""Charts of pages and reports, all in the colours and words of `looks`. Each function returns an altair chart."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import altair as alt
+import pandas as pd
+
+from siting.plan.plan import CostLine
+from siting.sharing import looks
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
+
+    from siting.listener import Progress
+    from siting.plan.plan import Plan, Service
+
+LINE_NAMES: Mapping[CostLine, str] = {
+    CostLine.OPENING: "Opening, per year",
+    CostLine.SITES: "Sites, yearly charges",
+    CostLine.CLOSING: "Closing, per year",
+    CostLine.SIGNING: "Signing, per year",
+    CostLine.SUPPLIERS: "Suppliers, yearly charges",
+    CostLine.DROPPING: "Dropping, per year",
+    CostLine.GOODS: "Goods bought",
+    CostLine.INBOUND: "Inbound freight",
+    CostLine.HANDLING: "Handling at sites",
+    CostLine.OUTBOUND: "Outbound freight",
+    CostLine.DIRECT: "Direct freight",
+    CostLine.DELIVERY: "Delivery charges",
+    CostLine.CARBON: "Carbon",
+}
+"""What each cost line is called wherever it is shown."""
+
+_ROW_HEIGHT_PX = 24
+
+
+def _styled(chart: alt.Chart | alt.LayerChart) -> alt.Chart | alt.LayerChart:
+    """Return the chart with the fonts, inks and rules that all charts share."""
+    return (
+        chart.configure(background=looks.PAPER, font=looks.FONT_STACK)
+        .configure_axis(
+            labelColor=looks.INK,
+            titleColor=looks.QUIET,
+            titleFontWeight="normal",
+            gridColor=looks.RULE,
+            domainColor=looks.BORDER,
+            tickColor=looks.BORDER,
+            labelFontSize=12,
+            titleFontSize=12,
+            labelLimit=220,
+        )
+        .configure_legend(labelColor=looks.INK, titleColor=looks.QUIET, labelFontSize=12, orient="top")
+        .configure_view(strokeWidth=0)
+    )
+
+
+def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart | alt.LayerChart:
+    """
+    Draw best cost and bound over time while a solve runs.
+
+    Parameters
+    ----------
+    history
+        Every improvement, oldest first.
+    currency
+        ISO 4217 code for the axis.
+    """
+    rows = [
+        {"seconds": step.elapsed_s, "money": value, "what": what}
+        for step in history
+        for what, value in (("best plan so far", step.cost), ("no plan is cheaper than", step.bound))
+        if value is not None
+    ]
+    frame = pd.DataFrame(rows, columns=["seconds", "money", "what"])
+    names = ["best plan so far", "no plan is cheaper than"]
+    return _styled(
+        alt.Chart(frame)
+        .mark_line(interpolate="step-after", strokeWidth=2.5, point={"size": 26, "filled": True})
+        .encode(
+            x=alt.X("seconds:Q", title="seconds", axis=alt.Axis(grid=False)),
+            y=alt.Y("money:Q", title=f"{currency} a year", scale=alt.Scale(zero=False), axis=alt.Axis(format="~s")),
+            color=alt.Color("what:N", title=None, scale=alt.Scale(domain=names, range=[looks.TEAL, looks.OCHRE])),
+            strokeDash=alt.StrokeDash("what:N", title=None, scale=alt.Scale(domain=names, range=[[1, 0], [5, 3]])),
+            tooltip=[alt.Tooltip("what:N", title=" "), alt.Tooltip("money:Q", format=",.0f"), "seconds:Q"],
+        )
+        .properties(height=220)
+    )
+
+
+def cost_chart(plan: Plan) -> alt.Chart | alt.LayerChart:
+    """Draw the cost lines of a plan and, where today can serve everything, of today beside it."""
+    rows = [
+        {"line": LINE_NAMES[line], "whose": whose, "money": money}
+        for whose, lines in _whose(plan)
+        for line, money in lines.items()
+    ]
+    frame = pd.DataFrame(rows)
+    shown = {row["line"] for row in rows if row["money"]}
+    frame = frame[frame["line"].isin(shown)]
+    order = [LINE_NAMES[line] for line in CostLine if LINE_NAMES[line] in shown]
+    whose = list(dict.fromkeys(frame["whose"]))
+    return _styled(
+        alt.Chart(frame)
+        .mark_bar(height={"band": 0.82}, stroke=looks.TEAL, strokeWidth=1)
+        .encode(
+            y=alt.Y("line:N", sort=order, title=None),
+            yOffset=alt.YOffset("whose:N", sort=whose),
+            x=alt.X("money:Q", title=f"{plan.currency} a year", axis=alt.Axis(format="~s")),
+            fill=alt.Fill(
+                "whose:N",
+                title=None,
+                sort=whose,
+                scale=alt.Scale(domain=["this plan", "today"], range=[looks.TEAL, looks.PAPER]),
+            ),
+            tooltip=["whose:N", "line:N", alt.Tooltip("money:Q", format=",.0f", title=f"{plan.currency} a year")],
+        )
+        .properties(height=alt.Step(_ROW_HEIGHT_PX / len(whose)))
+    )
+
+
+def _whose(plan: Plan) -> list[tuple[str, Mapping[CostLine, float]]]:
+    before = plan.today.plan if plan.today else None
+    return [("this plan", plan.cost_lines)] + ([("today", before.cost_lines)] if before else [])
+
+
+def band_names(service: Service) -> list[str]:
+    """Return the distance bands in words, such as `up to 50 km`, `50 to 100 km`, `over 400 km`."""
+    names = []
+    for band in service.bands:
+        if band.to_km is None:
+            names.append(f"over {band.above_km:g} km")
+        elif band.above_km == 0:
+            names.append(f"up to {band.to_km:g} km")
+        else:
+            names.append(f"{band.above_km:g} to {band.to_km:g} km")
+    return names
+
+
+def band_chart(service: Service, unit: str) -> alt.Chart | alt.LayerChart:
+    """Draw the share of load delivered within each band of road distance."""
+    names = band_names(service)
+    frame = pd.DataFrame(
+        {
+            "band": names,
+            "share": [band.share for band in service.bands],
+            "load": [band.load for band in service.bands],
+        }
+    )
+    bars = (
+        alt.Chart(frame)
+        .mark_bar(color=looks.SLATE, height={"band": 0.7})
+        .encode(
+            y=alt.Y("band:N", sort=names, title=None),
+            x=alt.X("share:Q", title="share of load", axis=alt.Axis(format=".0%", tickCount=5)),
+            tooltip=["band:N", alt.Tooltip("share:Q", format=".1%"), alt.Tooltip("load:Q", format=",.0f", title=unit)],
+        )
+    )
+    return _styled(bars.properties(height=alt.Step(_ROW_HEIGHT_PX)))

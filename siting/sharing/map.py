@@ -1,0 +1,100 @@
+"""The map that is shown, mailed and printed: one HTML file that opens anywhere."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from siting.sharing.map_data import plan_json
+from siting.sharing.map_given import given_json
+from siting.sharing.map_page import page_of
+
+if TYPE_CHECKING:
+    from pathlib import Path
+
+    from siting.plan.plan import Plan
+    from siting.study.tables import Study
+
+
+@dataclass(frozen=True, slots=True)
+class MapPage:
+    """A map as one HTML document without any outside reference."""
+
+    html: str
+
+    def write(self, path: Path) -> None:
+        """Write the document as UTF-8."""
+        path.write_text(self.html, encoding="utf-8", newline="\n")
+
+
+def draw_map(study: Study, plan: Plan, *, headline: str, locale: str = "en") -> MapPage:
+    """
+    Draw the map of a plan.
+
+    Parameters
+    ----------
+    study
+        The study that the plan answers.
+    plan
+        Its verdicts, flows and numbers are drawn.
+    headline
+        The answer in one sentence; it stands above the map.
+    locale
+        Whose separators numbers carry, such as `en` or `de`.
+
+    Returns
+    -------
+    page
+        The map with its verdict list, legend, tables, cautions and sources.
+
+    Raises
+    ------
+    SettingsError
+        If the locale is unknown.
+    """
+    return MapPage(page_of(plan_json(study, plan, headline=headline, locale=locale)))
+
+
+def draw_given(study: Study, *, fingerprint: str = "", locale: str = "en") -> MapPage:
+    """
+    Draw what was given, before any plan: sites and suppliers by standing, customers by demand.
+
+    Parameters
+    ----------
+    study
+        A checked study.
+    fingerprint
+        Of the study; empty = not shown.
+    locale
+        Whose separators numbers carry, such as `en` or `de`.
+
+    Returns
+    -------
+    page
+        The map, of the same form as that of a plan.
+
+    Raises
+    ------
+    SettingsError
+        If the locale is unknown.
+    """
+    return MapPage(page_of(given_json(study, fingerprint=fingerprint, locale=locale)))
+
+
+def write_map(path: Path, study: Study, plan: Plan, *, headline: str, locale: str = "en") -> None:
+    """
+    Draw the map of a plan and write it to a file.
+
+    Parameters
+    ----------
+    path
+        File to write, overwritten where it exists.
+    study, plan, headline, locale
+        As for `draw_map`.
+
+    Raises
+    ------
+    SettingsError
+        If the locale is unknown.
+    """
+    draw_map(study, plan, headline=headline, locale=locale).write(path)
