@@ -8,19 +8,22 @@ unusual is a warning.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 from siting.errors import Fault, StudyError
+from siting.study.check_amounts import check_amounts
 from siting.study.check_lanes import Known, parse_lanes
-from siting.study.check_rows import Parsed, parse_table
+from siting.study.check_links import check_links
+from siting.study.check_rows import parse_table
+from siting.study.check_rules import check_rules
 from siting.study.check_settings import check_settings
 from siting.study.columns import TABLES
+from siting.study.draft import KEYS, Draft
 from siting.study.gathering import Gathering
-from siting.study.tables import IMPLIED_GOOD, Study
+from siting.study.places import check_places
+from siting.study.tables import Study
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
-
     from siting.study.raw import RawStudy
 
 
@@ -64,23 +67,28 @@ def check_raw(raw: RawStudy) -> Checked:
     gathering = Gathering()
     gathering.extend(raw.faults, raw.warnings)
     settings = check_settings(raw, gathering)
-    tables: Mapping[str, Parsed[Any]] = {
-        name: parse_table(spec, raw.tables.get(name), gathering) for name, spec in TABLES.items() if name != "lanes"
-    }
-    rows = {name: parsed.rows for name, parsed in tables.items()}
-    known = Known(
-        sites={row.site for row in rows["sites"]},
-        suppliers={row.supplier for row in rows["suppliers"]},
-        customers={row.customer for row in rows["customers"]},
-        goods={row.good for row in rows["goods"]} or {IMPLIED_GOOD},
+    draft = Draft(
+        settings=settings,
+        settings_name=raw.settings_name,
+        given_settings=frozenset(raw.settings),
+        tables={
+            name: parse_table(spec, raw.tables.get(name), gathering) for name, spec in TABLES.items() if name != "lanes"
+        },
+        unreadable=raw.unreadable,
+        gathering=gathering,
     )
+    check_links(draft)
+    check_amounts(draft)
+    check_rules(draft)
+    known = Known(**draft.names) if draft.is_sound(*KEYS) else None
     lanes = parse_lanes(raw.tables.get("lanes"), known, gathering)
+    check_places(draft, lanes)
     study = Study(
         settings=settings,
         lanes=lanes,
         columns={name: table.header for name, table in raw.tables.items()},
         warnings=gathering.warnings(),
-        **rows,
+        **{name: parsed.rows for name, parsed in draft.tables.items()},
     )
     faults = gathering.faults()
     return Checked(study=None if faults else study, faults=faults, warnings=study.warnings)

@@ -37,7 +37,17 @@ class Known:
     goods: Collection[str]
 
 
-def parse_lanes(raw: RawTable | None, known: Known, gathering: Gathering) -> LaneTable:
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class ParsedLanes:
+    """The lanes as columns, and which rows not to trust."""
+
+    table: LaneTable
+    """In rows with a fault, refused cells are blank and unknown legs are -1."""
+    hurt: Flags
+    """(rows,) True where a row has a fault."""
+
+
+def parse_lanes(raw: RawTable | None, known: Known | None, gathering: Gathering) -> ParsedLanes:
     """
     Return the lanes as columns; every refused cell, unknown name and repeated lane becomes a fault.
 
@@ -46,25 +56,29 @@ def parse_lanes(raw: RawTable | None, known: Known, gathering: Gathering) -> Lan
     raw
         The table as text, None where the study does not have it.
     known
-        Names of the other tables.
+        Names of the other tables; None where they cannot be relied upon, so that only the cells are checked.
     gathering
         Takes faults and warnings, at most `MOST_LISTED` of each; the others are counted.
 
     Returns
     -------
-    lanes
-        One row for each record, in order; refused cells are blank, unknown names are -1.
+    parsed
+        One row for each record, in order, and which of them have a fault.
     """
     if raw is None:
-        return no_lanes()
+        return ParsedLanes(table=no_lanes(), hurt=np.zeros(0, dtype=np.bool_))
     attributes = check_header(LANES, raw.header, gathering)
     cells = {name: raw.column(name) for name in LANES.names}
     notes = _Notes(raw.rows, cells, gathering)
     origin, destination, good = (_factorised(cells[name], len(raw)) for name in ("origin", "destination", "good"))
     names, (origin_at, destination_at, good_at) = _merged([origin, destination, good])
     _check_blank_names(names, origin_at, destination_at, notes)
-    unknown = _check_names(names, origin_at, destination_at, good_at, known, notes)
-    leg = _legs(names, origin_at, destination_at, cells["leg"], unknown, known, notes)
+    if known is None:
+        unknown = np.ones(len(raw), dtype=np.bool_)
+        leg = np.full(len(raw), _ABSENT, dtype=np.int32)
+    else:
+        unknown = _check_names(names, origin_at, destination_at, good_at, known, notes)
+        leg = _legs(names, origin_at, destination_at, cells["leg"], unknown, known, notes)
     barred = _barred(cells["barred"], len(raw), notes)
     lanes = LaneTable(
         names=names,
@@ -79,7 +93,7 @@ def parse_lanes(raw: RawTable | None, known: Known, gathering: Gathering) -> Lan
         attributes={name: _factorised(raw.column(name), len(raw)) for name in attributes},
     )
     _check_repeats(lanes, ~unknown & (leg != _ABSENT), notes)
-    return lanes
+    return ParsedLanes(table=lanes, hurt=notes.hurt | unknown)
 
 
 class _Notes:
@@ -89,9 +103,12 @@ class _Notes:
         self.rows = rows
         self._cells = cells
         self._gathering = gathering
+        self.hurt = np.zeros(rows.shape, dtype=np.bool_)
+        """(rows,) True where a fault was noted."""
 
     def fault(self, wrong: Flags, column: str, why: Callable[[int, str], Refusal]) -> None:
         """Note a fault for every row flagged; ``why`` gets the position of the row and the cell as typed."""
+        self.hurt |= wrong
         places = np.flatnonzero(wrong)
         cells = self._cells.get(column)
         for place in places[:MOST_LISTED].tolist():
@@ -132,7 +149,8 @@ def _is_one_of(names: Sequence[str], known: Collection[str]) -> Flags:
 def _check_blank_names(names: Sequence[str], origin: Positions, destination: Positions, notes: _Notes) -> None:
     only_blanks = np.array([*(not name.strip() for name in names), True], dtype=np.bool_)
     for column, positions in (("origin", origin), ("destination", destination)):
-        notes.fault(only_blanks[positions], column, lambda *_, column=column: blank_refusal(LANES.column(column)))
+        refusal = blank_refusal(LANES.column(column))
+        notes.fault(only_blanks[positions], column, _always(refusal))
 
 
 def _check_names(  # noqa: PLR0913, PLR0917  (three columns of one table)
@@ -152,13 +170,19 @@ def _check_names(  # noqa: PLR0913, PLR0917  (three columns of one table)
         wrong = ~is_known[positions] & ~blank
         hurt |= wrong | (blank if column != "good" else False)
         stripped = np.array([bool(name.strip()) for name in names] + [True], dtype=np.bool_)
-        notes.fault(
-            wrong & stripped[positions], column,
-            lambda _, text, allowed=allowed, what=what: Refusal(
-                f"{what} of the study", did_you_mean(text, allowed, "Add it to its table, or delete the row")
-            ),
-        )  # fmt: skip
+        notes.fault(wrong & stripped[positions], column, _unknown_name(what, allowed))
     return hurt
+
+
+def _always(refusal: Refusal) -> Callable[[int, str], Refusal]:
+    return lambda *_: refusal
+
+
+def _unknown_name(what: str, allowed: Collection[str]) -> Callable[[int, str], Refusal]:
+    def why(_: int, text: str) -> Refusal:
+        return Refusal(f"{what} of the study", did_you_mean(text, allowed, "Add it to its table, or delete the row"))
+
+    return why
 
 
 def _legs(  # noqa: PLR0913, PLR0917  (columns of one table)
@@ -238,7 +262,7 @@ def _numbers(column: Column, cells: pa.Array | None, count: int, notes: _Notes) 
     blank = pc.equal(cells, "").to_numpy(zero_copy_only=False)
     plain = pc.match_substring_regex(cells, _PLAIN_NUMBER).to_numpy(zero_copy_only=False)
     texts = pc.if_else(pa.array(plain), cells, pa.scalar(None, pa.string()))
-    values = pc.cast(texts, pa.float64()).to_numpy(zero_copy_only=False).copy()
+    values: Floats = pc.cast(texts, pa.float64()).to_numpy(zero_copy_only=False).copy()
     low = 0.0 if column.low is None else column.low
     wrong = ~blank & ~(plain & np.isfinite(values) & (values >= low))
     values[wrong] = np.nan
@@ -257,7 +281,7 @@ def _barred(cells: pa.Array | None, count: int, notes: _Notes) -> Flags:
     words, at = _factorised(cells, count)
     folded = [word.casefold() for word in words]
     wrong = np.array([word != "" and word not in YES | NO for word in folded] + [False], dtype=np.bool_)
-    notes.fault(wrong[at], "barred", lambda *_: Refusal("neither yes nor no", "Write yes or no"))
+    notes.fault(wrong[at], "barred", _always(Refusal("neither yes nor no", "Write yes or no")))
     return np.array([word in YES for word in folded] + [False], dtype=np.bool_)[at]
 
 

@@ -117,12 +117,11 @@ def parse_table(spec: TableSpec, raw: RawTable | None, gathering: Gathering) -> 
     parsed
         One row for each record, in order.
     """
-    if raw is None:
+    if raw is not None and not len(raw):
+        gathering.warn(spec.name, None, "", "", "the table has no rows and counts as absent", "Fill it, or delete it")
+    if raw is None or not len(raw):
         return Parsed(spec=spec, there=False, header=(), rows=(), texts={})
-    if raw.header.count("") < len(raw.header):
-        attributes = check_header(spec, raw.header, gathering)
-    else:
-        attributes = ()
+    attributes = check_header(spec, raw.header, gathering)
     texts = {name: raw.columns[raw.header.index(name)].to_pylist() for name in dict.fromkeys(raw.header) if name}
     numbers = raw.rows.tolist()
     columns = [column for column in spec.columns if column.name in texts]

@@ -328,6 +328,16 @@ RULES = TableSpec(
     ),
 )
 
+SIZED_COLUMNS = ("opening_charge", "yearly_charge", "capacity", "least_throughput", "residual_value")
+"""Columns of `sites` that stay blank where a site has sizes."""
+
+ONE_OFF_CHARGES: Mapping[str, tuple[str, ...]] = {
+    "sites": ("opening_charge", "closing_charge"),
+    "suppliers": ("signing_charge", "dropping_charge"),
+    "sizes": ("opening_charge",),
+}
+"""Columns of money paid once, by table."""
+
 TABLES: Mapping[str, TableSpec] = {
     spec.name: spec for spec in (SITES, CUSTOMERS, SUPPLIERS, SIZES, GOODS, DEMANDS, OFFERS, LANES, RULES)
 }

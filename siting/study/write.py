@@ -13,7 +13,15 @@ from openpyxl import Workbook
 
 from siting.cells import safe_cell, write_csv
 from siting.errors import Fault, StudyError
-from siting.study.columns import SETTING_DEFAULTS, SETTINGS, SOLVE_DEFAULTS, SOLVE_SETTINGS, TABLES, TableSpec
+from siting.study.columns import (
+    SETTING_DEFAULTS,
+    SETTINGS,
+    SIZED_COLUMNS,
+    SOLVE_DEFAULTS,
+    SOLVE_SETTINGS,
+    TABLES,
+    TableSpec,
+)
 from siting.study.parse import UNLIMITED
 
 if TYPE_CHECKING:
@@ -22,9 +30,6 @@ if TYPE_CHECKING:
     from siting.study.tables import LaneTable, Study
 
 Cell = str | float | None
-
-SIZED_COLUMNS = ("opening_charge", "yearly_charge", "capacity", "least_throughput", "residual_value")
-"""Columns of `sites` that stay blank where a site has sizes."""
 
 SHEET_ROWS = 1_048_576
 """Rows of an .xlsx sheet, header included."""
@@ -205,9 +210,7 @@ def _lane_rows(lanes: LaneTable, header: tuple[str, ...]) -> Iterator[list[Cell]
     names = np.array([*lanes.names, None], dtype=object)
     legs = np.array([*(str(leg) for leg in lanes.LEGS), None], dtype=object)
     barred = np.array(["", "yes"], dtype=object)
-    attributes = {
-        name: (np.array([*words, None], dtype=object), at) for name, (words, at) in lanes.attributes.items()
-    }
+    attributes = {name: (np.array([*words, None], dtype=object), at) for name, (words, at) in lanes.attributes.items()}
     for start in range(0, len(lanes), _CHUNK_ROWS):
         part = slice(start, start + _CHUNK_ROWS)
         columns = {
