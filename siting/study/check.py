@@ -81,14 +81,14 @@ def check_raw(raw: RawStudy) -> Checked:
     check_amounts(draft)
     check_rules(draft)
     known = Known(**draft.names) if draft.is_sound(*KEYS) else None
-    lanes = parse_lanes(raw.tables.get("lanes"), known, gathering)
-    check_places(draft, lanes)
+    parsed = parse_lanes(raw.tables.get("lanes"), known, gathering)
+    check_places(draft, parsed)
     study = Study(
         settings=settings,
-        lanes=lanes,
+        lanes=parsed.table,
         columns={name: table.header for name, table in raw.tables.items()},
         warnings=gathering.warnings(),
-        **{name: parsed.rows for name, parsed in draft.tables.items()},
+        **{name: table.rows for name, table in draft.tables.items()},
     )
     faults = gathering.faults()
     return Checked(study=None if faults else study, faults=faults, warnings=study.warnings)
