@@ -8,13 +8,11 @@ with an enumeration of every set of open sites (`tests/whole/enumeration.py`).
 from __future__ import annotations
 
 from dataclasses import replace
+from typing import TYPE_CHECKING
 
-from siting.study.settings import Settings
 from siting.study.tables import (
     CustomerRow,
     Leg,
-    RuleKind,
-    RuleRow,
     SiteRow,
     SiteRuling,
     SiteStanding,
@@ -33,8 +31,13 @@ from tests.building import (
     suppliers_alone,
 )
 
+if TYPE_CHECKING:
+    from collections.abc import Mapping
 
-def _sites(charges: dict[str, tuple[float, float]], standing: SiteStanding = SiteStanding.PROPOSED) -> list[SiteRow]:
+    from siting.study.settings import Settings
+
+
+def _sites(charges: Mapping[str, tuple[float, float]], standing: SiteStanding = SiteStanding.PROPOSED) -> list[SiteRow]:
     """Return sites from name: (yearly charge, capacity)."""
     return [
         SiteRow(site=name, standing=standing, yearly_charge=float(charge), capacity=float(capacity))
@@ -194,7 +197,7 @@ def twelve_depots() -> Study:
     demand = [120, 80, 75, 100, 110, 100, 90, 60, 30, 150, 95, 120]
     charges = [3500, 9000, 10000, 4000, 3000, 9000, 9000, 3000, 4000, 10000, 9000, 3500]
     capacities = [300, 250, 100, 180, 275, 300, 200, 220, 270, 250, 230, 180]
-    whole = [
+    whole: list[list[float]] = [
         [100, 80, 50, 50, 60, 100, 120, 90, 60, 70, 65, 110],
         [120, 90, 60, 70, 65, 110, 140, 110, 80, 80, 75, 130],
         [140, 110, 80, 80, 75, 130, 160, 125, 100, 100, 80, 150],
@@ -394,17 +397,13 @@ _HUBS = """
 
 def hubs() -> Study:
     """Winston, Operations Research, integer programming chapter: Western Airlines, hubs within 1,000 miles (memory)."""
-    near = {
-        head.strip(): cities.split() for head, cities in (entry.split(": ") for entry in _HUBS.strip().split(";"))
-    }
+    near = {head.strip(): cities.split() for head, cities in (entry.split(": ") for entry in _HUBS.strip().split(";"))}
     return one_echelon(
         "hubs",
         [SiteRow(site=f"hub {name}", yearly_charge=1.0) for name in near],
         dict.fromkeys(near, 1.0),
         [[0.0 if city in cities else MISSING for city in near] for cities in near.values()],
     )
-
-
 
 
 TRANSPORT: dict[str, tuple[list[float], list[float], list[list[float]], float]] = {

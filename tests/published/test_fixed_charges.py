@@ -103,7 +103,7 @@ BOUNDS = {
 
 @pytest.mark.parametrize("name", BOUNDS)
 def test_relaxes_to_the_weak_and_strong_bound(name: str) -> None:
-    """The two linear relaxations are worth what they are known to be worth, so the links are as tight as they can be."""
+    """The two linear relaxations are worth what they are known to be worth: the links are tight."""
     weak, strong = BOUNDS[name]
     study = OPTIMA[name][0]
     whole = replace(study, settings=replace(study.settings, single_source=False))
@@ -160,7 +160,9 @@ def test_a_bound_is_not_shown_as_a_plan() -> None:
     assert len(open_sites(plan)) == 2
 
 
-@pytest.mark.parametrize(("minutes", "stations"), [(9.999, 6), (10, 4), (14, 4), (14.999, 4), (15, 2), (20, 2), (25, 1)])
+@pytest.mark.parametrize(
+    ("minutes", "stations"), [(9.999, 6), (10, 4), (14, 4), (14.999, 4), (15, 2), (20, 2), (25, 1)]
+)
 def test_covers_cities_within_reach(minutes: float, stations: int) -> None:
     """Fewest stations that reach every city: two within 15 minutes (as printed); the other minutes are calculated."""
     plan = proved(given.fire_stations(minutes))

@@ -21,23 +21,29 @@ import pulp
 from pyproj import Geod
 
 from siting.study.tables import (
+    CustomerRow,
     Leg,
     RuleKind,
+    SiteRow,
     SiteRuling,
     SiteStanding,
+    SupplierRow,
     SupplierRuling,
     SupplierStanding,
 )
+from tests.building import lane_rows
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Mapping
+    from collections.abc import Iterator, Mapping, Sequence
 
-    from siting.study.tables import OfferRow, SizeRow, Study
+    from siting.study.tables import GoodRow, OfferRow, SizeRow, Study
 
     Pair = tuple[str, str]
     """Customer and good."""
     Way = tuple[Leg, str, str, str]
     """Leg, origin, destination and good of one lane."""
+    Origin = SiteRow | SupplierRow
+    Destination = SiteRow | CustomerRow
 
 SLACK = 1e-9
 """Relative: sums of quarters that agree to this are equal."""
@@ -96,7 +102,7 @@ class Enumeration:
 
     def best(self) -> Best | None:
         """Return the cheapest plan, or None where no set of verdicts can serve the demand."""
-        ranked = []
+        ranked: list[tuple[float, int, Verdicts]] = []
         for verdicts in self._verdicts():
             bound = self._lower_bound(verdicts)
             if bound is not None:
@@ -146,9 +152,7 @@ class Enumeration:
         return {
             way: lane
             for way, lane in self.lanes.items()
-            if way[1] not in shut
-            and way[2] not in shut
-            and (way[0] is Leg.OUTBOUND or way[1] in verdicts.signed)
+            if way[1] not in shut and way[2] not in shut and (way[0] is Leg.OUTBOUND or way[1] in verdicts.signed)
         }
 
     def _origins(self, ways: Mapping[Way, Lane], pair: Pair) -> dict[str, float]:
@@ -186,13 +190,9 @@ class Enumeration:
     def _cheapest_flow(self, verdicts: Verdicts, below: float) -> float | None:
         """Return the cheapest flow, over every assignment of single-sourced customers; None where none is below."""
         ways = self._ways(verdicts)
-        single = [
-            customer for customer in sorted(self.single) if any(name == customer for name, _ in self.demand)
-        ]
+        single = [customer for customer in sorted(self.single) if any(name == customer for name, _ in self.demand)]
         costs = {pair: self._origins(ways, pair) for pair in self.demand}
-        rest = sum(
-            amount * min(costs[pair].values()) for pair, amount in self.demand.items() if pair[0] not in single
-        )
+        rest = sum(amount * min(costs[pair].values()) for pair, amount in self.demand.items() if pair[0] not in single)
         best: float | None = None
         for assignment in self._assignments(verdicts, single, costs):
             bound = rest + sum(
@@ -306,9 +306,7 @@ def _charges(study: Study, options: Mapping[str, SizeRow | None], signed: frozen
     return charge, one_off
 
 
-def _allowed(
-    study: Study, options: Mapping[str, SizeRow | None], signed: frozenset[str], one_off: float
-) -> bool:
+def _allowed(study: Study, options: Mapping[str, SizeRow | None], signed: frozenset[str], one_off: float) -> bool:
     """Return whether counts, budget and rules allow a set of verdicts."""
     settings = study.settings
     count = sum(option is not None for option in options.values())
@@ -334,76 +332,77 @@ def _allowed(
     return True
 
 
-def _lanes(
-    study: Study, demand: Mapping[Pair, float], offers: Mapping[Pair, OfferRow]
-) -> Iterator[tuple[Way, Lane]]:
+def _lanes(study: Study, demand: Mapping[Pair, float], offers: Mapping[Pair, OfferRow]) -> Iterator[tuple[Way, Lane]]:
     """Yield every lane that exists, with what moving one unit on it costs."""
     overrides = _overrides(study)
     wanted = {good for _, good in demand}
     for good in (row for row in study.all_goods if row.good in wanted):
         receivers = [row for row in study.customers if (row.customer, good.good) in demand]
         sellers = [row for row in study.suppliers if (row.supplier, good.good) in offers]
-        price = {row.supplier: offers[row.supplier, good.good].unit_price for row in sellers}
-        legs = (
+        legs: tuple[tuple[Leg, Sequence[Origin], Sequence[Destination]], ...] = (
             (Leg.INBOUND, sellers, study.sites),
             (Leg.OUTBOUND, study.sites, receivers),
             (Leg.DIRECT, sellers, receivers),
         )
         for leg, origins, destinations in legs:
-            for origin, destination in itertools.product(origins, destinations):  # type: ignore[call-overload]  # rows of two tables
-                name, to = _name(origin), _name(destination)
-                given = overrides.get((leg, name, to, good.good)) or overrides.get((leg, name, to, ""))
-                lane = _priced(study, leg, origin, destination, good, given)
+            for origin, destination in itertools.product(origins, destinations):
+                ends = (leg, _name(origin), _name(destination))
+                given = overrides.get((*ends, good.good)) or overrides.get((*ends, ""))
+                if (given is None and leg is Leg.DIRECT) or (given is not None and given.barred):
+                    continue
+                lane = _priced(study, leg, origin, destination, good, given or Given())
                 if lane is None:
                     continue
-                extra = origin.handling_rate * good.load if leg is Leg.OUTBOUND else price[name]
-                yield (leg, name, to, good.good), Lane(km=lane.km, cost=lane.cost + extra)
+                if isinstance(origin, SiteRow):
+                    added = origin.handling_rate * good.load
+                else:
+                    added = offers[origin.supplier, good.good].unit_price
+                yield (*ends, good.good), Lane(km=lane.km, cost=lane.cost + added)
 
 
-def _overrides(study: Study) -> dict[Way, tuple[float | None, float | None, bool, bool]]:
-    """Return road km, unit cost, barred and names-a-good of each row of `lanes`."""
-    table, found = study.lanes, {}
-    for n in range(len(table)):
-        good = table.names[table.good[n]] if table.good[n] >= 0 else ""
-        key = (table.LEGS[table.leg[n]], table.names[table.origin[n]], table.names[table.destination[n]], good)
-        km, money = float(table.road_km[n]), float(table.unit_cost[n])
-        found[key] = (
-            None if math.isnan(km) else km,
-            None if math.isnan(money) else money,
-            bool(table.barred[n]),
-            bool(good),
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Given:
+    """What one row of `lanes` gives."""
+
+    km: float | None = None
+    money: float | None = None
+    barred: bool = False
+    names_good: bool = False
+
+
+def _overrides(study: Study) -> dict[Way, Given]:
+    """Return what each row of `lanes` gives, by leg, origin, destination and good ("" = every good)."""
+    return {
+        (row.leg, row.origin, row.destination, row.good): Given(
+            km=row.road_km, money=row.unit_cost, barred=row.barred, names_good=bool(row.good)
         )
-    return found
+        for row in lane_rows(study.lanes)
+    }
 
 
-def _name(row: object) -> str:
-    for column in ("site", "supplier", "customer"):
-        if hasattr(row, column):
-            return str(getattr(row, column))
-    raise TypeError(row)
+def _name(row: Origin | Destination) -> str:
+    if isinstance(row, SiteRow):
+        return row.site
+    return row.customer if isinstance(row, CustomerRow) else row.supplier
 
 
-def _priced(study, leg, origin, destination, good, given) -> Lane | None:  # type: ignore[no-untyped-def]  # noqa: ANN001 - rows of three tables
+def _priced(  # noqa: PLR0917 - all that a lane depends on
+    study: Study, leg: Leg, origin: Origin, destination: Destination, good: GoodRow, given: Given
+) -> Lane | None:
     """Return km and freight, delivery and carbon per unit of a lane; None where it does not exist."""
     settings = study.settings
-    km, money, barred, of_good = given or (None, None, False, False)
-    if barred or (leg is Leg.DIRECT and given is None):
+    km = given.km
+    if km is None:
+        km = _estimated_km(origin, destination, settings.circuity)
+    if given.money is not None:
+        cost = given.money if given.names_good else given.money * good.load
+    elif km is None:
         return None
-    if km is None and None not in (origin.latitude, destination.latitude):
-        metres = Geod(ellps="WGS84").inv(
-            origin.longitude, origin.latitude, destination.longitude, destination.latitude
-        )[2]
-        km = metres / 1000 * settings.circuity
-    if money is None:
-        if km is None:
-            return None
-        rate = settings.inbound_rate if leg is Leg.INBOUND else settings.outbound_rate
-        cost = rate * km * good.load
+    else:
+        cost = (settings.inbound_rate if leg is Leg.INBOUND else settings.outbound_rate) * km * good.load
         if leg is not Leg.INBOUND and settings.drop_size is not None:
             cost += settings.drop_charge / settings.drop_size * good.load
-    else:
-        cost = money if of_good else money * good.load
-    reach = None if leg is Leg.INBOUND else destination.reach_km
+    reach = destination.reach_km if isinstance(destination, CustomerRow) else None
     if reach is not None and km is not None and km > reach:
         return None
     if settings.emission_kg_per_tkm is not None and km is not None:
@@ -411,9 +410,16 @@ def _priced(study, leg, origin, destination, good, given) -> Lane | None:  # typ
     return Lane(km=km, cost=cost)
 
 
-def _flow_by_network_simplex(
-    search: Enumeration, verdicts: Verdicts, ways: Mapping[Way, Lane]
-) -> float | None:
+def _estimated_km(origin: Origin, destination: Destination, circuity: float) -> float | None:
+    if origin.latitude is None or origin.longitude is None:
+        return None
+    if destination.latitude is None or destination.longitude is None:
+        return None
+    ends = (origin.longitude, origin.latitude, destination.longitude, destination.latitude)
+    return float(Geod(ellps="WGS84").inv(*ends)[2]) / 1000 * circuity
+
+
+def _flow_by_network_simplex(search: Enumeration, verdicts: Verdicts, ways: Mapping[Way, Lane]) -> float | None:
     """
     Return the least cost of whole-number flows.
 
@@ -430,23 +436,15 @@ def _flow_by_network_simplex(
         limit = {} if math.isinf(capacity) else {"capacity": int(capacity - least)}
         graph.add_edge(tail, head, weight=int(cost), **limit)
 
-    for row in study.suppliers:
-        if row.supplier not in verdicts.signed:
-            continue
-        offer = search.offers.get((row.supplier, good))
-        capacity = 0.0 if offer is None else min(_unlimited(row.capacity), _unlimited(offer.capacity))
-        least = max(row.least_yearly, 0.0 if offer is None else offer.least_yearly)
+    ends = {f"buy {name}": limits for name, limits in _supply_limits(search, verdicts, good).items()}
+    for site, option in verdicts.options.items():
+        if option is not None:
+            ends[f"out of {site}"] = (option.least_throughput, option.capacity)
+    for node, (least, capacity) in ends.items():
         if least > capacity:
             return None
-        arc("source", f"buy {row.supplier}", least, capacity)
-    for site, option in verdicts.options.items():
-        if option is None:
-            continue
-        if option.least_throughput > option.capacity:
-            return None
-        arc(f"into {site}", f"out of {site}", option.least_throughput, option.capacity)
-        if not study.suppliers:
-            arc("source", f"into {site}", 0, math.inf)
+        before = node.replace("out of", "into") if study.suppliers and node.startswith("out of") else "source"
+        arc(before, node, least, capacity)
     for (leg, origin, destination, _), lane in ways.items():
         tail = f"out of {origin}" if leg is Leg.OUTBOUND else f"buy {origin}"
         arc(tail, f"into {destination}" if leg is Leg.INBOUND else f"to {destination}", 0, math.inf, lane.cost)
@@ -462,41 +460,32 @@ def _flow_by_network_simplex(
         return None
 
 
+def _supply_limits(search: Enumeration, verdicts: Verdicts, good: str) -> dict[str, tuple[float, float]]:
+    """Return the least and the most that each signed supplier sells of the only good."""
+    limits = {}
+    for row in search.study.suppliers:
+        offer = search.offers.get((row.supplier, good))
+        if row.supplier not in verdicts.signed:
+            continue
+        if offer is None:
+            limits[row.supplier] = (row.least_yearly, 0.0)
+        else:
+            most = min(_unlimited(row.capacity), _unlimited(offer.capacity))
+            limits[row.supplier] = (max(row.least_yearly, offer.least_yearly), most)
+    return limits
+
+
 def _flow_by_cbc(search: Enumeration, verdicts: Verdicts, ways: Mapping[Way, Lane]) -> float | None:
     """Return the least cost of flows, solved by CBC."""
-    study, load, weight = search.study, search.load, search.weight
     problem = pulp.LpProblem("flows", pulp.LpMinimize)
     flow = {way: problem.add_variable(f"f{n}", 0) for n, way in enumerate(ways)}
     problem += pulp.lpSum(ways[way].cost * amount for way, amount in flow.items())
     for (customer, good), amount in search.demand.items():
         served = [flow[way] for way in ways if way[0] is not Leg.INBOUND and way[2:] == (customer, good)]
         problem += pulp.lpSum(served) == amount
-    for site, option in verdicts.options.items():
-        out = [way for way in ways if way[0] is Leg.OUTBOUND and way[1] == site]
-        through = pulp.lpSum(load[way[3]] * flow[way] for way in out)
-        if option is not None and not math.isinf(option.capacity):
-            problem += through <= option.capacity
-        if option is not None and option.least_throughput > 0:
-            problem += through >= option.least_throughput
-        for good in load if study.suppliers else ():
-            inflow = [flow[way] for way in ways if way[0] is Leg.INBOUND and way[2:] == (site, good)]
-            problem += pulp.lpSum(inflow) == pulp.lpSum(flow[way] for way in out if way[3] == good)
-    for row in study.suppliers:
-        if row.supplier not in verdicts.signed:
-            continue
-        sold = {good: [flow[way] for way in ways if way[1] == row.supplier and way[3] == good] for good in load}
-        volume = pulp.lpSum(load[good] * pulp.lpSum(amounts) for good, amounts in sold.items())
-        if not math.isinf(_unlimited(row.capacity)):
-            problem += volume <= row.capacity
-        if row.least_yearly > 0:
-            problem += volume >= row.least_yearly
-        for good, amounts in sold.items():
-            offer = search.offers.get((row.supplier, good))
-            if offer is not None and not math.isinf(_unlimited(offer.capacity)):
-                problem += pulp.lpSum(amounts) <= offer.capacity
-            if offer is not None and offer.least_yearly > 0:
-                problem += pulp.lpSum(amounts) >= offer.least_yearly
-    settings = study.settings
+    _limit_sites(problem, search, verdicts, flow)
+    _limit_suppliers(problem, search, verdicts, flow)
+    settings, weight = search.study.settings, search.weight
     if settings.service_share is not None and settings.service_km is not None:
         near = [
             weight[way[3]] * flow[way]
@@ -509,3 +498,41 @@ def _flow_by_cbc(search: Enumeration, verdicts: Verdicts, ways: Mapping[Way, Lan
     if problem.status != pulp.LpStatusOptimal:
         return None
     return float(sum(ways[way].cost * (amount.value() or 0.0) for way, amount in flow.items()))
+
+
+def _limit(problem: pulp.LpProblem, volume: object, least: float, most: float) -> None:
+    if not math.isinf(most):
+        problem += volume <= most  # type: ignore[operator]  # PuLP has no types
+    if least > 0:
+        problem += volume >= least  # type: ignore[operator]  # PuLP has no types
+
+
+def _limit_sites(
+    problem: pulp.LpProblem, search: Enumeration, verdicts: Verdicts, flow: Mapping[Way, pulp.LpVariable]
+) -> None:
+    """Hold each open site to its capacity, its least throughput and, where suppliers exist, its balance."""
+    for site, option in verdicts.options.items():
+        if option is None:
+            continue
+        out = [way for way in flow if way[0] is Leg.OUTBOUND and way[1] == site]
+        through = pulp.lpSum(search.load[way[3]] * flow[way] for way in out)
+        _limit(problem, through, option.least_throughput, option.capacity)
+        for good in search.load if search.study.suppliers else ():
+            inflow = [flow[way] for way in flow if way[0] is Leg.INBOUND and way[2:] == (site, good)]
+            problem += pulp.lpSum(inflow) == pulp.lpSum(flow[way] for way in out if way[3] == good)
+
+
+def _limit_suppliers(
+    problem: pulp.LpProblem, search: Enumeration, verdicts: Verdicts, flow: Mapping[Way, pulp.LpVariable]
+) -> None:
+    """Hold each signed supplier to its load and each of its offers to its units."""
+    for row in search.study.suppliers:
+        if row.supplier not in verdicts.signed:
+            continue
+        sold = {good: [flow[way] for way in flow if way[1] == row.supplier and way[3] == good] for good in search.load}
+        volume = pulp.lpSum(search.load[good] * pulp.lpSum(amounts) for good, amounts in sold.items())
+        _limit(problem, volume, row.least_yearly, _unlimited(row.capacity))
+        for good, amounts in sold.items():
+            offer = search.offers.get((row.supplier, good))
+            if offer is not None:
+                _limit(problem, pulp.lpSum(amounts), offer.least_yearly, _unlimited(offer.capacity))

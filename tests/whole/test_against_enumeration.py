@@ -14,7 +14,6 @@ from hypothesis import HealthCheck, assume, given, settings
 
 from siting.plan.plan import SiteVerdict, SupplierVerdict, TodayOutcome
 from siting.plan.proof import Outcome
-from siting.study.settings import SolveSettings
 from siting.study.tables import SiteRuling, SiteStanding, SupplierRuling, SupplierStanding
 from tests.answers import EXACT, audited, open_sites, signed_suppliers
 from tests.whole.enumeration import Enumeration
@@ -22,6 +21,7 @@ from tests.whole.generator import FEATURES, studies
 
 if TYPE_CHECKING:
     from siting.plan.plan import Answer
+    from siting.study.settings import SolveSettings
     from siting.study.tables import Study
 
 MONEY = 1e-6
@@ -138,9 +138,7 @@ def as_it_is(study: Study) -> Study:
             for row in study.sites
             if row.standing is SiteStanding.RUNNING
         ),
-        sizes=tuple(
-            replace(row, least_throughput=0.0) for row in study.sizes if row.standing is SiteStanding.RUNNING
-        ),
+        sizes=tuple(replace(row, least_throughput=0.0) for row in study.sizes if row.standing is SiteStanding.RUNNING),
         suppliers=tuple(
             replace(row, ruling=SupplierRuling.PINNED_SIGNED, least_yearly=0.0)
             for row in study.suppliers
