@@ -166,16 +166,17 @@ def _check_pairs(place: str, settings: Settings, gathering: Gathering) -> None:
         if not gathering.hurt(place, None, name):
             gathering.fault(place, None, name, _shown(value), wrong, repair)
 
-    def both(first: str, one: object, second: str, other: object) -> None:
+    def both(first: str, second: str) -> None:
         if gathering.hurt(place, None, first, second):
             return
-        if one and not other:
-            fault(first, one, f"{first} is set without {second}", f"Set {second} too, or delete {first}")
-        elif other and not one:
-            fault(second, other, f"{second} is set without {first}", f"Set {first} too, or delete {second}")
+        is_set = {name: getattr(settings, name) != getattr(Settings(), name) for name in (first, second)}
+        for name, other in ((first, second), (second, first)):
+            if is_set[name] and not is_set[other]:
+                wrong = f"{name} is set without {other}"
+                fault(name, getattr(settings, name), wrong, f"Set {other} too, or delete {name}")
 
-    both("drop_charge", settings.drop_charge, "drop_size", settings.drop_size)
-    both("service_km", settings.service_km, "service_share", settings.service_share)
+    both("drop_charge", "drop_size")
+    both("service_km", "service_share")
     if settings.carbon_price_per_t and settings.emission_kg_per_tkm is None:
         fault(
             "carbon_price_per_t", settings.carbon_price_per_t,
