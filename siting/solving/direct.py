@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import math
 import time
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import highspy
@@ -33,6 +34,27 @@ GAP_MARGIN = 0.999
 
 LEAST_SECONDS = 0.01
 """Time limit given to a solver when building the model used all of it: enough to return cleanly."""
+
+NOTES = {
+    highspy.HighsModelStatus.kOptimal: "",
+    highspy.HighsModelStatus.kTimeLimit: "stopped by the time limit",
+    highspy.HighsModelStatus.kInterrupt: "stopped on request",
+}
+"""What is said of each way a run may end well; empty where it ended by itself."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Found:
+    """What a run of a solver on a model ended with."""
+
+    values: Floats | None
+    """(columns,) of the best solution; None without one."""
+    bound: float | None
+    """In the unit of the objective (money a year, or load unserved), valid also when stopped."""
+    impossible: bool
+    """True only when nothing satisfies the rows."""
+    note: str
+    """Why it stopped before its end; empty where it did not."""
 
 
 def direct(
@@ -73,10 +95,54 @@ def direct(
     listener.update(Progress(elapsed_s=0.0, phase="stating the model"))
     model = build_model(network)
     if stop.requested:
-        return EngineResult(decisions=start, bound=None, note="stopped on request")
-    solver = InProcess(model, settings, listener=listener, stop=stop, start=start, began=began)
-    model.problem.solve(solver)
-    return _result(model, model.problem.solverModel)
+        return EngineResult(decisions=start, bound=None, note=NOTES[highspy.HighsModelStatus.kInterrupt])
+    found = search(model, settings, listener=listener, stop=stop, start=start, began=began)
+    return EngineResult(
+        decisions=None if found.values is None else model.decisions(found.values),
+        bound=found.bound,
+        impossible=found.impossible,
+        note=found.note,
+    )
+
+
+def search(  # noqa: PLR0913 - what a run needs, each named
+    model: Model,
+    settings: SolveSettings,
+    *,
+    listener: Listener,
+    stop: Stop,
+    start: Decisions | None = None,
+    began: float | None = None,
+) -> Found:
+    """
+    Run HiGHS on a model.
+
+    Parameters
+    ----------
+    model
+        As built.
+    settings
+        Gap and time limit.
+    listener, stop
+        Told how far it is; asks to stop.
+    start
+        Decisions to begin from.
+    began
+        `time.monotonic()` when the time began to count; now where None.
+
+    Returns
+    -------
+    found
+        Values, bound, and how it ended.
+
+    Raises
+    ------
+    EngineError
+        If HiGHS gives up without values for a reason of its own.
+    """
+    began = time.monotonic() if began is None else began
+    model.problem.solve(InProcess(model, settings, listener=listener, stop=stop, start=start, began=began))
+    return _found(model, model.problem.solverModel)
 
 
 def column_values(model: Model, highs: highspy.Highs) -> Floats:
@@ -125,7 +191,7 @@ class InProcess(pulp.HiGHS):  # type: ignore[misc] # PuLP ships no types
 
     def createAndConfigureSolver(self, lp: pulp.LpProblem) -> None:  # noqa: N802 - overrides a method of PuLP
         """Make a quiet HiGHS with our limits and our listener."""
-        highs = QuietHighs()
+        highs = QuietHighs()  # type: ignore[no-untyped-call] # highspy types only part of its methods
         left = max(self._settings.time_limit_s - (time.monotonic() - self._began), LEAST_SECONDS)
         options: dict[str, float] = {
             "mip_rel_gap": self._settings.gap * GAP_MARGIN,
@@ -174,24 +240,24 @@ def _finite(value: float, money: float) -> float | None:
     return value * money if math.isfinite(value) else None
 
 
-def _result(model: Model, highs: highspy.Highs) -> EngineResult:
+def _found(model: Model, highs: highspy.Highs) -> Found:
+    """Read how the run ended from HiGHS itself."""
     if is_impossible(highs):
-        return EngineResult(decisions=None, bound=None, impossible=True)
+        return Found(values=None, bound=None, impossible=True, note="")
     status = highs.getModelStatus()
-    notes = {
-        highspy.HighsModelStatus.kOptimal: "",
-        highspy.HighsModelStatus.kTimeLimit: "stopped by the time limit",
-        highspy.HighsModelStatus.kInterrupt: "stopped on request",
-    }
-    found = has_solution(highs)
-    if not found and status not in notes:
+    there = has_solution(highs)
+    if not there and status not in NOTES:
         msg = f"HiGHS gave up without a plan: {highs.modelStatusToString(status)}. Try the engine `cbc`."
         raise EngineError(msg)
     info = highs.getInfo()
-    whole = any(variable.cat == pulp.LpInteger for variable in model.problem.variables())
-    bound = info.mip_dual_bound if whole else info.objective_function_value
-    return EngineResult(
-        decisions=model.decisions(column_values(model, highs)) if found else None,
-        bound=_finite(bound, model.money) if whole or status == highspy.HighsModelStatus.kOptimal else None,
-        note=notes.get(status, f"HiGHS ended with: {highs.modelStatusToString(status)}"),
+    bound: float | None = None
+    if any(variable.cat == pulp.LpInteger for variable in model.problem.variables()):
+        bound = _finite(info.mip_dual_bound, model.money)
+    elif status == highspy.HighsModelStatus.kOptimal:
+        bound = info.objective_function_value * model.money
+    return Found(
+        values=column_values(model, highs) if there else None,
+        bound=bound,
+        impossible=False,
+        note=NOTES.get(status, f"HiGHS ended with: {highs.modelStatusToString(status)}"),
     )

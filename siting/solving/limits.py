@@ -9,6 +9,7 @@ import numpy as np
 
 from siting.solving.columns import NONE
 from siting.solving.rows import AT_LEAST, AT_MOST, EXACTLY, Family, grouped
+from siting.solving.tightest import is_near
 from siting.study.tables import RuleKind
 
 if TYPE_CHECKING:
@@ -144,7 +145,7 @@ def _service(rows: Rows, network: Network, columns: Columns) -> None:
         (network.outbound, columns.outbound, columns.outbound_units),
         (network.direct, columns.direct, columns.direct_units),
     ):
-        near = lanes.km <= network.service_km
+        near = is_near(network, lanes)
         terms += paired(column[near], (units * network.weight_t[lanes.good])[near])
     asked = network.service_share * float((network.demand @ network.weight_t).sum())
     rows.add(Family.SERVICE, 0, terms, AT_LEAST, asked)

@@ -12,6 +12,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from siting.solving.tightest import holds
+
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
@@ -117,12 +119,12 @@ class _Linker:
         """Let a customer be taken whole only by an open option that can hold it whole, or by a signed supplier."""
         sites = len(self.network.sites)
         option = self.columns.option.tolist()
-        capacity = self.network.option_capacity.tolist()
         pairs = self.most.pairs
         for pair, (origin, load) in enumerate(zip(pairs.origin.tolist(), pairs.load.tolist(), strict=True)):
             terms = [(int(self.columns.pair[pair]), 1.0)]
             if origin < sites:
-                terms += [(option[size], -1.0) for size in self.options[origin] if capacity[size] >= load]
+                fits = holds(self.network.option_capacity, load)
+                terms += [(option[size], -1.0) for size in self.options[origin] if fits[size]]
             else:
                 terms.append((int(self.columns.supplier[origin - sites]), -1.0))
             self.rows.link(f"holds_a_{pair}", terms)

@@ -11,6 +11,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from siting.network.lanes import EDGE
+
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
@@ -120,15 +122,39 @@ def in_units(load: Floats, load_per_unit: Floats) -> Floats:
     return units
 
 
+def holds(capacity: Floats, load: Floats) -> Flags:
+    """Return whether a capacity holds a load, give or take rounding: the same edge as where lanes are made."""
+    return np.asarray(load <= capacity * (1.0 + EDGE))
+
+
+def is_near(network: Network, lanes: LegLanes) -> Flags:
+    """
+    Return which lanes are within the service distance.
+
+    Parameters
+    ----------
+    network
+        Gives the service distance.
+    lanes
+        Outbound or direct.
+
+    Returns
+    -------
+    near
+        Shape (lanes,); a lane longer by no more than rounding is near, one without a distance is not.
+    """
+    return np.asarray(lanes.km <= network.service_km * (1.0 + EDGE))
+
+
 def _pairs(network: Network) -> tuple[Pairs, Flags, Flags]:
     """Return the pairs, and which outbound and direct lanes can be used at all."""
     customer_load = network.demand @ network.load
     largest = np.zeros(len(network.sites))
     np.maximum.at(largest, network.option_site, network.option_capacity)
-    fits_site = (customer_load[None, :] <= largest[:, None]) & ~network.site_pinned_shut[:, None]
+    fits_site = holds(largest[:, None], customer_load[None, :]) & ~network.site_pinned_shut[:, None]
     offered = np.where(network.demand[None, :, :] > 0, network.offer_capacity[:, None, :], np.inf)
-    fits_supplier = np.all(network.demand[None, :, :] <= offered, axis=2)
-    fits_supplier &= customer_load[None, :] <= network.supplier_capacity[:, None]
+    fits_supplier = np.all(holds(offered, network.demand[None, :, :]), axis=2)
+    fits_supplier &= holds(network.supplier_capacity[:, None], customer_load[None, :])
     fits_supplier &= ~network.supplier_pinned_unsigned[:, None]
 
     of_outbound, key_outbound = _whole(network, network.outbound, fits_site)
