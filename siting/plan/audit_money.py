@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 
 from siting.plan.audit_books import RELATIVE, differs, shown
 from siting.plan.audit_limits import service_share
-from siting.plan.audit_verdicts import opening_yearly, spread
+from siting.plan.audit_verdicts import every_one_once, opening_yearly, spread
 from siting.plan.plan import CostLine
 from siting.study.tables import Leg
 
@@ -82,9 +82,7 @@ def _flow(move: Move, currency: str) -> Iterator[str]:
 
 def _customers(books: Books, scale: float) -> Iterator[str]:
     """Yield customers whose line is not what the flows give."""
-    listed = [line.customer for line in books.plan.customers]
-    if listed != list(books.customers):
-        yield "the plan does not list every customer once, in the order of the table"
+    yield from every_one_once("customer", (line.customer for line in books.plan.customers), books.customers)
     moves: dict[str, list[Move]] = defaultdict(list)
     for move in books.deliveries:
         moves[move.flow.destination].append(move)

@@ -10,7 +10,7 @@ from siting.plan.audit_books import differs, exceeds, shown
 from siting.study.tables import RuleKind, SiteRuling, SupplierRuling
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Iterator
+    from collections.abc import Collection, Iterable, Iterator
 
     from siting.plan.audit_books import Books
     from siting.plan.plan import SiteLine, SupplierLine
@@ -20,8 +20,8 @@ if TYPE_CHECKING:
 
 def check_verdicts(books: Books) -> Iterator[str]:
     """Yield what is wrong with the verdicts themselves."""
-    yield from _every_one_once("site", (line.site for line in books.plan.sites), books.sites)
-    yield from _every_one_once("supplier", (line.supplier for line in books.plan.suppliers), books.suppliers)
+    yield from every_one_once("site", (line.site for line in books.plan.sites), books.sites)
+    yield from every_one_once("supplier", (line.supplier for line in books.plan.suppliers), books.suppliers)
     for site in books.plan.sites:
         if site.site in books.sites:
             yield from _site(books, site)
@@ -31,17 +31,14 @@ def check_verdicts(books: Books) -> Iterator[str]:
     yield from _one_off(books)
 
 
-def _every_one_once(kind: str, listed: Iterable[str], wanted: Iterable[str]) -> Iterator[str]:
+def every_one_once(kind: str, listed: Iterable[str], wanted: Collection[str]) -> Iterator[str]:
     """Yield names that are missing, unknown or listed more than once (two sizes of one site would be)."""
     counts = Counter(listed)
     for name in wanted:
-        if counts[name] == 0:
-            yield f"{kind} {name} has no verdict"
-    for name, count in counts.items():
-        if count > 1:
-            yield f"{kind} {name} has {count} verdicts; at most one size of a site may be open"
-        if name not in set(wanted):
-            yield f"{kind} {name} is in no table"
+        if counts[name] != 1:
+            yield f"{kind} {name} has {counts[name] or 'no'} line{'s' if counts[name] else ''} instead of one"
+    for name in counts.keys() - set(wanted):
+        yield f"{kind} {name} is in no table"
 
 
 def _site(books: Books, line: SiteLine) -> Iterator[str]:

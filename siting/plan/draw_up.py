@@ -23,6 +23,7 @@ from siting.plan.plan import (
 from siting.plan.pricing import cost_lines, costs_to_serve, moves_of
 from siting.plan.proof import PROVED_GAP, Proof, outcome_of
 from siting.plan.service import service_of, tonnes_co2e_of
+from siting.plan.words import percent
 from siting.study.fingerprint import fingerprint
 from siting.study.tables import Leg
 
@@ -194,8 +195,9 @@ def _site_note(study: Study, network: Network, site: int, option: int, load: flo
 def _supplier_lines(study: Study, network: Network, decisions: Decisions, moves: AllMoves) -> tuple[SupplierLine, ...]:
     """Return every supplier with its verdict."""
     count = len(network.suppliers)
-    volume = np.bincount(moves.inbound.origin, weights=moves.inbound.load, minlength=count)
-    volume += np.bincount(moves.direct.origin, weights=moves.direct.load, minlength=count)
+    volume = np.zeros(count)
+    for leg in (moves.inbound, moves.direct):
+        np.add.at(volume, leg.origin, leg.load)
     offered = (network.offer_capacity * network.load).sum(axis=1)
     capacity = np.minimum(network.supplier_capacity, offered)
     lines = []
@@ -306,13 +308,12 @@ def _warnings(study: Study, sites: tuple[SiteLine, ...], service: Service) -> tu
     warnings = []
     if service.estimated_share:
         warnings.append(
-            f"{service.estimated_share:.0%} of the load is delivered over estimated distances "
+            f"{percent(service.estimated_share)} of the load is delivered over estimated distances "
             f"(straight line times {study.settings.circuity:g}), which understate short trips."
         )
-    fuller = [(line.site, line.utilisation * (1 + GROWTH)) for line in sites if line.utilisation is not None]
-    full = [f"{site} ({share:.0%})" for site, share in fuller if share > FULL_SHARE]
+    grown = [(line.site, line.utilisation * (1 + GROWTH)) for line in sites if line.utilisation is not None]
+    full = [f"{site} ({percent(share)})" for site, share in grown if share > FULL_SHARE]
     if full:
-        warnings.append(
-            f"With demand {GROWTH:.0%} higher these sites would be above {FULL_SHARE:.0%} full: {', '.join(full)}."
-        )
+        higher, limit = percent(GROWTH), percent(FULL_SHARE)
+        warnings.append(f"With demand {higher} higher these sites would be above {limit} full: {', '.join(full)}.")
     return tuple(warnings)

@@ -26,8 +26,8 @@ if TYPE_CHECKING:
 
 CAUTIONS = (
     (
-        "This is decision support, not a decision: before money or jobs move, confirm freight quotes, leases, capacity, "
-        "zoning, flood and fire exposure, customs and labour law with the people licensed to judge them."
+        "This is decision support, not a decision: before money or jobs move, confirm freight quotes, leases, "
+        "capacity, zoning, flood and fire exposure, customs and labour law with the people licensed to judge them."
     ),
     "Straight-line distances times a circuity factor understate short trips.",
     "A proof is about the model, not about the data.",
@@ -111,7 +111,8 @@ def percent(share: float) -> str:
         return "0 %"
     if size < 0.01:  # noqa: PLR2004  # what two decimals can show
         return "less than 0.01 %"
-    return f"{share * 100:,.1f} %" if size >= 0.1 else f"{share * 100:.2f} %"  # noqa: PLR2004  # one decimal
+    text = f"{share * 100:,.1f}" if size >= 0.1 else f"{share * 100:.2f}"  # noqa: PLR2004  # one decimal
+    return f"{text.removesuffix('.0')} %"
 
 
 def headline(answer: Answer, *, currency: str = "") -> str:
