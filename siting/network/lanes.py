@@ -178,14 +178,17 @@ def _listed(ends: LegEnds, table: LaneTable) -> tuple[Keys, Positions]:
     origin = _positions(table.names, origins.names)[table.origin[rows]]
     destination = _positions(table.names, destinations.names)[table.destination[rows]]
     pair = origin.astype(np.int64) * len(destinations.names) + destination
+    known = (origin >= 0) & (destination >= 0)  # a row about a place that is not in the study makes no lane
     named = table.good[rows] >= 0
     good = np.append(_positions(table.names, goods), -1)[table.good[rows]]  # -1, every good, takes the last element
     keys: list[Keys] = []
     setters: list[Positions] = []
     for every_good in (True, False):  # rows that name a good come last, since the last row of a key wins below
         for position in range(len(goods)):
-            fits = (~named if every_good else named & (good == position)) & (
-                origins.takes[origin, position] & destinations.takes[destination, position]
+            fits = (
+                known
+                & (~named if every_good else named & (good == position))
+                & (origins.takes[origin, position] & destinations.takes[destination, position])
             )
             keys.append(pair[fits] * len(goods) + position)
             setters.append(rows[fits])
