@@ -36,9 +36,9 @@ LINE_NAMES: Mapping[CostLine, str] = {
 _ROW_HEIGHT_PX = 24
 
 
-def _styled(chart: alt.Chart | alt.LayerChart) -> alt.Chart | alt.LayerChart:
+def _styled(chart: alt.Chart) -> alt.Chart:
     """Return the chart with the fonts, inks and rules that all charts share."""
-    return (
+    styled: alt.Chart = (
         chart.configure(background=looks.PAPER, font=looks.FONT_STACK)
         .configure_axis(
             labelColor=looks.INK,
@@ -54,9 +54,10 @@ def _styled(chart: alt.Chart | alt.LayerChart) -> alt.Chart | alt.LayerChart:
         .configure_legend(labelColor=looks.INK, titleColor=looks.QUIET, labelFontSize=12, orient="top")
         .configure_view(strokeWidth=0)
     )
+    return styled
 
 
-def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart | alt.LayerChart:
+def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart:
     """
     Draw best cost and bound over time while a solve runs.
 
@@ -74,13 +75,14 @@ def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart | al
         if value is not None
     ]
     frame = pd.DataFrame(rows, columns=["seconds", "money", "what"])
+    scale = alt.Scale(domain=_worth_seeing(history), clamp=True, nice=False)
     names = ["best plan so far", "no plan is cheaper than"]
     return _styled(
         alt.Chart(frame)
         .mark_line(interpolate="step-after", strokeWidth=2.5, point={"size": 26, "filled": True})
         .encode(
             x=alt.X("seconds:Q", title="seconds", axis=alt.Axis(grid=False)),
-            y=alt.Y("money:Q", title=f"{currency} a year", scale=alt.Scale(zero=False), axis=alt.Axis(format="~s")),
+            y=alt.Y("money:Q", title=f"{currency} a year", scale=scale, axis=alt.Axis(format=",.0f", tickCount=5)),
             color=alt.Color("what:N", title=None, scale=alt.Scale(domain=names, range=[looks.TEAL, looks.OCHRE])),
             strokeDash=alt.StrokeDash("what:N", title=None, scale=alt.Scale(domain=names, range=[[1, 0], [5, 3]])),
             tooltip=[alt.Tooltip("what:N", title=" "), alt.Tooltip("money:Q", format=",.0f"), "seconds:Q"],
@@ -89,7 +91,17 @@ def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart | al
     )
 
 
-def cost_chart(plan: Plan) -> alt.Chart | alt.LayerChart:
+def _worth_seeing(history: Sequence[Progress]) -> list[float]:
+    """Return the span of money around the latest cost and bound; early bounds far below it lie at its edge."""
+    costs = [step.cost for step in history if step.cost is not None]
+    bounds = [step.bound for step in history if step.bound is not None]
+    high = max(costs[-4:] or bounds)
+    low = min(max(bounds or costs), high)
+    span = max(high - low, 1e-6 * abs(high), 1e-6)
+    return [low - span, high + span / 4]
+
+
+def cost_chart(plan: Plan) -> alt.Chart:
     """Draw the cost lines of a plan and, where today can serve everything, of today beside it."""
     rows = [
         {"line": LINE_NAMES[line], "whose": whose, "money": money}
@@ -138,7 +150,7 @@ def band_names(service: Service) -> list[str]:
     return names
 
 
-def band_chart(service: Service, unit: str) -> alt.Chart | alt.LayerChart:
+def band_chart(service: Service, unit: str) -> alt.Chart:
     """Draw the share of load delivered within each band of road distance."""
     names = band_names(service)
     frame = pd.DataFrame(

@@ -27,6 +27,8 @@ if TYPE_CHECKING:
 
 INK = "#1F2A37"
 PAPER = "#FBFAF7"
+PANEL = "#F1EFE9"
+"""Ground of notices and controls."""
 TEAL = "#0F766E"
 OCHRE = "#B45309"
 SLATE = "#475569"
@@ -58,6 +60,9 @@ PAIRS: tuple[tuple[str, str, float], ...] = (
     (INK, PAPER, TEXT),
     (INK, SEA, TEXT),
     (QUIET, PAPER, TEXT),
+    (INK, PANEL, TEXT),
+    (QUIET, PANEL, TEXT),
+    (TEAL, PANEL, TEXT),
     (QUIET, SEA, TEXT),
     (PAPER, INK, TEXT),
     (TEAL, PAPER, TEXT),
@@ -81,7 +86,7 @@ LARGEST_DOT_PX, SMALLEST_DOT_PX = 9.0, 2.2
 LEG_LINES: Mapping[str, tuple[str, str]] = {
     "outbound": (SLATE, ""),
     "inbound": (OCHRE, "9 6"),
-    "direct": (SLATE, "2 5"),
+    "direct": (SLATE, "12 4 3 4"),
 }
 """Colour and dashes (empty = solid) of each leg."""
 
@@ -164,6 +169,7 @@ def css_colours() -> str:
     named = {
         "ink": INK,
         "paper": PAPER,
+        "panel": PANEL,
         "teal": TEAL,
         "ochre": OCHRE,
         "slate": SLATE,

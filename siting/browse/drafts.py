@@ -1,0 +1,209 @@
+"""
+Drafts: what an analyst has typed on the pages, kept in the server as typed, whatever its faults.
+
+A draft is found by an unguessable token that its page carries in its address, so that a reload finds it again and
+nobody else does. Nothing here imports Streamlit.
+"""
+
+from __future__ import annotations
+
+import secrets
+import threading
+from collections import OrderedDict
+from dataclasses import dataclass, field, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+import pandas as pd
+
+from siting.cells import number_text
+from siting.study.check import Checked, check_raw
+from siting.study.check_settings import setting_value
+from siting.study.columns import SETTINGS, SOLVE_SETTINGS, TABLES
+from siting.study.raw import FIRST_ROW, table_from_rows
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from siting.study.raw import RawStudy, RawTable
+
+MOST_DRAFTS = 64
+"""Drafts kept; the one untouched for longest goes first."""
+
+MOST_EDITED_ROWS = 20_000
+"""Largest table that is edited in place; a longer one is edited where it came from and opened again."""
+
+SETTINGS_TABLE = "settings"
+"""What the pages call the settings beside the tables."""
+
+SETTING, VALUE = "setting", "value"
+
+ROW = "#"
+"""Column of an edited table that holds the row numbers faults speak of."""
+
+
+@dataclass(slots=True, kw_only=True, eq=False)
+class Draft:
+    """Tables and settings as typed. Change it through `put_table` and `put_setting` only."""
+
+    token: str
+    source: str
+    """Where it came from, in words: a file name or `demo`."""
+    raw: RawStudy
+    """As read, with every edit since."""
+    version: int = 0
+    """Raised by every edit."""
+    asked: str = ""
+    """Key of the solve last asked for; empty before the first."""
+    _checked: tuple[int, Checked] | None = None
+    _lock: threading.RLock = field(default_factory=threading.RLock)
+
+    @property
+    def checked(self) -> Checked:
+        """The draft checked: a study, or its faults; computed once per edit."""
+        with self._lock:
+            if self._checked is None or self._checked[0] != self.version:
+                self._checked = (self.version, check_raw(self.raw))
+            return self._checked[1]
+
+    def table(self, name: str) -> pd.DataFrame:
+        """
+        Return a table to edit: text, one column for every column known or typed, and the row numbers in `ROW`.
+
+        Parameters
+        ----------
+        name
+            A table of a study, there or not.
+        """
+        raw = self.raw.tables.get(name)
+        given = raw.header if raw else ()
+        rows = raw.rows if raw else np.zeros(0, dtype=np.int32)
+        frame = pd.DataFrame({ROW: pd.array(rows, dtype="Int64")})
+        for column in (*given, *(known for known in TABLES[name].names if known not in given)):
+            found = raw.column(column) if raw else None
+            cells = found.to_pylist() if found is not None else [""] * len(rows)
+            frame[column] = pd.array(cells, dtype="string")
+        return frame
+
+    def put_table(self, name: str, frame: pd.DataFrame) -> bool:
+        """
+        Take an edited table; returns whether anything changed.
+
+        Rows keep their numbers, new ones follow the last. Columns of ours that nobody filled in are left out again, and
+        a table without a filled cell that was not there before stays absent.
+
+        Parameters
+        ----------
+        name
+            A table of a study.
+        frame
+            As `table` returned it, cells changed, rows added (blank `ROW`) or removed.
+        """
+        given = self.raw.tables[name].header if name in self.raw.tables else ()
+        text = frame.drop(columns=ROW).astype("string").fillna("")
+        kept = [column for column in text.columns if column in given or (text[column] != "").any()]
+        numbers, last = [], FIRST_ROW - 1
+        for number in frame[ROW]:
+            last = last + 1 if pd.isna(number) else max(int(number), last + 1)
+            numbers.append(last)
+        table = table_from_rows(kept, text[kept].itertuples(index=False), numbers) if kept else None
+        with self._lock:
+            if _same(table, self.raw.tables.get(name)):
+                return False
+            tables = {key: value for key, value in self.raw.tables.items() if key != name}
+            if table is not None:
+                tables[name] = table
+            self._replace(tables=tables, mended=name)
+        return True
+
+    def setting_text(self, name: str) -> str:
+        """Return a setting as typed; `[solve]` settings are called `solve.gap` and so on. Empty = not set."""
+        section, _, key = name.rpartition(".")
+        place = self.raw.settings.get(section, {}) if section else self.raw.settings
+        value = place.get(key) if isinstance(place, dict) else None
+        if isinstance(value, bool):
+            return "yes" if value else "no"
+        return number_text(value) if isinstance(value, float) else "" if value is None else str(value)
+
+    def settings_frame(self) -> pd.DataFrame:
+        """Return all settings to edit: columns `setting`, `value`, `unit`, `meaning`; unknown ones at the end."""
+        known = {**{c.name: c for c in SETTINGS}, **{f"solve.{c.name}": c for c in SOLVE_SETTINGS}}
+        solve = self.raw.settings.get("solve")
+        typed = [*(key for key in self.raw.settings if key != "solve")]
+        typed += [f"solve.{key}" for key in solve] if isinstance(solve, dict) else []
+        names = [*known, *(name for name in typed if name not in known)]
+        return pd.DataFrame(
+            {
+                SETTING: names,
+                VALUE: [self.setting_text(name) for name in names],
+                "unit": [known[name].unit if name in known else "" for name in names],
+                "meaning": [known[name].meaning if name in known else "" for name in names],
+            },
+            dtype="string",
+        )
+
+    def put_setting(self, name: str, text: str) -> bool:
+        """Take a setting as typed (empty = not set); returns whether anything changed."""
+        text = text.strip()
+        if text == self.setting_text(name):
+            return False
+        section, _, key = name.rpartition(".")
+        known = {c.name: c for c in (SOLVE_SETTINGS if section else SETTINGS)}
+        value = setting_value(known[key], text) if key in known else text
+        with self._lock:
+            settings = dict(self.raw.settings)
+            place = dict(settings.get(section) or {}) if section else settings  # type: ignore[call-overload]
+            place.pop(key, None)
+            if text:
+                place[key] = value
+            if section:
+                settings[section] = place
+            self._replace(settings=settings, mended=self.raw.settings_name)
+        return True
+
+    def _replace(
+        self,
+        *,
+        mended: str,
+        tables: Mapping[str, RawTable] | None = None,
+        settings: Mapping[str, object] | None = None,
+    ) -> None:
+        """Put new tables or settings in place; what reading the old ones had found is settled by that."""
+        self.raw = replace(
+            self.raw,
+            tables=self.raw.tables if tables is None else tables,
+            settings=self.raw.settings if settings is None else settings,
+            faults=tuple(fault for fault in self.raw.faults if fault.table != mended),
+            warnings=tuple(warning for warning in self.raw.warnings if warning.table != mended),
+            unreadable=self.raw.unreadable - {mended},
+        )
+        self.version += 1
+
+
+def _same(one: RawTable | None, other: RawTable | None) -> bool:
+    if one is None or other is None:
+        return one is other
+    return one.header == other.header and all(a.equals(b) for a, b in zip(one.columns, other.columns, strict=True))
+
+
+_drafts: OrderedDict[str, Draft] = OrderedDict()
+_guard = threading.Lock()
+
+
+def keep_draft(raw: RawStudy, source: str) -> Draft:
+    """Keep a study as read under a new token and return its draft."""
+    draft = Draft(token=secrets.token_urlsafe(16), source=source, raw=raw)
+    with _guard:
+        while len(_drafts) >= MOST_DRAFTS:
+            _drafts.popitem(last=False)
+        _drafts[draft.token] = draft
+    return draft
+
+
+def find_draft(token: str) -> Draft | None:
+    """Return the draft of that token, or None where the server does not have it (any more)."""
+    with _guard:
+        draft = _drafts.get(token)
+        if draft is not None:
+            _drafts.move_to_end(token)
+    return draft

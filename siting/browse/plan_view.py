@@ -1,0 +1,263 @@
+"""How a page shows an answer: verdict list beside the map, costs, service, customers, proof."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import pandas as pd
+import streamlit as st
+
+from siting.browse.shell import headline, notice, section
+from siting.browse.tables import Heading, Line, report_table
+from siting.plan.plan import CostLine, SiteVerdict, SupplierVerdict, TodayOutcome
+from siting.plan.words import CAUTIONS, NOT_FOR_PRICING, delivery_sentence, payback, sureness
+from siting.plan.words import headline as plan_headline
+from siting.sharing.charts import LINE_NAMES, band_chart, band_names, cost_chart
+from siting.sharing.looks import SITE_SYMBOLS, SUPPLIER_SYMBOLS, Formats
+from siting.sharing.map_facts import load_unit
+from siting.sharing.symbols import symbol_svg
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from streamlit.elements.lib.column_types import ColumnConfig
+
+    from siting.plan.plan import Answer, Plan, SiteLine, SupplierLine
+    from siting.study.tables import Study
+
+MAP_HEIGHT_PX = 720
+
+SITE_ORDER = (SiteVerdict.OPEN, SiteVerdict.KEEP, SiteVerdict.CLOSE, SiteVerdict.LEAVE)
+SUPPLIER_ORDER = (SupplierVerdict.SIGN, SupplierVerdict.STAY, SupplierVerdict.DROP, SupplierVerdict.LEAVE)
+
+
+def show_answer(study: Study, answer: Answer, map_html: str) -> None:
+    """
+    Show an answer from its headline to the cautions.
+
+    Parameters
+    ----------
+    study
+        The study it answers.
+    answer
+        With or without a plan.
+    map_html
+        The plan's map; unused without a plan.
+    """
+    plan = answer.plan
+    currency = study.settings.currency
+    if plan is None:
+        headline(plan_headline(answer, currency=currency))
+        for reason in answer.reasons:
+            notice(reason.sentence, kind="fault")
+        return
+    headline(plan_headline(answer, currency=currency), second=payback(plan))
+    formats = Formats(currency=plan.currency, unit=load_unit(study))
+    listed, drawn = st.columns([1, 1.25], gap="medium")
+    with listed:
+        st.html(site_table(plan, formats) + supplier_table(plan, formats))
+    with drawn:
+        st.iframe(map_html, height=MAP_HEIGHT_PX)
+    for warning in plan.warnings:
+        notice(warning, kind="stale")
+    _costs(study, plan, formats)
+    _service(plan, formats)
+    _details(plan, formats)
+    section("How sure is this?")
+    st.html(_proof_table(plan, formats))
+    section("Before anyone acts on it")
+    for caution in CAUTIONS:
+        notice(caution)
+
+
+def site_table(plan: Plan, formats: Formats) -> str:
+    """Return the sites with their verdicts, what opens first, as an HTML table."""
+    if not plan.sites:
+        return ""
+    headings = (
+        Heading(text="Verdict", verdict=True),
+        Heading(text="Site"),
+        Heading(text=f"Throughput, {formats.unit} a year", number=True),
+        Heading(text="Full", number=True),
+        Heading(text=f"Charge, {formats.currency} a year", number=True),
+        Heading(text=f"One-off, {formats.currency}", number=True),
+    )
+    ordered = sorted(plan.sites, key=lambda line: SITE_ORDER.index(line.verdict))
+    return report_table(headings, (_site_line(line, formats) for line in ordered), caption="Sites")
+
+
+def _site_line(line: SiteLine, formats: Formats) -> Line:
+    is_open = line.verdict in {SiteVerdict.KEEP, SiteVerdict.OPEN}
+    size = f" ({line.size})" if line.size else ""
+    note = f" \N{EN DASH} {line.note}" if line.note else ""
+    return Line(
+        mark=symbol_svg(SITE_SYMBOLS[line.verdict], fill=line.utilisation),
+        kind="faint" if line.verdict is SiteVerdict.LEAVE else "",
+        cells=(
+            str(line.verdict),
+            f"{line.site}{size}{note}",
+            formats.number(line.throughput) if is_open else "",
+            formats.share(line.utilisation) if line.utilisation is not None else "",
+            formats.number(line.charge) if line.charge else "",
+            formats.number(line.one_off) if line.one_off else "",
+        ),
+    )
+
+
+def supplier_table(plan: Plan, formats: Formats) -> str:
+    """Return the suppliers with their verdicts, what is signed first, as an HTML table."""
+    if not plan.suppliers:
+        return ""
+    headings = (
+        Heading(text="Verdict", verdict=True),
+        Heading(text="Supplier"),
+        Heading(text=f"Volume, {formats.unit} a year", number=True),
+        Heading(text="Full", number=True),
+        Heading(text=f"Charge, {formats.currency} a year", number=True),
+        Heading(text=f"One-off, {formats.currency}", number=True),
+    )
+    ordered = sorted(plan.suppliers, key=lambda line: SUPPLIER_ORDER.index(line.verdict))
+    return report_table(headings, (_supplier_line(line, formats) for line in ordered), caption="Suppliers")
+
+
+def _supplier_line(line: SupplierLine, formats: Formats) -> Line:
+    is_signed = line.verdict in {SupplierVerdict.STAY, SupplierVerdict.SIGN}
+    note = f" \N{EN DASH} {line.note}" if line.note else ""
+    full = line.utilisation if is_signed else None
+    return Line(
+        mark=symbol_svg(SUPPLIER_SYMBOLS[line.verdict]),
+        kind="faint" if line.verdict is SupplierVerdict.LEAVE else "",
+        cells=(
+            str(line.verdict),
+            f"{line.supplier}{note}",
+            formats.number(line.volume) if is_signed else "",
+            formats.share(full) if full is not None else "",
+            formats.number(line.charge) if line.charge else "",
+            formats.number(line.one_off) if line.one_off else "",
+        ),
+    )
+
+
+def _costs(study: Study, plan: Plan, formats: Formats) -> None:
+    section("What it costs", "Every line a year; one-off money is spread over its life. The lines add up to the cost.")
+    table, chart = st.columns([1, 1.25], gap="medium")
+    with table:
+        st.html(cost_table(plan, formats))
+        delivery = delivery_sentence(study, plan)
+        if delivery:
+            st.html('<p class="lead"></p>')
+            notice(delivery)
+    with chart:
+        st.altair_chart(cost_chart(plan))
+    if plan.today is not None and plan.today.outcome is not TodayOutcome.SERVED:
+        notice(plan.today.reason, kind="stale")
+
+
+def cost_table(plan: Plan, formats: Formats) -> str:
+    """Return the cost lines of a plan against today's as an HTML table."""
+    before = plan.today.plan if plan.today else None
+    headings = [Heading(text="Line"), Heading(text=f"This plan, {formats.currency} a year", number=True)]
+    if before:
+        headings += [
+            Heading(text=f"Today, {formats.currency} a year", number=True),
+            Heading(text="Difference", number=True),
+        ]
+    lines = []
+    for line in CostLine:
+        now, then = plan.cost_lines[line], before.cost_lines[line] if before else 0.0
+        if now or then:
+            lines.append(Line(cells=(LINE_NAMES[line], *_money_cells(now, then if before else None))))
+    lines.append(Line(cells=("Cost", *_money_cells(plan.cost, before.cost if before else None)), kind="total"))
+    return report_table(headings, lines, caption="Cost lines")
+
+
+def _money_cells(now: float, then: float | None) -> tuple[str, ...]:
+    if then is None:
+        return (f"{now:,.0f}",)
+    return (f"{now:,.0f}", f"{then:,.0f}", f"{now - then:+,.0f}")
+
+
+def _service(plan: Plan, formats: Formats) -> None:
+    service = plan.service
+    if service.average_km is None:
+        return
+    parts = [f"Average distance {formats.distance(service.average_km)} by volume"]
+    if service.share_within is not None:
+        parts.append(f"{formats.share(service.share_within)} of weight within the service distance")
+    if service.estimated_share is not None:
+        parts.append(f"{formats.share(service.estimated_share)} of volume moves on estimated distances")
+    if plan.tonnes_co2e is not None:
+        parts.append(f"{formats.number(plan.tonnes_co2e)} t CO2e a year")
+    section("How far customers are", "; ".join(parts) + ".")
+    table, chart = st.columns([1, 1.25], gap="medium")
+    headings = (
+        Heading(text="Road distance"),
+        Heading(text=f"Volume, {formats.unit} a year", number=True),
+        Heading(text="Share", number=True),
+    )
+    lines = [
+        Line(cells=(name, formats.number(band.load), formats.share(band.share)))
+        for name, band in zip(band_names(service), service.bands, strict=True)
+    ]
+    with table:
+        st.html(report_table(headings, lines, caption="Distance bands"))
+    with chart:
+        st.altair_chart(band_chart(service, formats.unit))
+
+
+def _details(plan: Plan, formats: Formats) -> None:
+    section("Customer by customer", NOT_FOR_PRICING)
+    goods = list(dict.fromkeys(good for line in plan.customers for good in line.marginal_cost))
+    customers = pd.DataFrame(
+        {
+            "Customer": [line.customer for line in plan.customers],
+            "Served from": ["; ".join(line.origins) for line in plan.customers],
+            f"Load, {formats.unit} a year": [line.load for line in plan.customers],
+            "Road km": [line.km for line in plan.customers],
+            f"Cost to serve, {plan.currency} a year": [line.cost_to_serve for line in plan.customers],
+            **{
+                f"Marginal cost of {good}, {plan.currency} a unit": [
+                    line.marginal_cost.get(good) for line in plan.customers
+                ]
+                for good in goods
+            },
+        }
+    )
+    st.dataframe(customers, hide_index=True, height=360, column_config=_numbers(customers))
+    section("Flow by flow")
+    flows = pd.DataFrame(
+        {
+            "Leg": [str(flow.leg) for flow in plan.flows],
+            "From": [flow.origin for flow in plan.flows],
+            "To": [flow.destination for flow in plan.flows],
+            "Good": [flow.good for flow in plan.flows],
+            "Units a year": [flow.amount for flow in plan.flows],
+            "Road km": [flow.km for flow in plan.flows],
+            "Distance": ["given" if flow.km_given else "estimated" for flow in plan.flows],
+            f"Cost, {plan.currency} a year": [flow.cost for flow in plan.flows],
+        }
+    )
+    st.dataframe(flows, hide_index=True, height=300, column_config=_numbers(flows))
+
+
+def _numbers(frame: pd.DataFrame) -> dict[str, ColumnConfig]:
+    """Return number columns with thousands separated."""
+    numeric: Sequence[str] = [str(name) for name in frame.select_dtypes("number").columns]
+    return {name: st.column_config.NumberColumn(name, format="localized", step=0.01) for name in numeric}
+
+
+def _proof_table(plan: Plan, formats: Formats) -> str:
+    proof = plan.proof
+    rows = [
+        ("In words", sureness(proof, plan.currency)),
+        ("Cost", formats.money_a_year(plan.cost)),
+        ("No plan is cheaper than", "unknown" if proof.bound is None else formats.money_a_year(proof.bound)),
+        ("Asked for", f"a gap of at most {formats.share(proof.gap_asked)}"),
+        (
+            "Searched",
+            f"{proof.seconds:,.1f} s with engine {proof.engine}" + (f": {proof.reason}" if proof.reason else ""),
+        ),
+        ("Audit", "passed: every amount and charge re-checked from the tables"),
+        ("Data", f"fingerprint {plan.fingerprint[:16]}"),
+    ]
+    return report_table((Heading(text=""), Heading(text="")), (Line(cells=row) for row in rows))

@@ -1,0 +1,65 @@
+"""Tables of a report as HTML: every text escaped, numbers right-aligned, units in the header."""
+
+from __future__ import annotations
+
+import html
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Sequence
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Heading:
+    """One column of a report table."""
+
+    text: str
+    number: bool = False
+    """Right-aligned."""
+    verdict: bool = False
+    """Set in bold, never broken."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Line:
+    """One row of a report table."""
+
+    cells: tuple[str, ...]
+    kind: str = ""
+    """`total` for sums, `faint` for what matters less; empty otherwise."""
+    mark: str = ""
+    """Trusted SVG put before the first cell."""
+
+
+def report_table(headings: Sequence[Heading], lines: Iterable[Line], *, caption: str = "") -> str:
+    """
+    Return a table as HTML in which no text of the user's can act.
+
+    Parameters
+    ----------
+    headings
+        The columns.
+    lines
+        The rows, as many cells each as there are columns.
+    caption
+        What the table shows, for readers and screen readers.
+    """
+    head = "".join(f'<th scope="col"{_class(heading)}>{html.escape(heading.text)}</th>' for heading in headings)
+    body = "".join(_row(headings, line) for line in lines)
+    caption_html = f"<caption>{html.escape(caption)}</caption>" if caption else ""
+    return f'<table class="report">{caption_html}<thead><tr>{head}</tr></thead><tbody>{body}</tbody></table>'
+
+
+def _row(headings: Sequence[Heading], line: Line) -> str:
+    cells = "".join(
+        f"<td{_class(heading)}>{line.mark if position == 0 else ''}{html.escape(cell)}</td>"
+        for position, (heading, cell) in enumerate(zip(headings, line.cells, strict=True))
+    )
+    kind = f' class="{line.kind}"' if line.kind else ""
+    return f"<tr{kind}>{cells}</tr>"
+
+
+def _class(heading: Heading) -> str:
+    names = " ".join(name for name, on in (("n", heading.number), ("verdict", heading.verdict)) if on)
+    return f' class="{names}"' if names else ""
