@@ -72,7 +72,7 @@ def _check_running_sizes(draft: Draft) -> None:
         elif site.standing is SiteStanding.RUNNING:
             for row in rows[1:]:
                 gathering.fault(
-                    "sizes", row, "standing", "running", f"site {site.site!r} has a running size already in row {rows[0]}",
+                    "sizes", row, "standing", "running", f"row {rows[0]} is already the running size of the site",
                     "Write running in one row only, proposed in the others",
                 )  # fmt: skip
         else:
@@ -91,10 +91,10 @@ def _check_demand_place(draft: Draft) -> None:
     if draft.demands.there:
         typed = [row.row for index, row in enumerate(customers.rows) if customers.typed(index, "demand")]
         if typed:
+            wrong = f"demand is said here (first in row {typed[0]}) and in the table demands"
             gathering.fault(
-                "customers", typed[0], "demand", customers.texts["demand"][_index(draft, typed[0])],
-                "demand is said both here and in the table demands", "Clear the column here, or delete the table demands",
-            )  # fmt: skip
+                "customers", None, "demand", "", wrong, "Clear the column here, or delete the table demands"
+            )
         return
     if "demand" not in customers.texts:
         if not gathering.hurt("customers", None, "demand"):
@@ -108,10 +108,6 @@ def _check_demand_place(draft: Draft) -> None:
     if len(draft.goods.rows) > 1:
         wrong = "there are several goods, so that the demand of a customer does not say of which"
         gathering.fault("customers", None, "demand", "", wrong, "Say the demand by good in the table demands")
-
-
-def _index(draft: Draft, row: int) -> int:
-    return next(index for index, customer in enumerate(draft.customers.rows) if customer.row == row)
 
 
 def _check_demands(draft: Draft) -> None:

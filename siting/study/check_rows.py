@@ -124,9 +124,11 @@ def parse_table(spec: TableSpec, raw: RawTable | None, gathering: Gathering) -> 
     attributes = check_header(spec, raw.header, gathering)
     texts = {name: raw.columns[raw.header.index(name)].to_pylist() for name in dict.fromkeys(raw.header) if name}
     numbers = raw.rows.tolist()
-    columns = [column for column in spec.columns if column.name in texts]
-    kinds = {column.name: [_cell(spec, column, *cell, gathering) for cell in zip(numbers, texts[column.name], strict=True)]
-             for column in columns}  # fmt: skip
+    kinds = {
+        column.name: [_cell(spec, column, *cell, gathering) for cell in zip(numbers, texts[column.name], strict=True)]
+        for column in spec.columns
+        if column.name in texts
+    }
     rows = []
     row_type: Any = spec.row_type
     for index, number in enumerate(numbers):
@@ -141,7 +143,7 @@ def parse_table(spec: TableSpec, raw: RawTable | None, gathering: Gathering) -> 
     return parsed
 
 
-def refuse(  # noqa: PLR0913  (the fields of a fault)
+def refuse(  # noqa: PLR0913, PLR0917  (the fields of a fault)
     gathering: Gathering, table: str, row: int | None, column: str, value: str, refusal: Refusal
 ) -> None:
     """Note a refused cell as a fault."""
@@ -188,10 +190,10 @@ def _check_keys(parsed: Parsed[Any], gathering: Gathering) -> None:
             continue
         first = seen.setdefault(names, row.row)
         if first != row.row:
-            gathering.fault(
-                parsed.spec.name, row.row, key[-1], names[-1], _twice(key, names, first),
-                "Delete one of the two rows" if len(key) > 1 else "Give each its own name, or delete one of the two rows",
-            )  # fmt: skip
+            repair = "Delete one of the two rows"
+            if len(key) == 1:
+                repair = "Give each its own name, or delete one of the two rows"
+            gathering.fault(parsed.spec.name, row.row, key[-1], names[-1], _twice(key, names, first), repair)
 
 
 def _twice(key: tuple[str, ...], names: tuple[str, ...], first: int) -> str:

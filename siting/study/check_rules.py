@@ -29,7 +29,7 @@ def check_rules(draft: Draft) -> None:
         if draft.gathering.hurt("rules", row.row, "rule") or draft.gathering.hurt("rules", None, "rule"):
             continue
         _check_number(draft, row)
-        if not draft.gathering.hurt("rules", row.row, "members") and _check_members(draft, row):
+        if not draft.gathering.hurt("rules", row.row, "members", "number") and _check_members(draft, row):
             _check_pins(draft, row, pins)
 
 
@@ -99,20 +99,21 @@ def _contradiction(row: RuleRow, pins: dict[str, Ruling]) -> str:
     within = {name: pins[name] for name in row.members if pins.get(name) in _IN}
     without = {name: pins[name] for name in row.members if pins.get(name) in _OUT}
     first, number = row.members[0], row.number or 0
+    wrong = ""
     match row.rule:
         case RuleKind.ONE_OF | RuleKind.NOT_TOGETHER if len(within) > 1:
-            return f"{row.rule} allows one member, but {_listed(within)} are in"
+            wrong = f"{row.rule} allows one member, but {_listed(within)} are in"
         case RuleKind.ONE_OF if len(without) == len(row.members):
-            return f"one_of asks for one member, but {_listed(without)} are out"
+            wrong = f"one_of asks for one member, but {_listed(without)} are out"
         case RuleKind.TOGETHER if within and without:
-            return f"together asks for all or none, but {_listed(within)} is in and {_listed(without)} out"
+            wrong = f"together asks for all or none, but {_listed(within)} is in and {_listed(without)} out"
         case RuleKind.NEEDS if first not in without and without:
-            return f"{first!r} needs {_listed(without)}"
+            wrong = f"{first!r} needs {_listed(without)}"
         case RuleKind.AT_MOST if len(within) > number:
-            return f"at_most allows {number}, but {_listed(within)} are in"
+            wrong = f"at_most allows {number}, but {_listed(within)} are in"
         case RuleKind.AT_LEAST if without and len(row.members) - len(without) < number:
-            return f"at_least asks for {number}, but {_listed(without)} are out"
-    return ""
+            wrong = f"at_least asks for {number}, but {_listed(without)} are out"
+    return wrong
 
 
 def _listed(pinned: dict[str, Ruling]) -> str:

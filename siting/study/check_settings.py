@@ -5,12 +5,13 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING, Any
 
-from siting.cells import is_plain_number, number_text
+from siting.cells import is_plain_number, number_text, read_cell
 from siting.study.check_rows import refuse
 from siting.study.columns import SETTINGS, SOLVE_SETTINGS, Column, Kind
 from siting.study.currency import check_currency
 from siting.study.gathering import did_you_mean
-from siting.study.parse import Refusal, in_range, parse_choice, parse_text, parse_yes_no
+from siting.study.parse import Refusal, in_range, parse_cell
+from siting.study.raw import cell_text
 from siting.study.settings import Settings, SolveSettings
 
 if TYPE_CHECKING:
@@ -56,28 +57,45 @@ def check_settings(raw: RawStudy, gathering: Gathering) -> Settings:
     return settings
 
 
-def setting_value(column: Column, text: str) -> object:
+def settings_from_cells(cells: Mapping[str, object]) -> dict[str, object]:
     """
-    Return the value that a setting typed as text has, as a TOML file would hold it.
+    Return settings as a TOML file would hold them, from cells of a sheet or fields of a page.
 
     Parameters
     ----------
-    column
-        The setting.
-    text
-        As typed in a sheet or on a page.
+    cells
+        Values by name, those of `[solve]` as ``solve.gap``. Numbers may be typed as text; blank ones are left out.
 
     Returns
     -------
-    value
-        A number for a setting that is one; the text itself where it cannot be read so, for `check_settings` to refuse.
+    settings
+        For `RawStudy.settings`; what cannot be read is kept as it is, for `check_settings` to refuse.
     """
-    if column.kind is Kind.NUMBER and is_plain_number(text):
-        return float(text)
-    if column.kind is Kind.WHOLE and is_plain_number(text):
-        value = float(text)
-        return int(value) if value.is_integer() else value
-    return text
+    columns = {column.name: column for column in SETTINGS}
+    columns |= {f"solve.{column.name}": column for column in SOLVE_SETTINGS}
+    settings: dict[str, object] = {}
+    solve: dict[str, object] = {}
+    for name, cell in cells.items():
+        column = columns.get(name)
+        value = _typed(column, cell) if column else cell
+        if value is None or value == "":
+            continue
+        if name.startswith("solve."):
+            solve[name.removeprefix("solve.")] = value
+        else:
+            settings[name] = value
+    return {**settings, "solve": solve} if solve else settings
+
+
+def _typed(column: Column, cell: object) -> object:
+    if column.kind in {Kind.NUMBER, Kind.WHOLE}:
+        if isinstance(cell, str) and is_plain_number(cell):
+            value = float(cell)
+            return int(value) if column.kind is Kind.WHOLE and value.is_integer() else value
+        return cell
+    if column.kind is Kind.YES_NO and isinstance(cell, bool):
+        return cell
+    return read_cell(cell_text(cell))
 
 
 def _checked(
@@ -113,19 +131,15 @@ def _example(column: Column) -> str:
 def _value(column: Column, value: object) -> object:
     if column.kind in {Kind.NUMBER, Kind.WHOLE}:
         return _number(column, value)
-    if column.kind is Kind.YES_NO:
-        if isinstance(value, bool):
-            return value
-        return (
-            parse_yes_no(value) if isinstance(value, str) else Refusal("neither true nor false", "Write true or false")
-        )
+    if column.kind is Kind.YES_NO and isinstance(value, bool):
+        return value
     if not isinstance(value, str):
+        if column.kind is Kind.YES_NO:
+            return Refusal("neither true nor false", "Write true or false")
         return Refusal("not a text", f'Write it in quotes, as in {column.name} = "..."')
-    if column.kind is Kind.CHOICE:
-        return parse_choice(column, value)
     if column.kind is Kind.NAME and not value.strip():
         return Refusal("blank", f"Fill it in: {_example(column)}")
-    return parse_text(column, value)
+    return parse_cell(column, value)
 
 
 def _number(column: Column, value: object) -> object:

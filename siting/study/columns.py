@@ -120,7 +120,7 @@ def _name(name: str, meaning: str) -> Column:
     return Column(name=name, kind=Kind.NAME, meaning=meaning, required=True)
 
 
-def _amount(
+def _amount(  # noqa: PLR0913  (each is a word of a column's declaration)
     name: str, meaning: str, unit: str, *, low_open: bool = False, unlimited: bool = False, required: bool = False
 ) -> Column:
     return Column(

@@ -23,15 +23,19 @@ class Gathering:
         self._faults = _Listed("faults")
         self._warnings = _Listed("warnings")
         self._hurt: set[tuple[str, int | None, str]] = set()
+        self._unread: set[tuple[str, int | None, str]] = set()
+        """Cells that could not be read, so that nothing more is said of them."""
 
-    def fault(  # noqa: PLR0913  (the fields of a fault)
+    def fault(  # noqa: PLR0913, PLR0917  (the fields of a fault)
         self, table: str, row: int | None, column: str, value: str, wrong: str, repair: str
     ) -> None:
         """Note something wrong; the cell counts as hurt, so that no later check stumbles over it again."""
+        if (table, row, column) in self._unread:
+            return
         self._hurt.add((table, row, column))
         self._faults.add(Fault(table=table, row=row, column=column, value=value, wrong=wrong, repair=repair))
 
-    def warn(  # noqa: PLR0913  (the fields of a fault)
+    def warn(  # noqa: PLR0913, PLR0917  (the fields of a fault)
         self, table: str, row: int | None, column: str, value: str, wrong: str, repair: str
     ) -> None:
         """Note something worth knowing that stops no plan."""
@@ -41,6 +45,8 @@ class Gathering:
         """Take over what reading has found."""
         for fault in faults:
             self._hurt.add((fault.table, fault.row, fault.column))
+            if fault.column:
+                self._unread.add((fault.table, fault.row, fault.column))
             self._faults.add(fault)
         for warning in warnings:
             self._warnings.add(warning)

@@ -16,7 +16,7 @@ YES = frozenset({"yes", "true", "1"})
 NO = frozenset({"no", "false", "0"})
 
 _THOUSANDS_COMMA = re.compile(r"-?[0-9]{1,3}(,[0-9]{3})+(\.[0-9]+)?")
-_THOUSANDS_OTHER = re.compile(r"-?[0-9]{1,3}(['’\s][0-9]{3})+([.,][0-9]+)?")
+_THOUSANDS_OTHER = re.compile(r"-?[0-9]{1,3}(['\u2019\s][0-9]{3})+([.,][0-9]+)?")
 _THOUSANDS_POINT = re.compile(r"-?[0-9]{1,3}(\.[0-9]{3})+,[0-9]+|-?[0-9]{1,3}(\.[0-9]{3}){2,}")
 _DECIMAL_COMMA = re.compile(r"-?[0-9]+,[0-9]+")
 _PER_CENT = re.compile(r"(-?[0-9]+(?:[.,][0-9]+)?)\s*%")
@@ -157,7 +157,7 @@ def _separated(text: str) -> Refusal | None:
         plain = digits.replace(".", "").replace(",", ".")
         return Refusal("not a number, since it has a thousands separator", f"Write {plain}")
     if _THOUSANDS_OTHER.fullmatch(digits):
-        plain = re.sub(r"['’\s]", "", digits).replace(",", ".")
+        plain = re.sub(r"['\u2019\s]", "", digits).replace(",", ".")
         return Refusal("not a number, since it has a thousands separator", f"Write {plain}")
     if _DECIMAL_COMMA.fullmatch(digits):
         return Refusal("not a number, since it has a decimal comma", f"Write {digits.replace(',', '.')}")

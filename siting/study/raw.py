@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pyarrow as pa
 
-from siting.cells import number_text, read_cell
+from siting.cells import number_text
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Mapping, Sequence
@@ -69,10 +69,10 @@ def cell_text(value: object) -> str:
     Return the text a table cell holds, from any value a workbook or an editor gives.
 
     Blank (None, NaN, missing) is ``""``, true and false are ``yes`` and ``no``, whole numbers lose their ``.0``, dates
-    become ISO 8601 text, and what `siting.cells.safe_cell` added is taken off again.
+    become ISO 8601 text.
     """
     if isinstance(value, str):
-        return read_cell(value)
+        return value
     if isinstance(value, bool | np.bool_):
         return "yes" if value else "no"
     if isinstance(value, int | np.integer):

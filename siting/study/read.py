@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import tomllib
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -12,9 +13,10 @@ from siting.study.columns import TABLES
 from siting.study.gathering import nearest
 from siting.study.raw import RawStudy
 from siting.study.read_csv import read_csv
+from siting.study.read_workbook import read_workbook
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable
+    from collections.abc import Sequence
 
     from siting.study.raw import RawTable
     from siting.study.tables import Study
@@ -64,6 +66,9 @@ def read_raw(path: Path | str) -> RawStudy:
     path = Path(path)
     if path.is_dir():
         return _read_folder(path)
+    if path.is_file() and path.suffix.lower() in {".xlsx", ".xlsm"}:
+        raw, others = read_workbook(path)
+        return _with_strangers(raw, others, "sheet")
     wrong = "there is no such folder or workbook" if not path.exists() else "neither a folder nor an .xlsx workbook"
     fault = Fault(
         table="study", value=str(path), wrong=wrong, repair="Give a folder of CSV tables, or an .xlsx workbook"
@@ -89,34 +94,32 @@ def _read_folder(folder: Path) -> RawStudy:
     if fault is not None:
         faults.append(fault)
         unreadable.add(SETTINGS_FILE)
-    others = (file.stem for file in sorted(folder.glob("*.[cC][sS][vV]")) if file.name not in _FILES)
-    slips, strangers = sort_strangers(others, tables, "file")
-    return RawStudy(
-        tables=tables,
-        settings=settings,
-        faults=(*faults, *slips),
-        warnings=strangers,
-        unreadable=frozenset(unreadable),
+    raw = RawStudy(tables=tables, settings=settings, faults=tuple(faults), unreadable=frozenset(unreadable))
+    known = {f"{name}.csv" for name in TABLES}
+    others = tuple(
+        file.stem for file in sorted(folder.iterdir()) if file.suffix.lower() == ".csv" if file.name not in known
     )
+    return _with_strangers(raw, others, "file")
 
 
-_FILES = frozenset(f"{name}.csv" for name in TABLES)
-
-
-def sort_strangers(
-    names: Iterable[str], tables: dict[str, RawTable], what: str
-) -> tuple[tuple[Fault, ...], tuple[Fault, ...]]:
-    """Return faults for files or sheets whose name is a slip of a table's, and warnings for all others."""
-    slips, strangers = [], []
+def _with_strangers(raw: RawStudy, names: Sequence[str], what: str) -> RawStudy:
+    """Add faults for files or sheets whose name is a slip of a table that is not there, warnings for all others."""
+    slips: dict[str, Fault] = {}
+    strangers = []
     for name in names:
         near = nearest(name, TABLES, NEAR_MISS)
-        if near and near not in tables:
+        if near and near not in raw.tables and near not in raw.unreadable:
             wrong = f"the {what} {name!r} looks like a slip of the table {near!r}"
-            slips.append(Fault(table=near, wrong=wrong, repair=f"Rename it to {near}, or to something less alike"))
+            slips[near] = Fault(table=near, wrong=wrong, repair=f"Rename it to {near}, or to something less alike")
         else:
             wrong = f"the {what} is not a table of a study and was not read"
             strangers.append(Fault(table=name, wrong=wrong, repair="Nothing to do, unless it should be one"))
-    return tuple(slips), tuple(strangers)
+    return replace(
+        raw,
+        faults=(*raw.faults, *slips.values()),
+        warnings=(*raw.warnings, *strangers),
+        unreadable=raw.unreadable | set(slips),
+    )
 
 
 def _read_toml(file: Path) -> tuple[dict[str, object], Fault | None]:

@@ -5,11 +5,12 @@ from __future__ import annotations
 import math
 from enum import StrEnum
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 import tomli_w
 from openpyxl import Workbook
+from openpyxl.cell import WriteOnlyCell
 
 from siting.cells import safe_cell, write_csv
 from siting.errors import Fault, StudyError
@@ -27,6 +28,9 @@ from siting.study.parse import UNLIMITED
 if TYPE_CHECKING:
     from collections.abc import Iterator
 
+    from numpy.typing import NDArray
+
+    from siting.arrays import Floats
     from siting.study.tables import LaneTable, Study
 
 Cell = str | float | None
@@ -84,7 +88,7 @@ def write_workbook(study: Study, path: Path | str) -> None:
     sheet = book.create_sheet("study")
     sheet.append(["setting", "value"])
     for name, value in settings_to_write(study).items():
-        sheet.append([name, _in_sheet(("yes" if value else "no") if isinstance(value, bool) else value)])
+        sheet.append([name, _in_sheet(sheet, ("yes" if value else "no") if isinstance(value, bool) else value)])
     for name in TABLES:
         count = len(getattr(study, name))
         if not count:
@@ -96,7 +100,7 @@ def write_workbook(study: Study, path: Path | str) -> None:
         sheet = book.create_sheet(name)
         sheet.append([safe_cell(column) for column in header])
         for row in rows_to_write(study, name, header):
-            sheet.append([_in_sheet(value) for value in row])
+            sheet.append([_in_sheet(sheet, value) for value in row])
     book.save(Path(path))
 
 
@@ -170,10 +174,14 @@ def _cell(value: object) -> Cell:
     return str(value)
 
 
-def _in_sheet(value: Cell) -> Cell:
-    if not isinstance(value, str):
+def _in_sheet(sheet: Any, value: Cell) -> Any:  # noqa: ANN401  (openpyxl's cells have no common type)
+    if isinstance(value, str):
+        return safe_cell(value) or None
+    if value is None or float(f"{value:.16g}") == value:
         return value
-    return safe_cell(value) or None
+    cell = WriteOnlyCell(sheet, repr(value))  # openpyxl writes 16 digits, which would lose the last bit
+    cell.data_type = "n"
+    return cell
 
 
 def _filled(spec: TableSpec, rows: tuple[object, ...]) -> set[str]:
@@ -226,6 +234,8 @@ def _lane_rows(lanes: LaneTable, header: tuple[str, ...]) -> Iterator[list[Cell]
         yield from (list(row) for row in zip(*(columns[name].tolist() for name in header), strict=True))
 
 
-def _blanked(numbers: np.ndarray) -> np.ndarray:  # type: ignore[type-arg]
+def _blanked(numbers: Floats) -> NDArray[np.object_]:
     """Return numbers as objects, None for NaN."""
-    return np.where(np.isnan(numbers), None, numbers.astype(object))
+    objects = numbers.astype(object)
+    objects[np.isnan(numbers)] = None
+    return objects
