@@ -215,7 +215,7 @@ class Books:
         if flow.leg is not Leg.INBOUND:
             reach = self.customers[flow.destination].reach_km
             if reach is not None and lane.km is not None and exceeds(lane.km, reach, reach):
-                return f"the lane is {shown(lane.km)} km long and the customer's reach is {shown(reach)} km"
+                return f"the lane is {shown(lane.km)} km long, the customer's reach is {shown(reach)} km"
         return ""
 
     def is_open(self, site: str) -> bool:

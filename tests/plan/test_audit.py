@@ -220,7 +220,7 @@ FLOWS: list[tuple[str, Tamper, str]] = [
     (
         "out of reach",
         lambda p: with_flow(p, "Linz", "Salzburg", origin="Brno"),
-        r"may not be: the lane is \d+\.\d+ km long and the customer's reach is 300 km",
+        r"may not be: the lane is \d+\.\d+ km long, the customer's reach is 300 km",
     ),
     (
         "throughput",
