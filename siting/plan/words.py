@@ -283,22 +283,21 @@ def payback(plan: Plan) -> str:
     sentence
         The running saving leaves annualised one-off money out, so that payback counts no money twice.
     """
-    once = (
-        "No one-off money"
-        if plan.one_off == 0
-        else f"One-off money {money(plan.one_off, plan.currency)}"
-        if plan.one_off > 0
-        else f"Brings in {money(-plan.one_off, plan.currency)} once"
-    )
+
+    def shown(amount: float) -> str:
+        return money(abs(amount), plan.currency, like=plan.cost)
+
+    once = "No one-off money"
+    if plan.one_off:
+        once = f"One-off money {shown(plan.one_off)}" if plan.one_off > 0 else f"Brings in {shown(plan.one_off)} once"
     if plan.saving is None:
         return f"{once}."
     saved = plan.saving + sum(plan.cost_lines[line] for line in ONE_OFF_LINES)
-    running = f"running saving {money(saved, plan.currency)} a year"
-    if plan.one_off <= 0:
-        return f"{once}, {running}."
     if saved <= 0:
-        return f"{once}, {running}: it never pays back."
-    return f"{once}, {running}, payback in {plan.one_off / saved:,.1f} years."
+        never = ": it never pays back" if plan.one_off > 0 else ""
+        return f"{once}, running cost {shown(saved)} a year higher{never}."
+    back = f", payback in {plan.one_off / saved:,.1f} years" if plan.one_off > 0 else ""
+    return f"{once}, running saving {shown(saved)} a year{back}."
 
 
 def delivery_sentence(study: Study, plan: Plan) -> str:

@@ -12,7 +12,8 @@ import pytest
 from siting.plan.audit import audit
 from siting.plan.plan import CostLine, Plan, SiteVerdict, SupplierVerdict, Today, TodayOutcome, Unserved
 from siting.plan.proof import Outcome
-from siting.study.tables import LaneTable, Leg, SiteRow, Study
+from siting.study.tables import CustomerRow, LaneTable, Leg, SiteRow, Study
+from tests.building import LaneRow, lane_table
 from tests.plan import hand
 
 if TYPE_CHECKING:
@@ -252,7 +253,7 @@ STATED: list[tuple[str, Tamper, str]] = [
             f"cost line {line}",
             lambda p, line=line: with_line(p, line, 1.0001),
             rf"cost line {line} is stated as [\d,.]+ EUR",
-        )  # type: ignore[misc]
+        )
         for line in CostLine
     ),
     (
@@ -292,7 +293,7 @@ STATED: list[tuple[str, Tamper, str]] = [
     (
         "origins",
         lambda p: with_customer(p, "Vienna", origins=("Brno",)),
-        r"customer Vienna: served from Linz, Brno, stated as Brno|customer Vienna: served from Brno, Linz, stated as Brno",
+        r"customer Vienna: served from (Linz, Brno|Brno, Linz), stated as Brno",
     ),
     (
         "order of origins",
@@ -468,8 +469,8 @@ def test_today_is_absent_where_nothing_runs() -> None:
     study = Study(
         settings=hand.settings_for("Nothing runs"),
         sites=(SiteRow(site="A"),),
-        customers=(hand.CustomerRow(customer="B", demand=1.0),),
-        lanes=hand.lane_table([hand.LaneRow(leg=hand.OUT, origin="A", destination="B", unit_cost=1.0)]),
+        customers=(CustomerRow(customer="B", demand=1.0),),
+        lanes=lane_table([LaneRow(leg=hand.OUT, origin="A", destination="B", unit_cost=1.0)]),
     )
     case = hand.worked(study, {("A", "")}, set(), {(hand.OUT, "A", "B", "goods"): 1.0})
     absent = Today(outcome=TodayOutcome.ABSENT, reason="No site is running.", plan=None)
@@ -505,7 +506,7 @@ def test_a_million_lanes_are_looked_up_at_once() -> None:
     study = Study(
         settings=hand.settings_for("Many lanes"),
         sites=tuple(SiteRow(site=f"s{i}", latitude=47.0, longitude=15.0) for i in range(sites)),
-        customers=tuple(hand.CustomerRow(customer=f"c{j}", demand=1.0) for j in range(customers)),
+        customers=tuple(CustomerRow(customer=f"c{j}", demand=1.0) for j in range(customers)),
         lanes=lanes,
     )
     moved = {(hand.OUT, f"s{j % 7}", f"c{j}", "goods"): 1.0 for j in range(customers)}

@@ -10,6 +10,7 @@ import pytest
 
 from siting.plan.audit import audit
 from siting.study.tables import RuleKind, RuleRow, SiteRuling, Study, SupplierRuling
+from tests.building import lane_table
 from tests.plan import hand
 
 if TYPE_CHECKING:
@@ -23,7 +24,8 @@ def changed(table: str, key: str, **values: Any) -> Study:  # noqa: ANN401  # fi
     rows = getattr(hand.STUDY, table)
     found = [row for row in rows if "/".join(cells(row)).startswith(key)]
     assert len(found) == 1
-    return replace(hand.STUDY, **{table: tuple(replace(row, **values) if row is found[0] else row for row in rows)})
+    values_of: dict[str, Any] = {table: tuple(replace(row, **values) if row is found[0] else row for row in rows)}
+    return replace(hand.STUDY, **values_of)
 
 
 def cells(row: object) -> list[str]:
@@ -258,7 +260,7 @@ def test_single_sourcing_is_checked_for_the_whole_study_and_for_one_customer() -
 
 def test_a_lane_that_loses_its_row_may_not_be_used_directly() -> None:
     """Ostrava is served straight only because `lanes` lists it."""
-    study = replace(hand.STUDY, lanes=hand.lane_table(hand.LANES[1:]))
+    study = replace(hand.STUDY, lanes=lane_table(hand.LANES[1:]))
     assert any("a direct lane exists only where `lanes` lists it" in fault for fault in faults(study))
 
 

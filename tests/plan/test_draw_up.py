@@ -8,7 +8,8 @@ import pytest
 
 from siting.plan.plan import CostLine, SiteVerdict, SupplierVerdict
 from siting.plan.proof import Outcome
-from siting.study.tables import SiteRow, SiteRuling, Study, SupplierRow, SupplierRuling
+from siting.study.tables import CustomerRow, SiteRow, SiteRuling, Study, SupplierRow, SupplierRuling
+from tests.building import LaneRow, lane_table
 from tests.plan import hand
 
 FACTOR = 0.08 / (1 - 1.08**-10)
@@ -146,8 +147,8 @@ def one_lane(*, unit_cost: float, capacity: float | None = None, demand: float =
     return Study(
         settings=hand.settings_for("One lane"),
         sites=(SiteRow(site="A", capacity=capacity),),
-        customers=(hand.CustomerRow(customer="B", demand=demand),),
-        lanes=hand.lane_table([hand.LaneRow(leg=hand.OUT, origin="A", destination="B", unit_cost=unit_cost)]),
+        customers=(CustomerRow(customer="B", demand=demand),),
+        lanes=lane_table([LaneRow(leg=hand.OUT, origin="A", destination="B", unit_cost=unit_cost)]),
     )
 
 
@@ -255,8 +256,8 @@ def test_a_pure_choice_of_suppliers_needs_no_site() -> None:
     study = Study(
         settings=hand.settings_for("Suppliers alone"),
         suppliers=(SupplierRow(supplier="K", yearly_charge=5.0, unit_price=2.0),),
-        customers=(hand.CustomerRow(customer="B", demand=4.0),),
-        lanes=hand.lane_table([hand.LaneRow(leg=hand.DIRECT, origin="K", destination="B", unit_cost=1.0)]),
+        customers=(CustomerRow(customer="B", demand=4.0),),
+        lanes=lane_table([LaneRow(leg=hand.DIRECT, origin="K", destination="B", unit_cost=1.0)]),
     )
     plan = hand.draw(study, hand.worked(study, set(), {"K"}, {(hand.DIRECT, "K", "B", "goods"): 4.0}))
     assert plan.sites == ()
