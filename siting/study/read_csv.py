@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import csv
-import io
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -15,9 +14,8 @@ if TYPE_CHECKING:
 
     from siting.study.raw import RawTable
 
-_OTHER_MARKS = (b"\xff\xfe", b"\xfe\xff")
+_NOT_UTF_8 = "the file is not text in UTF-8"
 _SAVE_AS = "Save the file as CSV UTF-8 (comma delimited)"
-_FIRST_BYTES = 4096
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -48,7 +46,7 @@ def read_csv(path: Path, name: str) -> CsvResult:
     try:
         table = _read(path, reader)
     except UnicodeDecodeError:
-        return _refused(name, "the file is not text in UTF-8", _SAVE_AS)
+        return _refused(name, _NOT_UTF_8, _SAVE_AS)
     except csv.Error as error:
         row = reader.record + 1
         wrong = f"the row cannot be read ({error})"
@@ -57,20 +55,24 @@ def read_csv(path: Path, name: str) -> CsvResult:
         return _refused(name, f"the file cannot be read ({error.strerror})", "Check that you may read it")
     if table is None:
         return _refused(name, "the file is empty", "Write the column names in its first row, or delete the file")
-    if len(reader.header) == 1 and any(mark in reader.header[0] for mark in ";\t|"):
-        return _refused(name, "the columns are not separated by commas", _SAVE_AS, 1)
+    wrong = _wrong_form(reader.header)
+    if wrong:
+        return _refused(name, wrong, _SAVE_AS)
     return CsvResult(table=table, faults=tuple(reader.faults))
 
 
 def _read(path: Path, reader: RecordReader) -> RawTable | None:
-    with path.open("rb") as file:
-        start = file.read(_FIRST_BYTES)
-        if start.startswith(_OTHER_MARKS) or b"\0" in start:
-            reason = "another encoding"
-            raise UnicodeDecodeError("utf-8", start, 0, 1, reason)
-        file.seek(0)
-        with io.TextIOWrapper(file, encoding="utf-8-sig", newline="") as text:
-            return reader.read(csv.reader(text, strict=True))
+    with path.open(encoding="utf-8-sig", newline="") as text:
+        return reader.read(csv.reader(text, strict=True))
+
+
+def _wrong_form(header: list[str]) -> str:
+    """Return what makes the file no CSV of the one form that is read; empty where nothing does."""
+    if any("\0" in name for name in header):
+        return _NOT_UTF_8
+    if len(header) == 1 and any(mark in header[0] for mark in ";\t|"):
+        return "the columns are not separated by commas"
+    return ""
 
 
 def _refused(name: str, wrong: str, repair: str, row: int | None = None) -> CsvResult:
