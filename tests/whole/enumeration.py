@@ -494,7 +494,7 @@ def _flow_by_cbc(search: Enumeration, verdicts: Verdicts, ways: Mapping[Way, Lan
         ]
         everything = sum(weight[good] * amount for (_, good), amount in search.demand.items())
         problem += pulp.lpSum(near) >= settings.service_share * everything
-    problem.solve(pulp.PULP_CBC_CMD(msg=False))
+    problem.solve(pulp.COIN_CMD(path=pulp.PULP_CBC_CMD.pulp_cbc_path, msg=False))
     if problem.status != pulp.LpStatusOptimal:
         return None
     return float(sum(ways[way].cost * (amount.value() or 0.0) for way, amount in flow.items()))

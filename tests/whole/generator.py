@@ -302,7 +302,7 @@ def _settings(d: Drawer, sites: int) -> Settings:
     if "deliveries" in d.on:
         values |= {"drop_charge": d.number(1, 8), "drop_size": d.pick((1.0, 2.0, 4.0))}
     if "service" in d.on:
-        values |= {"service_km": max(d.km(), 1.0), "service_share": d.pick((0.0, 0.25, 0.5, 0.75, 1.0))}
+        values |= {"service_km": max(d.km(), 1.0), "service_share": d.pick((0.0, 0.25, 0.5, 0.75, 0.9375))}
     if "carbon" in d.on:
         values |= {"emission_kg_per_tkm": d.pick((0.125, 1.0)), "carbon_price_per_t": d.pick((0.0, 64.0, 256.0))}
     if "single sourcing" in d.on:
