@@ -55,14 +55,14 @@ def audit(study: Study, plan: Plan, *, of_today: bool = False) -> AuditReport:
     report
         Every fault found; amounts are compared to 1e-6 relative.
     """
-    faults = list(_all_faults(study, plan, of_today=of_today))
+    faults = list(_all_faults(study, plan, fingerprint(study), of_today=of_today))
     return AuditReport(passed=not faults, faults=tuple(faults))
 
 
-def _all_faults(study: Study, plan: Plan, *, of_today: bool) -> Iterator[str]:
-    """Yield every fault of a plan and of its plan of today."""
+def _all_faults(study: Study, plan: Plan, mark: str, *, of_today: bool) -> Iterator[str]:
+    """Yield every fault of a plan and of its plan of today; `mark` is the study's fingerprint."""
     books = Books(study, plan, of_today=of_today)
-    yield from _header(study, plan)
+    yield from _header(study, plan, mark)
     yield from check_verdicts(books)
     yield from check_rules(books)
     yield from check_limits(books)
@@ -73,12 +73,15 @@ def _all_faults(study: Study, plan: Plan, *, of_today: bool) -> Iterator[str]:
         yield "the plan of today has a today of its own"
     if not of_today:
         yield from _today(books, plan.today)
+        if plan.today is not None and plan.today.plan is not None:
+            for fault in _all_faults(study, plan.today.plan, mark, of_today=True):
+                yield f"today: {fault}"
 
 
-def _header(study: Study, plan: Plan) -> Iterator[str]:
+def _header(study: Study, plan: Plan, mark: str) -> Iterator[str]:
     """Yield a plan that is of another study."""
     settings = study.settings
-    if plan.fingerprint != fingerprint(study):
+    if plan.fingerprint != mark:
         yield "the plan is of another study: its fingerprint does not match the tables"
     for what, stated, right in (
         ("title", plan.title, settings.title),
@@ -138,6 +141,3 @@ def _today(books: Books, today: Today | None) -> Iterator[str]:
                 f"today: {shown(short.amount)} {books.study.settings.unit} of {short.good} unserved at "
                 f"customer {short.customer}, who needs {shown(need)}"
             )
-    if today.plan is not None:
-        for fault in _all_faults(books.study, today.plan, of_today=True):
-            yield f"today: {fault}"

@@ -17,7 +17,7 @@ from siting.network.distance import geodesic_km
 from siting.study.tables import Leg, SiteStanding, SupplierStanding
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Mapping, Sequence
 
     from siting.arrays import Floats
     from siting.plan.plan import Flow, Plan, SiteLine, SupplierLine
@@ -115,6 +115,12 @@ class Books:
             amount * self.goods[good].load for (_, good), amount in self.demand.items() if good in self.goods
         )
         """Load of all demand: the whole that amounts are part of."""
+        self._ends: dict[Leg, tuple[Mapping[str, Place], Mapping[str, Place]]] = {
+            Leg.INBOUND: (self.suppliers, self.sites),
+            Leg.OUTBOUND: (self.sites, self.customers),
+            Leg.DIRECT: (self.suppliers, self.customers),
+        }
+        """Tables of origins and destinations of each leg."""
         known = [flow for flow in plan.flows if not self._stranger(flow)]
         self.strangers = [(flow, what) for flow in plan.flows if (what := self._stranger(flow))]
         """Flows that name something no table has, and what that is."""
@@ -122,17 +128,12 @@ class Books:
 
     def _stranger(self, flow: Flow) -> str:
         """Return what of the flow no table has; empty where all is known."""
-        origins, destinations = self._ends(flow.leg)
+        origins, destinations = self._ends[flow.leg]
         if flow.origin not in origins:
             return f"origin {flow.origin!r}"
         if flow.destination not in destinations:
             return f"destination {flow.destination!r}"
         return "" if flow.good in self.goods else f"good {flow.good!r}"
-
-    def _ends(self, leg: Leg) -> tuple[dict[str, Place], dict[str, Place]]:
-        """Return the tables of origins and destinations of a leg."""
-        origins = self.sites if leg is Leg.OUTBOUND else self.suppliers
-        return {**origins}, {**(self.sites if leg is Leg.INBOUND else self.customers)}
 
     def _work_out(self, flows: Sequence[Flow]) -> list[Move]:
         """Return every flow with its distance, money and right to exist."""
@@ -161,8 +162,11 @@ class Books:
 
     def _estimates(self, flows: Sequence[Flow]) -> Floats:
         """Return road km of each flow from coordinates alone; NaN where an end has none."""
-        ends = {leg: self._ends(leg) for leg in Leg}
-        places = [(ends[flow.leg][0][flow.origin], ends[flow.leg][1][flow.destination]) for flow in flows]
+        places = [
+            (origins[flow.origin], destinations[flow.destination])
+            for flow in flows
+            for origins, destinations in [self._ends[flow.leg]]
+        ]
         points = np.array(
             [
                 [math.nan if at is None else at for at in (a.latitude, a.longitude, b.latitude, b.longitude)]

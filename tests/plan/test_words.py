@@ -256,7 +256,7 @@ def test_the_headline_of_an_impossible_study(sentences: list[str], together: boo
     [
         (1_200_000.0, 4_500_000.0, "One-off money 1.20 M EUR, running saving 0.68 M EUR a year, payback in 1.8 years."),
         (
-            1_200_000.0,
+            20_000.0,
             3_500_000.0,
             "One-off money 0.02 M EUR, running cost 0.32 M EUR a year higher: it never pays back.",
         ),
