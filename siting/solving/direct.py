@@ -202,6 +202,7 @@ class InProcess(pulp.HiGHS):  # type: ignore[misc] # PuLP ships no types
         }
         for name, value in options.items():
             highs.setOptionValue(name, value)
+        highs.setOptionValue("mip_allow_restart", False)  # noqa: FBT003 - a third slower with restarts on two echelons
         highs.cbMipLogging.subscribe(self._report)
         highs.cbMipImprovingSolution.subscribe(self._report)
         highs.cbMipInterrupt.subscribe(self._interrupt)

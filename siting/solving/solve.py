@@ -90,7 +90,7 @@ def solve(
     result = REGISTRY[name](network, settings, listener=later, stop=stop)
     phase = "finding out why it is impossible" if result.impossible else "pricing and auditing"
     heard.update(Progress(elapsed_s=time.monotonic() - began, phase=phase))
-    run = _Run(settings=settings, engine=name, reason=reason, began=began)
+    run = _Run(settings=settings, engine=name, reason=reason, began=began, stop=stop)
     if result.impossible:
         answer = _impossible(study, network, run, today)
     elif result.decisions is None:
@@ -142,6 +142,7 @@ class _Run:
     reason: str
     began: float
     """`time.monotonic()` at the start."""
+    stop: Stop
 
     def proof(self, outcome: Outcome, bound: float | None) -> Proof:
         """Return the proof of an answer without a plan."""
@@ -193,7 +194,7 @@ def _impossible(study: Study, network: Network, run: _Run, today: Today) -> Answ
     """Return the answer of an impossible study, with the reasons."""
     from siting.solving.impossible import explain  # noqa: PLC0415 - only impossible studies need it
 
-    reasons, together = explain(study, network)
+    reasons, together = explain(study, network, stop=run.stop)
     proof = run.proof(Outcome.IMPOSSIBLE, None)
     return Answer(proof=proof, plan=None, today=today, reasons=reasons, together=together)
 
