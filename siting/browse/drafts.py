@@ -18,7 +18,7 @@ import pandas as pd
 
 from siting.cells import number_text
 from siting.study.check import Checked, check_raw
-from siting.study.check_settings import setting_value
+from siting.study.check_settings import settings_from_cells
 from siting.study.columns import SETTINGS, SOLVE_SETTINGS, TABLES
 from siting.study.raw import FIRST_ROW, table_from_rows
 
@@ -128,10 +128,7 @@ class Draft:
     def settings_frame(self) -> pd.DataFrame:
         """Return all settings to edit: columns `setting`, `value`, `unit`, `meaning`; unknown ones at the end."""
         known = {**{c.name: c for c in SETTINGS}, **{f"solve.{c.name}": c for c in SOLVE_SETTINGS}}
-        solve = self.raw.settings.get("solve")
-        typed = [*(key for key in self.raw.settings if key != "solve")]
-        typed += [f"solve.{key}" for key in solve] if isinstance(solve, dict) else []
-        names = [*known, *(name for name in typed if name not in known)]
+        names = [*known, *(name for name in self._typed_settings() if name not in known)]
         return pd.DataFrame(
             {
                 SETTING: names,
@@ -145,21 +142,17 @@ class Draft:
     def put_setting(self, name: str, text: str) -> bool:
         """Take a setting as typed (empty = not set); returns whether anything changed."""
         text = text.strip()
-        if text == self.setting_text(name):
-            return False
-        section, _, key = name.rpartition(".")
-        known = {c.name: c for c in (SOLVE_SETTINGS if section else SETTINGS)}
-        value = setting_value(known[key], text) if key in known else text
         with self._lock:
-            settings = dict(self.raw.settings)
-            place = dict(settings.get(section) or {}) if section else settings  # type: ignore[call-overload]
-            place.pop(key, None)
-            if text:
-                place[key] = value
-            if section:
-                settings[section] = place
-            self._replace(settings=settings, mended=self.raw.settings_name)
+            if text == self.setting_text(name):
+                return False
+            typed = {known: self.setting_text(known) for known in self._typed_settings()}
+            self._replace(settings=settings_from_cells(typed | {name: text}), mended=self.raw.settings_name)
         return True
+
+    def _typed_settings(self) -> list[str]:
+        solve = self.raw.settings.get("solve")
+        names = [name for name in self.raw.settings if name != "solve"]
+        return names + ([f"solve.{key}" for key in solve] if isinstance(solve, dict) else [])
 
     def _replace(
         self,
