@@ -26,9 +26,9 @@ def bullets(texts: Sequence[str]) -> str:
     return "\n".join(paragraph(f"- {text}", indent="  ") for text in texts)
 
 
-def table(header: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
+def table(header: Sequence[str], rows: Sequence[Sequence[str]], *, words: int = 1) -> str:
     """
-    Return rows in columns: the first and the last column left-aligned, as they hold words, the others right-aligned.
+    Return rows in columns, words left-aligned and numbers right-aligned.
 
     Parameters
     ----------
@@ -36,13 +36,14 @@ def table(header: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
         Names of the columns.
     rows
         Cells, as many a row as the header has.
+    words
+        How many columns hold words; they come first.
     """
     lines = [[short(row[0]), *row[1:]] for row in (header, *rows)]
     widths = [max(len(line[column]) for line in lines) for column in range(len(header))]
-    last = len(header) - 1
     return "\n".join(
         BETWEEN.join(
-            cell.ljust(width) if column in {0, last} else cell.rjust(width)
+            cell.ljust(width) if column < words else cell.rjust(width)
             for column, (cell, width) in enumerate(zip(line, widths, strict=True))
         ).rstrip()
         for line in lines

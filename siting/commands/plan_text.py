@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 from siting.commands.layout import bullets, paragraph, table
 from siting.plan.plan import CostLine
-from siting.plan.words import CAUTIONS, delivery_sentence, headline, payback
+from siting.plan.words import CAUTIONS, delivery_sentence, headline, payback, percent
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
@@ -16,7 +16,9 @@ if TYPE_CHECKING:
     from siting.study.tables import Study
 
 ABSENT = "-"
-"""What a cell shows where there is nothing to show: no capacity, no today."""
+"""What a cell shows where there is nothing to pay, to move or to fill."""
+HALF = 0.5
+"""Smaller than this rounds to 0."""
 
 
 def answer_text(study: Study, answer: Answer) -> str:
@@ -52,7 +54,7 @@ def _plan_parts(study: Study, plan: Plan) -> Iterator[str]:
     yield _costs(plan)
     if said := _said(study, plan):
         yield bullets(said)
-    yield _proof(plan.proof)
+    yield _proof(plan.proof, plan.currency)
     notes = [*(str(warning) for warning in study.warnings), *plan.warnings]
     if notes:
         yield "Worth a look:\n" + bullets(notes)
@@ -60,33 +62,39 @@ def _plan_parts(study: Study, plan: Plan) -> Iterator[str]:
 
 
 def _sites(plan: Plan) -> str:
-    header = ("site", "verdict", "size", f"{plan.unit} a year", "full", "customers", "charge a year", "once", "note")
+    sized = any(line.size for line in plan.sites)
+    header = ("site", "verdict", *(["size"] if sized else []), "load", "full", "customers", "charge", "once")
     rows = [
         (
             line.site,
             line.verdict,
-            line.size or ABSENT,
+            *([line.size or ABSENT] if sized else []),
             *_use(line, line.throughput),
-            f"{line.customers}",
+            _number(line.customers),
             *_charges(line),
-            line.note,
         )
         for line in plan.sites
     ]
-    return table(header, rows)
+    notes = [f"{line.site}: {line.note}" for line in plan.sites if line.note]
+    return _captioned("Sites", plan, table(header, rows, words=3 if sized else 2), notes)
 
 
 def _suppliers(plan: Plan) -> str:
-    header = ("supplier", "verdict", f"{plan.unit} a year", "full", "charge a year", "once", "note")
-    rows = [
-        (line.supplier, line.verdict, *_use(line, line.volume), *_charges(line), line.note) for line in plan.suppliers
-    ]
-    return table(header, rows)
+    header = ("supplier", "verdict", "load", "full", "charge", "once")
+    rows = [(line.supplier, line.verdict, *_use(line, line.volume), *_charges(line)) for line in plan.suppliers]
+    notes = [f"{line.supplier}: {line.note}" for line in plan.suppliers if line.note]
+    return _captioned("Suppliers", plan, table(header, rows, words=2), notes)
+
+
+def _captioned(what: str, plan: Plan, lines: str, notes: list[str]) -> str:
+    """Return a table under what its columns mean, notes below it."""
+    caption = f"{what}: load a year ({plan.unit}), charge a year ({plan.currency}), one-off money ({plan.currency})"
+    return "\n".join([paragraph(caption), lines, *([bullets(notes)] if notes else [])])
 
 
 def _use(line: SiteLine | SupplierLine, load: float) -> tuple[str, str]:
     """Return what moves through, and how full that makes it."""
-    return _number(load), ABSENT if line.utilisation is None else f"{line.utilisation:.0%}"
+    return _number(load), f"{100 * line.utilisation:.0f} %" if load and line.utilisation is not None else ABSENT
 
 
 def _charges(line: SiteLine | SupplierLine) -> tuple[str, str]:
@@ -97,18 +105,18 @@ def _charges(line: SiteLine | SupplierLine) -> tuple[str, str]:
 def _costs(plan: Plan) -> str:
     """Return the cost lines of the plan beside today's, those that are 0 in both left out."""
     before = plan.today.plan if plan.today else None
-    rows = []
-    for line in CostLine:
-        now, was = plan.cost_lines[line], before.cost_lines[line] if before else 0.0
-        if now or was:
-            rows.append((str(line), _number(now), *_against(now, was, there=before is not None)))
-    was_all = before.cost if before else 0.0
-    rows.append(("all", _number(plan.cost), *_against(plan.cost, was_all, there=before is not None)))
-    return table((f"{plan.currency} a year", "plan", "today", "difference", ""), rows)
+    was = {line: before.cost_lines[line] if before else 0.0 for line in CostLine}
+    amounts = [(str(line), plan.cost_lines[line], was[line]) for line in CostLine if plan.cost_lines[line] or was[line]]
+    amounts.append(("cost", plan.cost, sum(was.values())))
+    if before is None:
+        rows = [(name, _number(now)) for name, now, _ in amounts]
+        return table((f"{plan.currency} a year", "plan"), rows)
+    compared = [(name, _number(now), _number(then), _signed(now - then)) for name, now, then in amounts]
+    return table((f"{plan.currency} a year", "plan", "today", "difference"), compared)
 
 
-def _against(now: float, was: float, *, there: bool) -> tuple[str, str, str]:
-    return (_number(was), f"{now - was:+,.0f}", "") if there else (ABSENT, ABSENT, "")
+def _signed(difference: float) -> str:
+    return f"{difference:+,.0f}" if abs(difference) >= HALF else "same"
 
 
 def _said(study: Study, plan: Plan) -> list[str]:
@@ -128,17 +136,19 @@ def _distance(study: Study, service: Service) -> Iterator[str]:
     if service.average_km is not None:
         yield f"Customers are {service.average_km:,.0f} road km from what serves them, on average by load."
     if service.share_within is not None:
-        asked = "" if settings.service_share is None else f", at least {settings.service_share:.0%} is asked"
-        yield f"{service.share_within:.1%} of the weight is delivered within {settings.service_km:g} road km{asked}."
+        asked = "" if settings.service_share is None else f", at least {percent(settings.service_share)} is asked"
+        yield f"{percent(service.share_within)} of the weight is delivered within {settings.service_km:g} road km{asked}."
 
 
-def _proof(proof: Proof) -> str:
+def _proof(proof: Proof, currency: str) -> str:
     """Return what ran, for how long, and what it proved."""
-    bound = f" No plan can cost less than {proof.bound:,.0f} a year." if proof.bound is not None else ""
+    bound = f" No plan can cost less than {proof.bound:,.0f} {currency} a year." if proof.bound is not None else ""
     why = f" ({proof.reason.rstrip('.')})" if proof.reason else ""
     return paragraph(f"Proof: {proof.outcome}, by the engine {proof.engine}{why} in {proof.seconds:,.1f} s.{bound}")
 
 
 def _number(value: float) -> str:
-    """Return whole numbers with thousands apart; 0 reads as nothing to pay or move."""
-    return f"{value:,.0f}" if abs(value) >= 0.5 else ABSENT if value == 0 else f"{value:,.2g}"  # noqa: PLR2004  # rounds to 0
+    """Return a whole number with thousands apart, never 0 by rounding; 0 reads as nothing to pay or move."""
+    if value == 0:
+        return ABSENT
+    return f"{value:,.0f}" if abs(value) >= HALF else f"{value:.2g}"

@@ -7,7 +7,7 @@ import threading
 import time
 from typing import TYPE_CHECKING, TextIO
 
-from siting.listener import Improving, Silent
+from siting.listener import Silent
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -98,4 +98,4 @@ def progress_on_stderr(*, wanted: bool) -> Listener:
     """Return the listener for a command: silent where not wanted, live on a terminal, plain lines elsewhere."""
     if not wanted:
         return Silent()
-    return Improving(ProgressLine(sys.stderr, live=sys.stderr.isatty()))
+    return ProgressLine(sys.stderr, live=sys.stderr.isatty())

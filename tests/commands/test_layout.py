@@ -6,9 +6,10 @@ from siting.commands.layout import WIDEST_NAME, WIDTH, bullets, paragraph, short
 
 
 def test_numbers_stand_under_each_other() -> None:
-    """The first and last column are left-aligned, the others right-aligned; no blanks trail."""
-    lines = table(["site", "load", "note"], [["Brno", "21,000", ""], ["Linz", "900", "empty"]]).splitlines()
-    assert lines == ["site    load  note", "Brno  21,000", "Linz     900  empty"]
+    """Words are left-aligned, numbers right-aligned; no blanks trail."""
+    lines = table(["site", "load", "full"], [["Brno", "21,000", "9 %"], ["Linz", "900", "100 %"]]).splitlines()
+    assert lines == ["site    load   full", "Brno  21,000    9 %", "Linz     900  100 %"]
+    assert table(["site", "verdict", "load"], [["Brno", "keep", "9"]], words=2).splitlines()[1] == "Brno  keep        9"
 
 
 def test_long_text_is_broken_and_indented() -> None:
