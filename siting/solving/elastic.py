@@ -143,10 +143,16 @@ class Elastic:
         EngineError
             If HiGHS gives up for a reason of its own.
         """
-        counted = [give for give in self.gives[requirement] if give.counted]
-        self._objective((give.variable, give.most) for give in counted)
+        self._objective((give.variable, give.most) for give in self.gives[requirement] if give.counted)
         proved = self._run(seconds, stop)
-        return None if proved is None else self.given(requirement, smallest=proved)
+        if proved is None:
+            return None
+        rest = [give for give in self.gives[requirement] if not give.counted]
+        if rest:  # what the larger of two measures may still be more than is needed
+            self.hold(self.given(requirement, smallest=proved))
+            self._objective((give.variable, give.most) for give in rest)
+            self._run(seconds, stop)
+        return self.given(requirement, smallest=proved)
 
     def given(self, requirement: Requirement, *, smallest: bool) -> Repair:
         """Return what a family gives in the last solution found; `smallest` is noted as told."""

@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from siting.network.network import build_network
+from siting.plan.plan import Reason
 from siting.solving.conflicts import find_conflicts
 from siting.solving.elastic import Repair
 from siting.solving.repair_words import Words
@@ -25,7 +26,6 @@ if TYPE_CHECKING:
     from siting.arrays import Flags
     from siting.listener import Stop
     from siting.network.network import Network
-    from siting.plan.plan import Reason
     from siting.study.tables import Study
 
 EXPLAIN_SECONDS = 60.0
@@ -52,7 +52,8 @@ def explain(
     Returns
     -------
     reasons, together
-        Each reason alone repairs the study; or, `together`, only all of them do. Empty where the study is possible.
+        Each reason alone repairs the study; or, `together`, only all of them do. Empty where the study is possible;
+        one reason of the family `not-found` where time ran out before any repair was found.
 
     Raises
     ------
@@ -61,6 +62,8 @@ def explain(
     """
     clock = _Clock(time_limit_s, stop)
     repairs, together = _repairs(study, network, clock)
+    if not repairs and not clock.left(1):
+        return (_not_found(study),), False
     words = Words(study, network)
     rules = () if together else tuple(repair for repair in repairs if repair.requirement is Requirement.RULES)
     conflicts = [conflict for repair in rules for conflict in find_conflicts(study, repair, clock.left(1), stop)]
@@ -91,6 +94,16 @@ def find_repairs(
     return _repairs(study, network, _Clock(time_limit_s, stop))
 
 
+def _not_found(study: Study) -> Reason:
+    families = ", ".join(asked(study))
+    return Reason(
+        family="not-found",
+        sentence=f"Time ran out before any repair was found. The study asks for {families}: lift one and plan again.",
+        amount=None,
+        unit="",
+    )
+
+
 class _Clock:
     """The time an explanation has left."""
 
@@ -112,13 +125,15 @@ def _repairs(study: Study, network: Network, clock: _Clock) -> tuple[tuple[Repai
     families = asked(study)
     alone: list[Repair] = []
     for done, family in enumerate(families):
+        if not clock.left(1):
+            break
         elastic = softened(study, network, {family})
         repair = elastic.minimise(family, clock.left(len(families) - done), clock.stop)
         if repair is not None and not repair.parts:
             return (), False  # nothing has to give: the study is possible
         if repair is not None:
             alone.append(repair)
-    if alone or not families:
+    if alone or not families or not clock.left(1):
         return tuple(alone), False
     return _smallest_combination(study, network, families, clock), True
 

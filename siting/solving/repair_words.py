@@ -175,11 +175,11 @@ class Words:
 
     def _fewest_sites(self, repair: Repair) -> tuple[str, str]:
         asked, short = self._network.fewest_sites, round(repair.amount)
-        return f"fewest_sites asks for {asked} sites, {short} more than can be open: at most {asked - short}.", "sites"
+        return f"fewest_sites is {asked}, {short} more than can be open: at most {asked - short}.", "sites"
 
     def _most_sites(self, repair: Repair) -> tuple[str, str]:
         allowed, short = self._network.most_sites, round(repair.amount)
-        return f"most_sites allows {allowed} sites, {short} too few: {allowed + short} are needed.", "sites"
+        return f"most_sites is {allowed}, {short} too few: {allowed + short} sites are needed.", "sites"
 
     def _budget(self, repair: Repair) -> tuple[str, str]:
         currency, budget = self._study.settings.currency, self._network.one_off_budget

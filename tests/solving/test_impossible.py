@@ -1,0 +1,619 @@
+"""Every reason an impossible study is given is true: the repair repairs it, and a little less does not."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+import pytest
+
+from siting.listener import Silent, Stop
+from siting.network.network import build_network
+from siting.solving.direct import direct
+from siting.solving.impossible import explain, find_repairs
+from siting.solving.repair_words import shown
+from siting.solving.requirements import Requirement
+from siting.study.settings import SolveSettings
+from siting.study.tables import (
+    IMPLIED_GOOD,
+    CustomerRow,
+    DemandRow,
+    GoodRow,
+    Leg,
+    OfferRow,
+    RuleKind,
+    RuleRow,
+    SiteRow,
+    SiteRuling,
+    SizeRow,
+    Study,
+    SupplierRow,
+    SupplierRuling,
+)
+from tests.building import LaneRow, cost_rows, lane_rows, lane_table, settings_of
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Sequence
+
+    from siting.solving.elastic import Repair
+
+SITES = ("Brno", "Graz")
+DEMAND = {"Linz": 60.0, "Wels": 70.0}
+KM = {("Brno", "Linz"): 80.0, ("Brno", "Wels"): 200.0, ("Graz", "Linz"): 120.0, ("Graz", "Wels"): 150.0}
+
+
+def study_of(capacity: float = math.inf, *, suppliers: tuple[SupplierRow, ...] = (), **settings: object) -> Study:
+    """Return two sites of one capacity and two customers of 60 and 70, all lanes of known length, possible as it is."""
+    lanes = [LaneRow(leg=Leg.OUTBOUND, origin=i, destination=j, road_km=km) for (i, j), km in KM.items()]
+    lanes += cost_rows(Leg.INBOUND, [row.supplier for row in suppliers], SITES, [[1.0, 1.0]] * len(suppliers))
+    return Study(
+        settings=settings_of("t", outbound_rate=0.1, interest_rate=0.08, life_years=10.0, **settings),
+        sites=tuple(SiteRow(site=name, capacity=capacity, opening_charge=100_000.0) for name in SITES),
+        customers=tuple(CustomerRow(customer=name, demand=amount) for name, amount in DEMAND.items()),
+        suppliers=suppliers,
+        lanes=lane_table(lanes),
+    )
+
+
+def is_possible(study: Study) -> bool:
+    """Return whether the engine finds a plan of the study."""
+    settings = SolveSettings(gap=0.0, time_limit_s=30.0)
+    result = direct(build_network(study), settings, listener=Silent(), stop=Stop())
+    assert result.impossible is (result.decisions is None)
+    return not result.impossible
+
+
+def repaired(study: Study, repair: Repair, share: float = 1.0) -> Study:
+    """Return the study with a share of every part of a repair applied to its tables."""
+    return APPLY[repair.requirement](study, {place: amount * share for place, amount in repair.parts})
+
+
+Parts = dict[tuple[str, ...], float]
+
+
+def _larger_sites(study: Study, parts: Parts) -> Study:
+    """Raise the capacity of the sites, at all their sizes."""
+
+    def raised(site: str, capacity: float | None) -> float | None:
+        return None if capacity is None else capacity + parts.get((site,), 0.0)
+
+    return replace(
+        study,
+        sites=tuple(replace(row, capacity=raised(row.site, row.capacity)) for row in study.sites),
+        sizes=tuple(replace(row, capacity=row.capacity + parts.get((row.site,), 0.0)) for row in study.sizes),
+    )
+
+
+def _larger_suppliers(study: Study, parts: Parts) -> Study:
+    """Raise the capacity of suppliers in load and of offers in units of the good."""
+    load = {row.good: row.load for row in study.all_goods}
+    return replace(
+        study,
+        suppliers=tuple(
+            replace(row, capacity=None if row.capacity is None else row.capacity + parts.get((row.supplier,), 0.0))
+            for row in study.suppliers
+        ),
+        offers=tuple(
+            replace(
+                row,
+                capacity=None
+                if row.capacity is None
+                else row.capacity + parts.get((row.supplier, row.good), 0.0) / load[row.good],
+            )
+            for row in study.offers
+        ),
+    )
+
+
+def _lower_throughput(study: Study, parts: Parts) -> Study:
+    """Lower least throughput at all sizes."""
+
+    def lowered(site: str, least: float) -> float:
+        return max(0.0, least - parts.get((site,), 0.0))
+
+    return replace(
+        study,
+        sites=tuple(replace(row, least_throughput=lowered(row.site, row.least_throughput)) for row in study.sites),
+        sizes=tuple(replace(row, least_throughput=lowered(row.site, row.least_throughput)) for row in study.sizes),
+    )
+
+
+def _lower_volumes(study: Study, parts: Parts) -> Study:
+    """Lower the least yearly volume of suppliers in load and of offers in units of the good."""
+    load = {row.good: row.load for row in study.all_goods}
+    return replace(
+        study,
+        suppliers=tuple(
+            replace(row, least_yearly=max(0.0, row.least_yearly - parts.get((row.supplier,), 0.0)))
+            for row in study.suppliers
+        ),
+        offers=tuple(
+            replace(
+                row, least_yearly=max(0.0, row.least_yearly - parts.get((row.supplier, row.good), 0.0) / load[row.good])
+            )
+            for row in study.offers
+        ),
+    )
+
+
+def _reached(study: Study, parts: Parts) -> Study:
+    return replace(
+        study,
+        customers=tuple(
+            replace(row, reach_km=None if (row.customer,) in parts else row.reach_km) for row in study.customers
+        ),
+    )
+
+
+def _split(study: Study, parts: Parts) -> Study:
+    return replace(
+        study,
+        customers=tuple(
+            replace(row, single_source=study.is_single_sourced(row) and (row.customer,) not in parts)
+            for row in study.customers
+        ),
+    )
+
+
+def _unbarred(study: Study, parts: Parts) -> Study:
+    rows = [
+        replace(row, barred=row.barred and (row.origin, row.destination) not in parts) for row in lane_rows(study.lanes)
+    ]
+    return replace(study, lanes=lane_table(rows))
+
+
+def _set_free(study: Study, parts: Parts) -> Study:
+    return replace(
+        study,
+        sites=tuple(replace(row, ruling=SiteRuling.FREE) if (row.site,) in parts else row for row in study.sites),
+        suppliers=tuple(
+            replace(row, ruling=SupplierRuling.FREE) if (row.supplier,) in parts else row for row in study.suppliers
+        ),
+    )
+
+
+def _unruled(study: Study, parts: Parts) -> Study:
+    return replace(study, rules=tuple(row for place, row in enumerate(study.rules) if (str(place),) not in parts))
+
+
+def _setting(name: str, sign: int, unit: type[int | float] = float) -> Callable[[Study, Parts], Study]:
+    def apply(study: Study, parts: Parts) -> Study:
+        amount = sum(parts.values())
+        if name == "service_share":
+            amount /= sum(need.demand * weight_of(study, need.good) for need in study.all_demands)
+        value = getattr(study.settings, name) + sign * amount
+        # money and shares as found; a count of sites only moves by whole sites
+        whole = (
+            round(value) if abs(value - round(value)) < 1e-6 else math.floor(value) if sign > 0 else math.ceil(value)
+        )
+        return replace(study, settings=replace(study.settings, **{name: whole if unit is int else value}))
+
+    return apply
+
+
+def weight_of(study: Study, good: str) -> float:
+    """Return tonnes per unit of a good."""
+    return next(row.weight_t for row in study.all_goods if row.good == good)
+
+
+APPLY: dict[Requirement, Callable[[Study, Parts], Study]] = {
+    Requirement.REACH: _reached,
+    Requirement.BARS: _unbarred,
+    Requirement.SITE_CAPACITY: _larger_sites,
+    Requirement.SUPPLIER_CAPACITY: _larger_suppliers,
+    Requirement.SINGLE_SOURCING: _split,
+    Requirement.LEAST_THROUGHPUT: _lower_throughput,
+    Requirement.LEAST_YEARLY: _lower_volumes,
+    Requirement.SERVICE_SHARE: _setting("service_share", -1),
+    Requirement.FEWEST_SITES: _setting("fewest_sites", -1, int),
+    Requirement.MOST_SITES: _setting("most_sites", 1, int),
+    Requirement.BUDGET: _setting("one_off_budget", 1),
+    Requirement.RULES: _unruled,
+    Requirement.RULINGS: _set_free,
+}
+
+WHOLE = {
+    Requirement.REACH,
+    Requirement.BARS,
+    Requirement.SINGLE_SOURCING,
+    Requirement.RULES,
+    Requirement.RULINGS,
+}
+"""Families whose limits give whole or not at all."""
+
+
+def assert_true_alone(study: Study, repair: Repair) -> None:
+    """Check that a repair makes the study possible, and that less of it does not."""
+    assert is_possible(repaired(study, repair, 1 + 1e-6)), repair
+    if repair.requirement in WHOLE:
+        assert repair.amount == len(repair.parts)
+        for part in repair.parts:
+            fewer = replace(repair, parts=tuple(other for other in repair.parts if other != part))
+            assert not is_possible(repaired(study, fewer)), repair
+    else:
+        assert not is_possible(repaired(study, repair, 1 - 1e-3)), repair
+
+
+def reasons_of(study: Study) -> dict[str, tuple[object, str, str]]:
+    """Return amount, unit and sentence of each reason by family, after checking that every repair is true alone."""
+    assert not is_possible(study)
+    network = build_network(study)
+    repairs, _ = find_repairs(study, network)
+    for repair in repairs:
+        assert_true_alone(study, repair)
+    reasons, together = explain(study, network)
+    assert not together
+    assert [reason.family for reason in reasons] == [repair.requirement for repair in repairs]
+    return {reason.family: (reason.amount, reason.unit, reason.sentence) for reason in reasons}
+
+
+def test_possible_study_has_no_reasons() -> None:
+    """Nothing has to give where a plan exists."""
+    assert explain(study_of(capacity=65.0), build_network(study_of(capacity=65.0))) == ((), False)
+
+
+@pytest.mark.parametrize("capacity", [40.0, 64.99])
+def test_total_capacity(capacity: float) -> None:
+    """Two sites hold 2 x capacity of the 130 needed; at 65 each the study is possible (test above)."""
+    reasons = reasons_of(study_of(capacity))
+    short = 130 - 2 * capacity
+    assert set(reasons) == {"site-capacity"}
+    assert reasons["site-capacity"][0] == pytest.approx(short)
+    assert reasons["site-capacity"][1] == "unit"
+    assert f"The total capacity of all sites is short by {shown(short)} unit; enough: " in reasons["site-capacity"][2]
+
+
+def test_capacity_within_most_sites() -> None:
+    """One site of 100 may open, 130 are needed: 30 more, or one more site. Both are said."""
+    reasons = reasons_of(study_of(100.0, most_sites=1))
+    assert set(reasons) == {"site-capacity", "most-sites"}
+    assert reasons["site-capacity"][2].startswith("Site capacity is short by 30 unit; enough: ")
+    assert reasons["most-sites"] == (1.0, "sites", "most_sites is 1, 1 too few: 2 sites are needed.")
+
+
+def test_capacity_of_sizes() -> None:
+    """The largest sizes hold 50 and 40: still 40 short."""
+    sizes = (
+        SizeRow(site="Brno", size="s", capacity=20.0),
+        SizeRow(site="Brno", size="l", capacity=50.0),
+        SizeRow(site="Graz", size="s", capacity=40.0),
+    )
+    assert reasons_of(replace(study_of(), sizes=sizes))["site-capacity"][0] == pytest.approx(40.0)
+
+
+def test_supplier_capacity() -> None:
+    """The supplier delivers 100 of 130 and its offer 90: 40 short, and both limits are named."""
+    study = study_of(suppliers=(SupplierRow(supplier="North", capacity=100.0),))
+    study = replace(study, offers=(OfferRow(supplier="North", good=IMPLIED_GOOD, capacity=90.0),))
+    amount, unit, sentence = reasons_of(study)["supplier-capacity"]
+    assert (amount, unit) == (pytest.approx(40.0), "unit")
+    assert sentence == "Supplier capacity is short by 40 unit; enough: North +30 unit, North's goods +40 unit."
+
+
+def test_reach() -> None:
+    """Linz lies 80 km from the nearest site and is reached to 79 km; at 80 the study is possible."""
+    study = study_of()
+
+    def with_reach(reach: float) -> Study:
+        return replace(study, customers=(replace(study.customers[0], reach_km=reach), study.customers[1]))
+
+    assert is_possible(with_reach(80.0))
+    reasons = reasons_of(with_reach(79.0))
+    assert reasons == {
+        "reach": (1.0, "customers", "This customer has no site within reach: Linz (reach 79 km, nearest 80 km).")
+    }
+
+
+def test_reach_of_customers_with_a_full_site() -> None:
+    """Linz has a site within reach, too small for it."""
+    study = study_of(65.0)
+    sites = (replace(study.sites[0], capacity=30.0), replace(study.sites[1], capacity=100.0))
+    customers = (replace(study.customers[0], reach_km=100.0), study.customers[1])
+    reasons = reasons_of(replace(study, sites=sites, customers=customers))
+    assert reasons["reach"][2].startswith("This customer can only be served from beyond reach: Linz (reach 100 km")
+    assert reasons["site-capacity"][0] == pytest.approx(30.0)
+
+
+def test_bars() -> None:
+    """Both lanes to Wels are barred; lifting either bar is enough."""
+    study = study_of()
+    rows = [replace(row, barred=row.destination == "Wels") for row in lane_rows(study.lanes)]
+    amount, unit, sentence = reasons_of(replace(study, lanes=lane_table(rows)))["bars"]
+    assert (amount, unit) == (1.0, "bars")
+    assert sentence in {f"This bar stands in the way: {site} to Wels." for site in SITES}
+
+
+def test_single_sourcing() -> None:
+    """Sites of 100 and 50 hold 60 and 70 only if one is split; or if Graz grew by 10 to hold Linz."""
+    study = study_of(single_source=True)
+    sites = (replace(study.sites[0], capacity=100.0), replace(study.sites[1], capacity=50.0))
+    reasons = reasons_of(replace(study, sites=sites))
+    assert set(reasons) == {"single-sourcing", "site-capacity"}
+    assert reasons["single-sourcing"][:2] == (1.0, "customers")
+    assert "cannot be taken whole from one origin, only split: " in reasons["single-sourcing"][2]
+    assert reasons["site-capacity"][0] == pytest.approx(10.0)
+
+
+def test_customer_too_large_for_any_site() -> None:
+    """A single-sourced customer of 70 has no lane from sites of 66, yet they hold it split, or grown by 4 and by 0."""
+    study = study_of(66.0, single_source=True)
+    reasons = reasons_of(study)
+    assert reasons["single-sourcing"][0] == 1.0
+    assert reasons["site-capacity"][0] == pytest.approx(4.0)
+
+
+def test_least_throughput() -> None:
+    """A pinned site must move 150, of 130 demanded: 20 too much; or unpin it."""
+    study = study_of()
+    sites = (replace(study.sites[0], least_throughput=150.0, ruling=SiteRuling.PINNED_OPEN), study.sites[1])
+    reasons = reasons_of(replace(study, sites=sites))
+    assert set(reasons) == {"least-throughput", "rulings"}
+    assert reasons["least-throughput"] == (
+        pytest.approx(20.0),
+        "unit",
+        "Least throughput is 20 unit too high; enough: Brno -20 unit.",
+    )
+    assert reasons["rulings"] == (1.0, "rulings", "This ruling stands in the way: Brno pinned-open.")
+
+
+def test_least_yearly_volume() -> None:
+    """A pinned supplier must deliver 150, its offer 145, of 130 demanded: the larger excess, 20, is what counts."""
+    supplier = SupplierRow(supplier="North", least_yearly=150.0, ruling=SupplierRuling.PINNED_SIGNED)
+    study = study_of(suppliers=(supplier, SupplierRow(supplier="South")))
+    offers = (
+        OfferRow(supplier="North", good=IMPLIED_GOOD, least_yearly=145.0),
+        OfferRow(supplier="South", good=IMPLIED_GOOD),
+    )
+    reasons = reasons_of(replace(study, offers=offers))
+    assert set(reasons) == {"least-yearly", "rulings"}
+    assert reasons["least-yearly"][0] == pytest.approx(20.0)
+    assert reasons["least-yearly"][2].endswith("enough: North's goods -15 unit, North -20 unit.")
+
+
+def test_service_share() -> None:
+    """Only the 60 of Linz lie within 100 km of a site: 46.2 % of 130, not the 90 % asked."""
+    amount, unit, sentence = reasons_of(study_of(service_km=100.0, service_share=0.9))["service-share"]
+    assert (amount, unit) == (pytest.approx(90 - 100 * 60 / 130), "points")
+    assert sentence.startswith("At most 46.1538 % of the weight can be delivered within 100 km, 43.8462 points less")
+
+
+def test_fewest_sites() -> None:
+    """Three sites are asked for and two are there."""
+    reasons = reasons_of(study_of(fewest_sites=3))
+    assert reasons == {"fewest-sites": (1.0, "sites", "fewest_sites is 3, 1 more than can be open: at most 2.")}
+
+
+def test_budget() -> None:
+    """Two sites of 100,000 are needed: a budget of 120,000 falls 80,000 short."""
+    reasons = reasons_of(study_of(100.0, one_off_budget=120_000.0))
+    assert set(reasons) == {"one-off-budget", "site-capacity"}
+    assert reasons["one-off-budget"] == (
+        pytest.approx(80_000.0),
+        "XXX",
+        "The one-off budget of 120,000 XXX falls 80,000 XXX short: 200,000 XXX are needed.",
+    )
+
+
+def test_contradicting_rules() -> None:
+    """Both or none, exactly one: rows 2 and 3 contradict each other, row 4 has nothing to do with it."""
+    rules = (
+        RuleRow(rule=RuleKind.TOGETHER, members=SITES, row=2),
+        RuleRow(rule=RuleKind.ONE_OF, members=SITES, row=3),
+        RuleRow(rule=RuleKind.AT_LEAST, members=SITES, number=1, row=4),
+    )
+    amount, unit, sentence = reasons_of(replace(study_of(), rules=rules))["rules"]
+    assert (amount, unit) == (1.0, "rules")
+    assert sentence.startswith("The rules in rows 2 and 3 contradict each other. Enough: take out the rule in row ")
+
+
+def test_rule_against_the_rest() -> None:
+    """One site only, of 100, for 130: the rule is not contradictory, but cannot be met with the rest."""
+    rules = (RuleRow(rule=RuleKind.ONE_OF, members=SITES, row=5),)
+    reasons = reasons_of(replace(study_of(100.0), rules=rules))
+    assert reasons["rules"][2] == (
+        "The rule in row 5 cannot be met together with the other requirements. Enough: take out the rule in row 5."
+    )
+
+
+@pytest.mark.parametrize(
+    ("kind", "number", "pins"),
+    [
+        (RuleKind.NEEDS, None, (SiteRuling.PINNED_OPEN, SiteRuling.PINNED_SHUT)),
+        (RuleKind.NOT_TOGETHER, None, (SiteRuling.PINNED_OPEN, SiteRuling.PINNED_OPEN)),
+        (RuleKind.AT_MOST, 1, (SiteRuling.PINNED_OPEN, SiteRuling.PINNED_OPEN)),
+        (RuleKind.AT_LEAST, 2, (SiteRuling.PINNED_OPEN, SiteRuling.PINNED_SHUT)),
+        (RuleKind.TOGETHER, None, (SiteRuling.PINNED_OPEN, SiteRuling.PINNED_SHUT)),
+        (RuleKind.ONE_OF, None, (SiteRuling.PINNED_OPEN, SiteRuling.PINNED_OPEN)),
+    ],
+)
+def test_rule_against_rulings(kind: RuleKind, number: int | None, pins: tuple[SiteRuling, SiteRuling]) -> None:
+    """Each kind of rule gives way whole, and so does one of the two rulings."""
+    study = study_of()
+    sites = tuple(replace(row, ruling=pin) for row, pin in zip(study.sites, pins, strict=True))
+    rules = (RuleRow(rule=kind, members=SITES, number=number, row=2),)
+    reasons = reasons_of(replace(study, sites=sites, rules=rules))
+    assert {family: reason[0] for family, reason in reasons.items()} == {"rules": 1.0, "rulings": 1.0}
+
+
+def test_rulings_on_suppliers() -> None:
+    """The only supplier may not be signed."""
+    study = study_of(suppliers=(SupplierRow(supplier="North", ruling=SupplierRuling.PINNED_UNSIGNED),))
+    reasons = reasons_of(study)
+    assert reasons == {"rulings": (1.0, "rulings", "This ruling stands in the way: North pinned-unsigned.")}
+
+
+def test_customer_without_any_lane() -> None:
+    """Enns has no coordinates and no row: nothing that could be lifted serves it."""
+    study = study_of()
+    study = replace(study, customers=(*study.customers, CustomerRow(customer="Enns", demand=5.0)))
+    reasons, together = explain(study, build_network(study))
+    assert not together
+    assert [(reason.family, reason.amount) for reason in reasons] == [("lanes", 1.0)]
+    assert reasons[0].sentence.startswith(
+        "This customer has no lane at all, whatever is lifted: Enns. Give coordinates"
+    )
+
+
+def test_customer_whose_good_nobody_can_bring() -> None:
+    """A site no inbound lane reaches serves nobody; with it, a shortage elsewhere is told as well."""
+    study = study_of(40.0, suppliers=(SupplierRow(supplier="North"),))
+    rows = [row for row in lane_rows(study.lanes) if row.leg is not Leg.INBOUND]
+    reasons, together = explain(
+        replace(study, lanes=lane_table(rows)), build_network(replace(study, lanes=lane_table(rows)))
+    )
+    assert ([reason.family for reason in reasons], reasons[0].amount, together) == (["lanes"], 2.0, False)
+    short = replace(study, customers=(*study.customers, CustomerRow(customer="Enns", demand=5.0)))
+    reasons, together = explain(short, build_network(short))
+    assert ([reason.family for reason in reasons], together) == (["lanes", "site-capacity"], True)
+    assert reasons[1].amount == pytest.approx(50.0)
+    assert reasons[1].sentence.endswith("Not enough alone.")
+
+
+def test_smallest_combination() -> None:
+    """Linz is out of reach and three sites are asked for: neither repair alone helps, the two together do."""
+    study = study_of(fewest_sites=3, one_off_budget=1e6, most_sites=1)
+    study = replace(
+        study,
+        settings=replace(study.settings, most_sites=None),
+        customers=(replace(study.customers[0], reach_km=79.0), study.customers[1]),
+    )
+    network = build_network(study)
+    repairs, together = find_repairs(study, network)
+    assert together
+    assert [(repair.requirement, repair.amount) for repair in repairs] == [
+        (Requirement.REACH, 1.0),
+        (Requirement.FEWEST_SITES, pytest.approx(1.0)),
+    ]
+    assert is_possible(repaired(repaired(study, repairs[0]), repairs[1]))
+    assert not any(is_possible(repaired(study, repair)) for repair in repairs)
+    reasons, together = explain(study, network)
+    assert together
+    assert all(reason.sentence.endswith("Not enough alone.") for reason in reasons)
+
+
+def test_a_stopped_explanation_says_nothing_untrue() -> None:
+    """Stopped before it began, an explanation says that it found nothing, and what could be looked at."""
+    stop = Stop()
+    stop.request()
+    study = study_of(120.0, most_sites=1)
+    reasons, together = explain(study, build_network(study), stop=stop)
+    assert not together
+    assert [(reason.family, reason.amount) for reason in reasons] == [("not-found", None)]
+    assert "The study asks for site-capacity, most-sites: lift one and plan again." in reasons[0].sentence
+
+
+def random_study(seed: int) -> Study:
+    """Return a small study with two goods and most limits tight, impossible more often than not."""
+    draws = np.random.default_rng(seed)
+    sites, customers, suppliers = ("Brno", "Graz", "Győr"), ("Enns", "Linz", "Steyr", "Wels"), ("North", "South")
+    goods = (GoodRow(good="pots", weight_t=0.5, load=2.0), GoodRow(good="trees", load=1.0))
+    lanes = [
+        LaneRow(
+            leg=Leg.OUTBOUND,
+            origin=site,
+            destination=customer,
+            road_km=float(draws.integers(50, 300)),
+            barred=bool(draws.random() < 0.1),
+        )
+        for site in sites
+        for customer in customers
+    ]
+    lanes += cost_rows(Leg.INBOUND, suppliers, sites, draws.integers(1, 9, (2, 3)).astype(np.float64).tolist())
+    return Study(
+        settings=settings_of(
+            "random",
+            outbound_rate=0.1,
+            interest_rate=0.08,
+            life_years=10.0,
+            most_sites=int(draws.integers(1, 4)),
+            one_off_budget=float(draws.integers(50, 300)),
+            service_km=150.0,
+            service_share=float(draws.choice([0.2, 0.5, 0.8])),
+        ),
+        sites=tuple(
+            SiteRow(
+                site=site,
+                capacity=float(draws.integers(60, 160)),
+                opening_charge=float(draws.integers(50, 150)),
+                least_throughput=float(draws.choice([0, 50])),
+                ruling=draws.choice([SiteRuling.FREE, SiteRuling.FREE, SiteRuling.PINNED_SHUT]),
+            )
+            for site in sites
+        ),
+        customers=tuple(
+            CustomerRow(
+                customer=customer,
+                reach_km=float(draws.integers(100, 300)),
+                single_source=bool(draws.random() < 0.4),
+            )
+            for customer in customers
+        ),
+        suppliers=tuple(
+            SupplierRow(
+                supplier=name, capacity=float(draws.integers(80, 200)), least_yearly=float(draws.choice([0, 90]))
+            )
+            for name in suppliers
+        ),
+        goods=goods,
+        demands=tuple(
+            DemandRow(customer=customer, good=good.good, demand=float(draws.integers(5, 25)))
+            for customer in customers
+            for good in goods
+        ),
+        offers=tuple(
+            OfferRow(supplier=name, good=good.good, capacity=float(draws.integers(20, 90)))
+            for name in suppliers
+            for good in goods
+        ),
+        rules=(RuleRow(rule=RuleKind.NOT_TOGETHER, members=sites[:2], row=2),),
+        lanes=lane_table(lanes),
+    )
+
+
+@pytest.mark.parametrize("seed", range(25))
+def test_repairs_of_random_studies_are_true(seed: int) -> None:
+    """Whatever is reported repairs the study; less of it does not; nothing is reported of a possible study."""
+    study = random_study(seed)
+    repairs, together = find_repairs(study, build_network(study))
+    if is_possible(study):
+        assert (repairs, together) == ((), False)
+        return
+    assert repairs
+    if not together:
+        for repair in repairs:
+            assert_true_alone(study, repair)
+        return
+    assert is_possible(all_repaired(study, repairs))
+    for left_out in repairs:
+        assert not is_possible(all_repaired(study, [repair for repair in repairs if repair is not left_out]))
+    *earlier, last = repairs
+    less = all_repaired(study, earlier)
+    if last.requirement not in WHOLE:
+        assert not is_possible(repaired(less, last, 1 - 1e-3))
+
+
+def all_repaired(study: Study, repairs: Sequence[Repair]) -> Study:
+    """Return the study with every repair applied."""
+    for repair in repairs:
+        study = repaired(study, repair, 1 + 1e-6)
+    return study
+
+
+@pytest.mark.parametrize(
+    ("amount", "text"),
+    [
+        (1240.0, "1,240"),
+        (80_000.0, "80,000"),
+        (1.0, "1"),
+        (0.0425, "0.0425"),
+        (1_234_567.2, "1,234,570"),
+        (12.3456781, "12.3457"),
+        (40.000000001, "40"),
+        (0.0, "0"),
+    ],
+)
+def test_amounts_are_rounded_up(amount: float, text: str) -> None:
+    """Six digits, never less than what is needed."""
+    assert shown(amount) == text
