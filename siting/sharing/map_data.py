@@ -8,6 +8,7 @@ Numbers that place, size or fill a symbol are the plan's own, unrounded; everyth
 from __future__ import annotations
 
 import math
+import re
 from bisect import bisect_left
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
@@ -122,7 +123,7 @@ def dots_json(where: Located, loads: Iterable[float]) -> Json:
 def _scale(where: Located, most: float, second: float) -> Json:
     """Return the largest load and round samples of it and of a part of it, each with its text."""
     values = list(dict.fromkeys(value for value in (_round_down(most), _round_down(most * second)) if value > 0))
-    samples = [[value, f"{map_facts.load_text(where.study, where.formats, value)} a year"] for value in values]
+    samples = [[value, map_facts.load_text(where.study, where.formats, value)] for value in values]
     return {"most": most, "samples": samples}
 
 
@@ -167,8 +168,9 @@ def frame_json(where: Located, *, kind: str, headline: str, fingerprint: str, no
 
 
 def shortened_headline(headline: str) -> str:
-    """Return the headline, which quotes the title a user typed, at a length that leaves room for the map."""
-    return looks.shortened(headline, 400)
+    """Return the headline at a length that leaves room for the map, numbers kept with the word before and unit after."""
+    bound = re.sub(r"(?<=[\w(]) (?=\d)|(?<=\d) (?=[A-Z%])|(?<= M) (?=[A-Z]{3}\b)", looks.NO_BREAK, headline)
+    return looks.shortened(bound, 400)
 
 
 def plan_json(study: Study, plan: Plan, *, headline: str, locale: str = "en") -> Json:
@@ -228,7 +230,7 @@ def _leg_scale(where: Located, lanes: Sequence[Json], leg: str) -> Json:
     loads = [sum(lane["load"]) for lane in lanes if lane["leg"] == leg]  # type: ignore[arg-type]
     most = max(loads, default=0.0)
     hair = most * looks.HAIR_LINE_PX / looks.WIDEST_LINE_PX
-    text = f"up to {map_facts.load_text(where.study, where.formats, hair)} a year" if hair else ""
+    text = f"up to {map_facts.load_text(where.study, where.formats, hair)}" if hair else ""
     return {**_scale(where, most, 0.25), "hair_text": text}
 
 
@@ -377,8 +379,8 @@ def _service_text(where: Located, plan: Plan) -> str:
     limit, share = where.study.settings.service_km, plan.service.share_within
     if limit is None:
         return ""
-    reached = "" if share is None else f" ({where.formats.share(share)} of weight is within)"
-    return f"ringed: over {where.formats.distance(limit)} away{reached}"
+    reached = "" if share is None else f" ({where.formats.share(share)} of weight within)"
+    return f"over {where.formats.distance(limit)} away{reached}"
 
 
 def _distance_notes(where: Located, plan: Plan) -> list[str]:

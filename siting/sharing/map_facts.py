@@ -96,9 +96,9 @@ def goods_text(study: Study, formats: Formats, amounts: Mapping[str, float]) -> 
 
 
 def place_text(row: SiteRow | SupplierRow | CustomerRow, name: str) -> str:
-    """Return place and country, leaving out a place that only repeats the name."""
-    place = "" if row.place == name else row.place
-    return name_shown(", ".join(part for part in (place, row.country) if part))
+    """Return place and country, or nothing where they only repeat the name."""
+    text = ", ".join(part for part in (row.place, row.country) if part)
+    return "" if text == name else name_shown(text)
 
 
 def _capacity_text(study: Study, formats: Formats, capacity: float | None) -> str:

@@ -56,11 +56,12 @@ def given_json(study: Study, *, fingerprint: str = "", locale: str = "en") -> Js
                 "active": row.standing is SiteStanding.RUNNING,
                 "level": None,
                 "level_text": "",
-                "brief": "" if row.ruling.value == "free" else row.ruling.value,
-                "note": "",
-                "facts": map_facts.given_site_facts(study, where.formats, row),
+                "brief": facts[2] if row.standing is SiteStanding.RUNNING else "",
+                "note": "" if row.ruling.value == "free" else row.ruling.value,
+                "facts": facts,
             }
             for row in study.sites
+            for facts in [map_facts.given_site_facts(study, where.formats, row)]
         ],
         "suppliers": [
             {
@@ -69,8 +70,8 @@ def given_json(study: Study, *, fingerprint: str = "", locale: str = "en") -> Js
                 "spot": where.spot(row),
                 "key": row.standing.value,
                 "active": row.standing is SupplierStanding.SIGNED,
-                "brief": "" if row.ruling.value == "free" else row.ruling.value,
-                "note": "",
+                "brief": "",
+                "note": "" if row.ruling.value == "free" else row.ruling.value,
                 "facts": map_facts.given_supplier_facts(study, where.formats, row),
             }
             for row in study.suppliers

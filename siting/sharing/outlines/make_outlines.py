@@ -39,6 +39,8 @@ SUBURB_KM = 15.0
 """A place this near to one at least twice as large is a suburb or a district, and is left out."""
 DISTRICT_KM = 5.0
 """A place this near to any larger one is left out."""
+PART_KM = 30.0
+"""A place this near to a larger one whose name its own begins with is a part of that, and is left out."""
 KM_PER_DEGREE = 111.2
 RING_POINTS = 4
 """Fewest points of a closed ring; an island that simplifies to less is left out."""
@@ -129,7 +131,9 @@ def write_places(folder: Path, cities: Path) -> None:
         larger = np.array(kept, dtype=np.int64)
         east = (spot[larger, 1] - longitude) * np.cos(np.radians(latitude))
         km = np.hypot(east, spot[larger, 0] - latitude) * KM_PER_DEGREE
-        if not ((km < DISTRICT_KM) | ((km < SUBURB_KM) & (people[larger] >= 2 * people[i]))).any():
+        part = any(rows[i]["name"].startswith(f"{rows[j]['name']} ") for j in larger[km < PART_KM])
+        suburb = (km < SUBURB_KM) & (people[larger] >= 2 * people[i])
+        if not (part or suburb.any() or (km < DISTRICT_KM).any()):
             kept.append(i)
     names = "\n".join(rows[i]["name"] for i in kept)
     path = folder / "places.npz"

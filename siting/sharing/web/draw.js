@@ -53,6 +53,8 @@ siting.drawBase = function (map) {
 
 siting.load = (loads) => (siting.state.good < 0 ? loads.reduce((sum, load) => sum + load, 0) : loads[siting.state.good]);
 siting.width = (leg, load) => Math.max(leg.hair, (load / leg.most) * leg.widest);
+// Dashes grow with the line, so that a wide one still reads as dashed and not as a ladder.
+siting.dashes = (leg, width) => (leg.dashes ? leg.dashes.split(" ").map((dash) => Math.max(1, width / 3) * dash).join(" ") : null);
 siting.radius = (load) => Math.max(siting.data.dots.smallest, Math.sqrt(load / siting.data.dots.most) * siting.data.dots.largest);
 
 siting.ends = { outbound: ["sites", "customers"], inbound: ["suppliers", "sites"], direct: ["suppliers", "customers"] };
@@ -81,7 +83,7 @@ siting.makeLanes = function () {
     if (!from.spot || !to.spot) continue;
     const pen = siting.pens[lane.leg];
     lane.drawn = L.polyline([from.spot, to.spot], {
-      renderer: siting.canvas, color: pen.colour, dashArray: pen.dashes || null, lineCap: pen.dashes ? "butt" : "round", smoothFactor: 0,
+      renderer: siting.canvas, color: pen.colour, lineCap: pen.dashes ? "butt" : "round", smoothFactor: 0,
     });
     siting.bindCard(lane.drawn, [from.name, to.name], data.lane_heads, lane.facts, true);
   }
@@ -91,10 +93,10 @@ siting.makeCustomers = function () {
   const data = siting.data;
   data.customers.forEach((customer, index) => {
     if (!customer.spot) return;
-    const shade = customer.band === null ? data.colours.paper : data.shades[customer.band];
+    const shade = customer.band === null ? data.colours.ink : data.shades[customer.band], hollow = customer.beyond || customer.band === null;
     customer.drawn = L.circleMarker(customer.spot, {
-      renderer: siting.canvas, fillColor: shade, fillOpacity: 1,
-      color: customer.beyond || customer.band === null ? data.colours.ink : data.colours.paper, weight: customer.beyond ? 1.8 : 0.8,
+      renderer: siting.canvas, fillColor: hollow ? data.colours.paper : shade, fillOpacity: 1,
+      color: hollow ? shade : data.colours.paper, weight: hollow ? 2 : 0.8, dashArray: customer.band === null ? "2 2" : null,
     });
     siting.bindCard(customer.drawn, [customer.name], data.customer_heads, customer.facts, true);
     customer.drawn.on("click", () => siting.select("customers", index));
@@ -102,10 +104,8 @@ siting.makeCustomers = function () {
 };
 
 siting.makeMarkers = function (kind, word) {
-  const data = siting.data, symbols = new Map(data[`${word}_symbols`].map((symbol) => [symbol.key, symbol]));
-  const group = siting.groups[kind];
+  const data = siting.data, group = siting.groups[kind];
   data[kind].forEach((thing, index) => {
-    thing.symbol = symbols.get(thing.key);
     if (!thing.spot) return;
     const size = thing.symbol.size_px;
     const html = siting.symbol(thing.symbol, thing.level === undefined ? null : thing.level, thing.active);
@@ -137,7 +137,8 @@ siting.restyle = function () {
     }
     const group = groups[lane.leg];
     if (load > 0) {
-      lane.drawn.setStyle({ weight: siting.width(siting.pens[lane.leg], load), opacity: strong ? (lane.leg === "inbound" ? 0.85 : 0.72) : 0.07 });
+      const pen = siting.pens[lane.leg], weight = siting.width(pen, load);
+      lane.drawn.setStyle({ weight, dashArray: siting.dashes(pen, weight), opacity: strong ? (lane.leg === "inbound" ? 0.85 : 0.72) : 0.07 });
       if (!group.hasLayer(lane.drawn)) group.addLayer(lane.drawn);
     } else group.removeLayer(lane.drawn);
   }
@@ -184,7 +185,8 @@ siting.hold = function () {
 
 siting.wantedLabels = function () {
   const { data, map, groups } = siting, wanted = [];
-  const strong = { name: "strong", size: 13, weight: 650 }, plain = { name: "plain", size: 12, weight: 450 }, town = { name: "town", size: 11, weight: 400 };
+  const strong = { name: "strong", size: 13, weight: 650, rank: 0 }, plain = { name: "plain", size: 12, weight: 450, rank: 1 };
+  const town = { name: "town", size: 11, weight: 400, rank: 2 };
   const add = (kind, active) => {
     if (!map.hasLayer(groups[kind])) return;
     for (const thing of data[kind])
@@ -200,31 +202,39 @@ siting.wantedLabels = function () {
 };
 
 siting.obstacles = function () {
-  const { data, map, groups } = siting, found = [];
+  const { data, map, groups } = siting, found = { symbols: [], dots: [], lines: [] };
+  const spot = (thing) => ({ lat: thing.spot[0], lon: thing.spot[1] });
   for (const kind of ["sites", "suppliers"])
     if (map.hasLayer(groups[kind]))
-      for (const thing of data[kind]) if (thing.spot) found.push({ lat: thing.spot[0], lon: thing.spot[1], half: thing.symbol.size_px / 2 + 1 });
+      for (const thing of data[kind]) if (thing.spot) found.symbols.push({ ...spot(thing), half: thing.symbol.size_px / 2 + 1 });
   if (map.hasLayer(groups.customers))
     for (const customer of data.customers)
-      if (customer.spot && siting.load(customer.load) > 0) {
-        const radius = siting.radius(siting.load(customer.load));
-        if (radius > 4) found.push({ lat: customer.spot[0], lon: customer.spot[1], half: radius * 0.8 });
-      }
+      if (customer.drawn && siting.load(customer.load) > 0) found.dots.push({ ...spot(customer), half: siting.radius(siting.load(customer.load)) * 0.85 });
+  for (const lane of data.lanes)
+    if (lane.drawn && siting.load(lane.load) > 0 && map.hasLayer(groups[lane.leg])) {
+      const [start, end] = siting.ends[lane.leg];
+      found.lines.push([spot(data[start][lane.from]), spot(data[end][lane.to])]);
+    }
   return found;
 };
 
-// Called once the map and its layers are there; `shown` says which are switched on.
+siting.named = function () {
+  for (const word of ["site", "supplier"]) {
+    const symbols = new Map(siting.data[`${word}_symbols`].map((symbol) => [symbol.key, symbol]));
+    for (const thing of siting.data[`${word}s`]) thing.symbol = symbols.get(thing.key);
+  }
+};
+
+// Called once the map and its layers are there.
 siting.start = function (map) {
   siting.map = map;
+  siting.named();
+  siting.panels();
   if (!siting.data.base) {
     document.body.classList.add("placeless");
-    for (const kind of ["site", "supplier"]) {
-      const symbols = new Map(siting.data[`${kind}_symbols`].map((symbol) => [symbol.key, symbol]));
-      for (const thing of siting.data[`${kind}s`]) thing.symbol = symbols.get(thing.key);
-    }
-    siting.panels();
     return;
   }
+  map.invalidateSize({ animate: false, pan: false }); // the panels have taken their room
   siting.canvas = L.canvas({ padding: 0.3, tolerance: 3 });
   L.control.zoom({ position: "topleft", zoomInTitle: "Closer", zoomOutTitle: "Farther" }).addTo(map);
   L.control.scale({ imperial: false, position: "bottomleft", maxWidth: 120 }).addTo(map);
@@ -236,7 +246,6 @@ siting.start = function (map) {
   siting.makeMarkers("sites", "site");
   siting.restyle();
   siting.labels = new siting.Labels(siting.wantedLabels, siting.obstacles).addTo(map);
-  siting.panels();
   map.on("click", () => siting.state.selected && siting.select(siting.state.selected.kind, siting.state.selected.index));
   map.on("resize", siting.hold);
 };

@@ -4,7 +4,7 @@
 siting.Labels = L.Layer.extend({
   initialize: function (wanted, obstacles) {
     this.wanted = wanted; // () => [{lat, lon, half, text, extra, style, far}]
-    this.obstacles = obstacles; // () => [{lat, lon, half}]
+    this.obstacles = obstacles; // () => {symbols: [{lat, lon, half}], dots: the same, lines: [[{lat, lon}, {lat, lon}]]}
   },
   onAdd: function (map) {
     this.root = siting.svg("svg", { class: "labels", "aria-hidden": "true" });
@@ -31,27 +31,37 @@ siting.Labels = L.Layer.extend({
     this.root.setAttribute("width", size.x);
     this.root.setAttribute("height", size.y);
     this.root.replaceChildren();
-    const taken = this.obstacles().map((thing) => {
-      const at = map.latLngToContainerPoint([thing.lat, thing.lon]);
-      return [at.x - thing.half, at.y - thing.half, 2 * thing.half, 2 * thing.half];
-    });
-    const free = (box) =>
-      box[0] >= 3 && box[1] >= 3 && box[0] + box[2] <= size.x - 3 && box[1] + box[3] <= size.y - 3 &&
-      !taken.some((other) => box[0] < other[0] + other[2] && other[0] < box[0] + box[2] && box[1] < other[1] + other[3] && other[1] < box[1] + box[3]);
+    const at = (thing) => map.latLngToContainerPoint([thing.lat, thing.lon]);
+    const around = (thing) => {
+      const point = at(thing);
+      return [point.x - thing.half, point.y - thing.half, 2 * thing.half, 2 * thing.half];
+    };
+    const { symbols, dots, lines } = this.obstacles();
+    const corner = [[0, 0, 84, 140], [0, size.y - 40, 150, 40]]; // where the buttons and the scale stand
+    const hard = [...symbols.map(around), ...corner], soft = dots.map(around);
+    const segments = lines.map((line) => [at(line[0]), at(line[1])]);
+    const meets = (box, other) => box[0] < other[0] + other[2] && other[0] < box[0] + box[2] && box[1] < other[1] + other[3] && other[1] < box[1] + box[3];
+    const clear = (box) => box[0] >= 3 && box[1] >= 3 && box[0] + box[2] <= size.x - 3 && box[1] + box[3] <= size.y - 3 && !hard.some((other) => meets(box, other));
+    const tidy = (box) => clear(box) && !soft.some((other) => meets(box, other));
+    const crossed = (box) => L.bounds([box[0] + 1, box[1] + 2], [box[0] + box[2] - 1, box[1] + box[3] - 2]);
+    const open = (box) => tidy(box) && !segments.some(([from, to]) => L.LineUtil.clipSegment(from, to, crossed(box)));
     const scale = parseFloat(getComputedStyle(document.documentElement).fontSize) / 16;
     const family = getComputedStyle(map.getContainer()).fontFamily;
     for (const label of this.wanted()) {
-      const at = map.latLngToContainerPoint([label.lat, label.lon]);
-      if (at.x < 0 || at.y < 0 || at.x > size.x || at.y > size.y) continue;
+      const point = at(label);
+      if (point.x < 0 || point.y < 0 || point.x > size.x || point.y > size.y) continue;
       const px = label.style.size * scale;
       this.pen.font = `${label.style.weight} ${px}px ${family}`;
       const gap = label.extra ? px * 0.4 : 0;
       const own = this.pen.measureText(label.text).width;
       this.pen.font = `400 ${px * 0.92}px ${family}`;
       const width = own + gap + (label.extra ? this.pen.measureText(label.extra).width : 0) + 2;
-      const box = this.spots(at.x, at.y, label.half, width, px * 1.2).find(free);
+      const spots = this.spots(point.x, point.y, label.half, width, px * 1.2);
+      // A town gives way to everything; a site in use rather covers a customer than stays without its name.
+      const box = spots.find(open) || (label.style.rank < 2 && spots.find(tidy)) || (label.style.rank < 1 && spots.find(clear));
       if (!box) continue;
-      taken.push(box);
+      hard.push(box);
+      if (label.style.rank < 2) siting.svg("rect", { x: box[0] - 1.5, y: box[1], width: width + 2, height: px * 1.25, rx: 2.5, class: "plate" }, this.root);
       const y = box[1] + px * 0.95;
       const text = siting.svg("text", { x: box[0], y, class: `label ${label.style.name}`, "font-size": px, "font-weight": label.style.weight }, this.root);
       text.textContent = label.text;

@@ -28,7 +28,8 @@ siting.verdictList = function () {
       const head = siting.element("h2");
       head.append(siting.symbol(symbol, symbol.fill ? 0.6 : null, rows[0][0].active), siting.element("span", "verdict", symbol.key), siting.element("span", "count", `${rows.length} ${rows.length === 1 ? word : kind}`));
       part.append(head);
-      const list = siting.element("ul", rows[0][0].active ? "rows" : "rows tight");
+      const plain = rows.every(([thing]) => !thing.brief && !thing.note);
+      const list = siting.element("ul", rows[0][0].active ? "rows" : plain ? "rows flowing" : "rows tight");
       for (const [thing, index] of rows) {
         const item = siting.element("li");
         const button = siting.element("button", "row");
@@ -59,13 +60,14 @@ siting.showSelected = function () {
   said.append("Singled out: ", siting.name(siting.data[selected.kind][selected.index].name, "who"), ". Escape or a second click shows all.");
 };
 
-siting.switcher = function (root, key, text) {
+siting.switcher = function (root, key, text, more) {
   const label = siting.element("label", "switch");
   const box = siting.element("input");
   box.type = "checkbox";
   box.checked = true;
   box.id = `switch-${key}`;
   label.append(box, siting.element("span", "", text));
+  if (more) label.append(siting.element("span", "more", more));
   box.addEventListener("change", () => {
     if (box.checked) siting.map.addLayer(siting.groups[key]);
     else siting.map.removeLayer(siting.groups[key]);
@@ -84,9 +86,9 @@ siting.entry = function (list, drawing, text, more) {
   list.append(item);
 };
 
-siting.legendPart = function (root, key, text) {
+siting.legendPart = function (root, key, text, more) {
   const part = siting.element("section");
-  if (siting.data.base) siting.switcher(part, key, text);
+  if (siting.data.base) siting.switcher(part, key, text, more);
   else part.append(siting.element("h3", "", text));
   const list = siting.element("ul", "keys");
   part.append(list);
@@ -108,17 +110,21 @@ siting.legend = function () {
     }
   }
   siting.customerLegend(root);
-  const words = { outbound: "Outbound, site to customer", inbound: "Inbound, supplier to site", direct: "Direct, supplier to customer" };
+  const words = { outbound: ["Outbound", "site to customer"], inbound: ["Inbound", "supplier to site"], direct: ["Direct", "supplier to customer"] };
   for (const leg of data.legs) if (leg.most > 0) siting.legLegend(root, leg, words[leg.leg]);
 };
 
 siting.customerLegend = function (root) {
-  const data = siting.data, list = siting.legendPart(root, "customers", "Customers");
+  const data = siting.data, list = siting.legendPart(root, "customers", "Customers", "area: demand");
+  const sizes = siting.element("li", "sizes");
   for (const [load, text] of data.dots.samples) {
-    const picture = siting.canvasSvg(20, 20);
-    siting.svg("circle", { cx: 10, cy: 10, r: siting.radius(load), fill: data.shades[2] }, picture);
-    siting.entry(list, picture, text);
+    const picture = siting.canvasSvg(20, 18);
+    siting.svg("circle", { cx: 10, cy: 9, r: siting.radius(load), fill: data.shades[2] }, picture);
+    const swatch = siting.element("span", "swatch");
+    swatch.append(picture);
+    sizes.append(swatch, siting.element("span", "", text));
   }
+  list.append(sizes);
   if (data.bands.length) list.append(siting.element("li", "told", data.bands.some((band) => band.share) ? "shade: road distance, share of load" : "shade: road distance"));
   for (const band of data.bands) {
     const picture = siting.canvasSvg(20, 14);
@@ -127,21 +133,21 @@ siting.customerLegend = function (root) {
   }
   if (data.customers.some((customer) => customer.band === null)) {
     const picture = siting.canvasSvg(20, 14);
-    siting.svg("circle", { cx: 10, cy: 7, r: 4.5, fill: data.colours.paper, stroke: data.colours.ink }, picture);
+    siting.svg("circle", { cx: 10, cy: 7, r: 4.5, fill: data.colours.paper, stroke: data.colours.ink, "stroke-width": 2, "stroke-dasharray": "2 2" }, picture);
     siting.entry(list, picture, "distance not known");
   }
   if (data.service_text) {
     const picture = siting.canvasSvg(20, 14);
-    siting.svg("circle", { cx: 10, cy: 7, r: 5, fill: data.shades[3], stroke: data.colours.ink, "stroke-width": 1.8 }, picture);
+    siting.svg("circle", { cx: 10, cy: 7, r: 5, fill: data.colours.paper, stroke: data.shades[4], "stroke-width": 2 }, picture);
     siting.entry(list, picture, data.service_text);
   }
 };
 
-siting.legLegend = function (root, leg, text) {
-  const list = siting.legendPart(root, leg.leg, text);
+siting.legLegend = function (root, leg, [text, more]) {
+  const list = siting.legendPart(root, leg.leg, text, more);
   const sample = (width) => {
     const picture = siting.canvasSvg(34, 14), cap = leg.dashes ? "butt" : "round";
-    siting.svg("line", { x1: 4, x2: 30, y1: 7, y2: 7, stroke: leg.colour, "stroke-width": width, "stroke-dasharray": leg.dashes || "none", "stroke-linecap": cap }, picture);
+    siting.svg("line", { x1: 2, x2: 32, y1: 7, y2: 7, stroke: leg.colour, "stroke-width": width, "stroke-dasharray": siting.dashes(leg, width) || "none", "stroke-linecap": cap }, picture);
     return picture;
   };
   for (const [load, amount] of leg.samples) siting.entry(list, sample(siting.width(leg, load)), amount);
@@ -149,7 +155,7 @@ siting.legLegend = function (root, leg, text) {
 };
 
 siting.goodsChoice = function (root) {
-  const part = siting.element("fieldset");
+  const part = siting.element("fieldset", "goods");
   part.append(siting.element("legend", "", "Goods"));
   ["all", ...siting.data.goods].forEach((good, i) => {
     const label = siting.element("label", "switch");
