@@ -7,6 +7,7 @@ from collections import Counter
 from typing import TYPE_CHECKING
 
 from siting.plan.audit_books import differs, exceeds, shown
+from siting.plan.plan import LOAD_TOLERANCE
 from siting.study.tables import RuleKind, SiteRuling, SupplierRuling
 
 if TYPE_CHECKING:
@@ -62,6 +63,12 @@ def _site(books: Books, line: SiteLine) -> Iterator[str]:
     if line.capacity != limit and (line.capacity is None or limit is None or differs(line.capacity, limit, limit)):
         yield f"site {name}: capacity is stated as {line.capacity}, the tables give {limit}"
     yield from _money(books, f"site {name}", line, site_charges(books, line, option))
+    if line.note.startswith("empty") and line.throughput > LOAD_TOLERANCE:
+        yield f"site {name} is noted as empty but moves {shown(line.throughput)} {books.study.settings.unit}"
+    if option is not None and "closing costs more" in line.note:
+        closing = spread(books.study.settings, books.sites[name].closing_charge) if running else 0.0
+        if closing <= line.charge:
+            yield f"site {name} is noted as dearer to close than to run: {shown(closing)} against {shown(line.charge)}"
     if books.of_today:
         return
     ruling = books.sites[name].ruling

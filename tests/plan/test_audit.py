@@ -4,78 +4,25 @@ from __future__ import annotations
 
 import re
 from dataclasses import replace
-from typing import TYPE_CHECKING, Any
 
-import numpy as np
 import pytest
 
 from siting.plan.audit import audit
-from siting.plan.plan import CostLine, Plan, SiteVerdict, SupplierVerdict, Today, TodayOutcome, Unserved
+from siting.plan.plan import CostLine, SiteVerdict, SupplierVerdict
 from siting.plan.proof import Outcome
-from siting.study.tables import CustomerRow, LaneTable, Leg, SiteRow, Study
-from tests.building import LaneRow, lane_table
 from tests.plan import hand
-
-if TYPE_CHECKING:
-    from collections.abc import Callable
-
-    Tamper = Callable[[Plan], Plan]
-
-
-def objections(plan: Plan, study: Study = hand.STUDY, *, of_today: bool = False) -> str:
-    """Return the faults of a plan that must fail, one a line."""
-    report = audit(study, plan, of_today=of_today)
-    assert report.passed is (not report.faults)
-    assert not report.passed
-    return "\n".join(report.faults)
-
-
-def with_site(plan: Plan, site: str, /, **changes: Any) -> Plan:  # noqa: ANN401  # fields by name
-    """Return the plan with one site's line changed."""
-    return replace(plan, sites=tuple(replace(line, **changes) if line.site == site else line for line in plan.sites))
-
-
-def with_supplier(plan: Plan, supplier: str, /, **changes: Any) -> Plan:  # noqa: ANN401  # fields by name
-    """Return the plan with one supplier's line changed."""
-    lines = tuple(replace(line, **changes) if line.supplier == supplier else line for line in plan.suppliers)
-    return replace(plan, suppliers=lines)
-
-
-def with_customer(plan: Plan, customer: str, /, **changes: Any) -> Plan:  # noqa: ANN401  # fields by name
-    """Return the plan with one customer's line changed."""
-    lines = tuple(replace(line, **changes) if line.customer == customer else line for line in plan.customers)
-    return replace(plan, customers=lines)
-
-
-def with_flow(plan: Plan, origin: str, destination: str, good: str = "pots", /, **changes: Any) -> Plan:  # noqa: ANN401  # fields by name
-    """Return the plan with one flow changed."""
-    key = (origin, destination, good)
-    flows = [
-        replace(flow, **changes) if (flow.origin, flow.destination, flow.good) == key else flow for flow in plan.flows
-    ]
-    assert flows != list(plan.flows)
-    return replace(plan, flows=tuple(flows))
-
-
-def with_line(plan: Plan, line: CostLine, share: float) -> Plan:
-    """Return the plan with one cost line off by a share of it, and cost and bound to match."""
-    return replace(plan, cost_lines={**plan.cost_lines, line: plan.cost_lines[line] * share})
-
-
-def with_proof(plan: Plan, /, **changes: Any) -> Plan:  # noqa: ANN401  # fields by name
-    """Return the plan with its proof changed."""
-    return replace(plan, proof=replace(plan.proof, **changes))
-
-
-def with_service(plan: Plan, /, **changes: Any) -> Plan:  # noqa: ANN401  # fields by name
-    """Return the plan with its service changed."""
-    return replace(plan, service=replace(plan.service, **changes))
-
-
-def cost_of(plan: Plan) -> float:
-    """Return the cost of a plan that has one."""
-    assert plan.proof.cost is not None
-    return plan.proof.cost
+from tests.plan.tampering import (
+    Tamper,
+    cost_of,
+    objections,
+    with_customer,
+    with_flow,
+    with_line,
+    with_proof,
+    with_service,
+    with_site,
+    with_supplier,
+)
 
 
 def test_a_good_plan_passes() -> None:
@@ -145,6 +92,16 @@ VERDICTS: list[tuple[str, Tamper, str]] = [
         "charge of a supplier",
         lambda p: with_supplier(p, "Orchard", charge=600.0),
         r"Orchard: charge is .* 600 EUR a year",
+    ),
+    (
+        "noted as empty",
+        lambda p: with_site(p, "Linz", note="empty: pinned open"),
+        r"site Linz is noted as empty but moves 80 t",
+    ),
+    (
+        "noted as dear to close",
+        lambda p: with_site(p, "Linz", note="empty: closing costs more than running"),
+        r"site Linz is noted as dearer to close than to run: 0 against 2,375\.4",
     ),
     (
         "sum of one-off money",
@@ -389,128 +346,3 @@ def test_the_cost_is_checked_to_a_millionth(off: float, passes: bool) -> None:  
     plan = hand.plan_of()
     tampered = with_proof(plan, cost=cost_of(plan) * (1 + off - 1e-9 if passes else 1 + off + 1e-9))
     assert audit(hand.STUDY, tampered).passed is passes
-
-
-def with_today(plan: Plan, /, **changes: Any) -> Plan:  # noqa: ANN401  # fields by name
-    """Return the plan with its today changed."""
-    assert plan.today is not None
-    return replace(plan, today=replace(plan.today, **changes))
-
-
-def today_plan(plan: Plan) -> Plan:
-    """Return the plan of today."""
-    assert plan.today is not None
-    assert plan.today.plan is not None
-    return plan.today.plan
-
-
-TODAYS: list[tuple[str, Tamper, str]] = [
-    ("left out", lambda p: replace(p, today=None), r"the plan does not say what today costs"),
-    (
-        "dearer than it is",
-        lambda p: with_today(p, plan=with_line(today_plan(p), CostLine.GOODS, 2.0)),
-        r"today: cost line goods is stated as [\d,.]+ EUR",
-    ),
-    (
-        "a running site shut",
-        lambda p: with_today(p, plan=with_site(today_plan(p), "Graz", verdict=SiteVerdict.CLOSE)),
-        r"today: site Graz is running at size '' today, not close",
-    ),
-    (
-        "a running site at another size",
-        lambda p: with_today(p, plan=with_site(today_plan(p), "Linz", size="large")),
-        r"today: site Linz is running at size 'small' today, not keep at size 'large'",
-    ),
-    (
-        "a proposed site open",
-        lambda p: with_today(p, plan=with_site(today_plan(p), "Wels", verdict=SiteVerdict.OPEN)),
-        r"today: site Wels is proposed, so it is not open today",
-    ),
-    (
-        "an offered supplier signed",
-        lambda p: with_today(p, plan=with_supplier(today_plan(p), "Orchard", verdict=SupplierVerdict.SIGN)),
-        r"today: supplier Orchard is offered today, .* verdict sign",
-    ),
-    (
-        "a today of its own",
-        lambda p: with_today(p, plan=replace(today_plan(p), today=p.today)),
-        r"today: the plan of today has a today of its own",
-    ),
-    (
-        "absent",
-        lambda p: with_today(p, outcome=TodayOutcome.ABSENT, plan=None),
-        r"stated as absent, .* there is a today",
-    ),
-    ("served without a plan", lambda p: with_today(p, plan=None), r"today is served without a plan"),
-    ("short with a plan", lambda p: with_today(p, outcome=TodayOutcome.SHORT), r"today is short with a plan"),
-    (
-        "short of nothing",
-        lambda p: with_today(p, outcome=TodayOutcome.SHORT, plan=None),
-        r"today is short without unserved demand",
-    ),
-    (
-        "short of more than the need",
-        lambda p: with_today(
-            p, outcome=TodayOutcome.SHORT, plan=None, unserved=(Unserved(customer="Zlin", good="trees", amount=31.0),)
-        ),
-        r"today: 31 t of trees unserved at customer Zlin, who needs 30",
-    ),
-]
-
-
-@pytest.mark.parametrize(("tamper", "message"), [pytest.param(*case[1:], id=case[0]) for case in TODAYS])
-def test_tampering_with_today_is_caught(tamper: Tamper, message: str) -> None:
-    """The saving is measured from a plan of today that is audited as well."""
-    assert re.search(message, objections(tamper(hand.plan_of())))
-
-
-def test_today_is_absent_where_nothing_runs() -> None:
-    """Without running sites, or without signed suppliers, a stated today is a fault and an absent one none."""
-    study = Study(
-        settings=hand.settings_for("Nothing runs"),
-        sites=(SiteRow(site="A"),),
-        customers=(CustomerRow(customer="B", demand=1.0),),
-        lanes=lane_table([LaneRow(leg=hand.OUT, origin="A", destination="B", unit_cost=1.0)]),
-    )
-    case = hand.worked(study, {("A", "")}, set(), {(hand.OUT, "A", "B", "goods"): 1.0})
-    absent = Today(outcome=TodayOutcome.ABSENT, reason="No site is running.", plan=None)
-    plan = hand.draw(study, case, today=absent)
-    assert audit(study, plan).passed
-    short = Today(
-        outcome=TodayOutcome.SHORT,
-        reason="Short.",
-        plan=None,
-        unserved=(Unserved(customer="B", good="goods", amount=1.0),),
-    )
-    assert "the standings say that there is no today" in objections(replace(plan, today=short), study)
-
-
-def test_a_million_lanes_are_looked_up_at_once() -> None:
-    """A row that names the good is found among a million, one that names none else, and none where none is."""
-    sites, customers = 1000, 1000
-    names = (*(f"s{i}" for i in range(sites)), *(f"c{j}" for j in range(customers)), "goods")
-    origin = np.repeat(np.arange(sites, dtype=np.int32), customers)
-    destination = np.tile(np.arange(sites, sites + customers, dtype=np.int32), sites)
-    rows = origin.shape[0]
-    lanes = LaneTable(
-        names=names,
-        origin=origin,
-        destination=destination,
-        good=np.where(destination % 2 == 0, len(names) - 1, -1).astype(np.int32),
-        leg=np.full(rows, LaneTable.LEGS.index(Leg.OUTBOUND), dtype=np.int32),
-        road_km=np.full(rows, np.nan),
-        unit_cost=np.arange(rows, dtype=np.float64),
-        barred=np.zeros(rows, dtype=np.bool_),
-        row=np.arange(rows, dtype=np.int32),
-    )
-    study = Study(
-        settings=hand.settings_for("Many lanes"),
-        sites=tuple(SiteRow(site=f"s{i}", latitude=47.0, longitude=15.0) for i in range(sites)),
-        customers=tuple(CustomerRow(customer=f"c{j}", demand=1.0) for j in range(customers)),
-        lanes=lanes,
-    )
-    moved = {(hand.OUT, f"s{j % 7}", f"c{j}", "goods"): 1.0 for j in range(customers)}
-    plan = hand.draw(study, hand.worked(study, {(f"s{i}", "") for i in range(7)}, set(), moved))
-    absent = Today(outcome=TodayOutcome.ABSENT, reason="No site is running.", plan=None)
-    assert audit(study, replace(plan, today=absent)).faults == ()
-    assert plan.cost == pytest.approx(sum((j % 7) * customers + j for j in range(customers)))
