@@ -14,6 +14,7 @@ from siting.solving.requirements import Requirement, lifted
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from siting.arrays import Floats
     from siting.network.network import Network
     from siting.solving.conflicts import Conflict
     from siting.solving.elastic import Repair
@@ -118,10 +119,12 @@ class Words:
         for place, _ in repair.parts:
             customer = self._network.customers.index(place[0])
             alone = alone and customer not in reached
-            km = np.concatenate([lanes.km[lanes.destination == customer] for lanes in (far.outbound, far.direct)])
+            km = _km_to(customer, far)
+            if not km.size:  # what is nearest is barred as well
+                km = _km_to(customer, build_network(lifted(self._study, {Requirement.REACH, Requirement.BARS})))
             reach = self._study.customers[customer].reach_km or 0.0
             listed.append(f"{place[0]} (reach {shown(reach)} km, nearest {shown(float(np.nanmin(km)))} km)")
-        origin = "supplier" if not len(far.outbound) else "site or supplier" if len(far.direct) else "site"
+        origin = "supplier" if not self._study.sites else "site or supplier" if len(far.direct) else "site"
         who = _these(repair, "customer")
         if alone:
             have = "has" if len(repair.parts) == 1 else "have"
@@ -206,6 +209,12 @@ class Words:
                 said.append(f"{which} cannot be met together with the other requirements.")
         out = _rows([self._study.rules[int(place[0])] for place, _ in repair.parts])
         return " ".join([*said, f"Enough: take out {out[0].lower()}{out[1:]}."]), "rules"
+
+
+def _km_to(customer: int, network: Network) -> Floats:
+    """Return the road km of every lane to a customer."""
+    legs = (network.outbound, network.direct)
+    return np.concatenate([lanes.km[lanes.destination == customer] for lanes in legs])
 
 
 def _rows(rules: Sequence[RuleRow]) -> str:
