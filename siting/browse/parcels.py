@@ -33,8 +33,7 @@ def plan_zip(kept: Kept) -> bytes:
     """Return the PLAN folder, map included, as one zip file."""
     with tempfile.TemporaryDirectory(prefix="siting-share-") as scratch:
         folder = Path(scratch) / "plan"
-        write_plan_folder(folder, kept.study, kept.answer, _report(kept))
-        (folder / "map.html").write_bytes(map_file(kept))
+        write_plan_folder(folder, kept.study, kept.answer, _report(kept), more={"map.html": kept.map_html})
         buffer = io.BytesIO()
         with zipfile.ZipFile(buffer, "w", zipfile.ZIP_DEFLATED) as parcel:
             for path in sorted(folder.rglob("*")):
