@@ -86,7 +86,7 @@ LARGEST_DOT_PX, SMALLEST_DOT_PX = 9.0, 2.2
 LEG_LINES: Mapping[str, tuple[str, str]] = {
     "outbound": (SLATE, ""),
     "inbound": (OCHRE, "9 6"),
-    "direct": (SLATE, "12 4 3 4"),
+    "direct": (SLATE, "7 4 2 4"),
 }
 """Colour and dashes (empty = solid) of each leg."""
 

@@ -116,14 +116,14 @@ def dots_json(where: Located, loads: Iterable[float]) -> Json:
     return {
         "largest": looks.LARGEST_DOT_PX,
         "smallest": looks.SMALLEST_DOT_PX,
-        **_scale(where, max(loads, default=0.0), 0.1),
+        **_scale(where, max(loads, default=0.0), (1.0, 0.1)),
     }
 
 
-def _scale(where: Located, most: float, second: float) -> Json:
-    """Return the largest load and round samples of it and of a part of it, each with its text."""
-    values = list(dict.fromkeys(value for value in (_round_down(most), _round_down(most * second)) if value > 0))
-    samples = [[value, map_facts.load_text(where.study, where.formats, value)] for value in values]
+def _scale(where: Located, most: float, parts: Sequence[float]) -> Json:
+    """Return the largest load and round samples of parts of it, each with its text."""
+    values = [_round_down(most * part) for part in parts if most > 0]
+    samples = [[value, where.formats.amount(value)] for value in values]
     return {"most": most, "samples": samples}
 
 
@@ -161,6 +161,7 @@ def frame_json(where: Located, *, kind: str, headline: str, fingerprint: str, no
         "cautions": list(CAUTIONS),
         "attribution": ATTRIBUTION,
         "goods": [name_shown(good.good) for good in study.all_goods],
+        "amounts_text": f"Amounts here: {map_facts.load_unit(study)} a year.",
         "base": base_json(where),
         "shades": list(looks.BAND_SHADES),
         "colours": {"paper": looks.PAPER, "slate": looks.SLATE, "shut": looks.SHUT, "ink": looks.INK},
@@ -230,8 +231,8 @@ def _leg_scale(where: Located, lanes: Sequence[Json], leg: str) -> Json:
     loads = [sum(lane["load"]) for lane in lanes if lane["leg"] == leg]  # type: ignore[arg-type]
     most = max(loads, default=0.0)
     hair = most * looks.HAIR_LINE_PX / looks.WIDEST_LINE_PX
-    text = f"up to {map_facts.load_text(where.study, where.formats, hair)}" if hair else ""
-    return {**_scale(where, most, 0.25), "hair_text": text}
+    text = f"up to {where.formats.amount(hair)}" if hair else ""
+    return {**_scale(where, most, (1.0,)), "hair_text": text}
 
 
 def _sites(where: Located, plan: Plan) -> list[Json]:

@@ -54,7 +54,7 @@ siting.drawBase = function (map) {
 siting.load = (loads) => (siting.state.good < 0 ? loads.reduce((sum, load) => sum + load, 0) : loads[siting.state.good]);
 siting.width = (leg, load) => Math.max(leg.hair, (load / leg.most) * leg.widest);
 // Dashes grow with the line, so that a wide one still reads as dashed and not as a ladder.
-siting.dashes = (leg, width) => (leg.dashes ? leg.dashes.split(" ").map((dash) => Math.max(1, width / 3) * dash).join(" ") : null);
+siting.dashes = (leg, width) => (leg.dashes ? leg.dashes.split(" ").map((dash) => Math.max(1, width / 4) * dash).join(" ") : null);
 siting.radius = (load) => Math.max(siting.data.dots.smallest, Math.sqrt(load / siting.data.dots.most) * siting.data.dots.largest);
 
 siting.ends = { outbound: ["sites", "customers"], inbound: ["suppliers", "sites"], direct: ["suppliers", "customers"] };
@@ -162,6 +162,15 @@ siting.order = function () {
     if (siting.map.hasLayer(siting.groups[key])) siting.groups[key].eachLayer((layer) => layer.bringToFront());
 };
 
+// Paper takes lines, the screen dots: the same items, drawn as SVG while printing.
+siting.drawWith = function (renderer) {
+  for (const key of ["inbound", "direct", "outbound", "customers"]) siting.groups[key].clearLayers();
+  for (const item of [...siting.data.lanes, ...siting.data.customers]) if (item.drawn) item.drawn.options.renderer = renderer;
+  siting.canvas.remove(); // printed empty it would hide the outlines below it; the one in use adds itself again
+  siting.print.remove();
+  siting.restyle();
+};
+
 siting.select = function (kind, index) {
   const now = siting.state.selected;
   siting.state.selected = now && now.kind === kind && now.index === index ? null : { kind, index };
@@ -236,6 +245,7 @@ siting.start = function (map) {
   }
   map.invalidateSize({ animate: false, pan: false }); // the panels have taken their room
   siting.canvas = L.canvas({ padding: 0.3, tolerance: 3 });
+  siting.print = L.svg({ padding: 0.1 });
   L.control.zoom({ position: "topleft", zoomInTitle: "Closer", zoomOutTitle: "Farther" }).addTo(map);
   L.control.scale({ imperial: false, position: "bottomleft", maxWidth: 120 }).addTo(map);
   siting.hold();

@@ -101,17 +101,18 @@ siting.legend = function () {
   if (data.goods.length > 1 && data.base) siting.goodsChoice(root);
   for (const [kind, word, text] of [["sites", "site", "Sites"], ["suppliers", "supplier", "Suppliers"]]) {
     if (!data[kind].length) continue;
-    const list = siting.legendPart(root, kind, text);
+    const list = siting.legendPart(root, kind, text, kind === "sites" && data.kind === "plan" ? "level: utilisation" : "");
     for (const symbol of data[`${word}_symbols`])
       if (data[kind].some((thing) => thing.key === symbol.key)) siting.entry(list, siting.symbol(symbol, symbol.fill ? 0.6 : null, true), symbol.key, symbol.meaning);
     if (kind === "sites" && data.kind === "plan") {
-      const told = data.sites.some((site) => site.active && site.level === null) ? "filled up to its utilisation; a dot where capacity is unlimited" : "filled up to its utilisation";
-      list.append(siting.element("li", "told", told));
+      const told = data.sites.some((site) => site.active && site.level === null) && "a dot where capacity is unlimited";
+      if (told) list.append(siting.element("li", "told", told));
     }
   }
   siting.customerLegend(root);
   const words = { outbound: ["Outbound", "site to customer"], inbound: ["Inbound", "supplier to site"], direct: ["Direct", "supplier to customer"] };
   for (const leg of data.legs) if (leg.most > 0) siting.legLegend(root, leg, words[leg.leg]);
+  root.append(siting.element("p", "told", data.amounts_text));
 };
 
 siting.customerLegend = function (root) {
@@ -179,8 +180,8 @@ siting.foot = function () {
   const data = siting.data, notes = document.getElementById("notes"), sources = document.getElementById("sources");
   for (const text of [...data.notes, ...data.cautions]) notes.append(siting.element("span", "", `${text} `));
   const parts = [data.attribution, "Leaflet"];
-  if (data.fingerprint) parts.unshift(`Study ${data.fingerprint}`);
-  sources.textContent = parts.join("  \u00b7  ");
+  sources.textContent = parts.join(" \u00b7 ");
+  if (data.fingerprint) sources.prepend(siting.element("span", "study", `Study ${data.fingerprint}`));
 };
 
 // Tables are built when they are opened: a thousand rows need not wait for nobody.
@@ -248,6 +249,7 @@ siting.keys = function () {
 // One page: the sheet takes the size of the paper, and the list shrinks until all of it is there.
 siting.forPrint = function (printing) {
   document.body.classList.toggle("printing", printing);
+  siting.drawWith(printing ? siting.print : siting.canvas);
   siting.map.invalidateSize({ animate: false, pan: false });
   siting.hold();
   for (const id of ["verdicts", "legend"]) {
