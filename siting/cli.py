@@ -32,7 +32,8 @@ class _ShowVersion(argparse.Action):
         """Print the version and end."""
         from importlib.metadata import version  # noqa: PLC0415  (only here is it worth its time)
 
-        parser.exit(message=f"siting {version('siting')}\n")
+        sys.stdout.write(f"siting {version('siting')}\n")
+        parser.exit()
 
 
 def make_parser() -> argparse.ArgumentParser:
