@@ -52,23 +52,16 @@ siting.drawBase = function (map) {
 };
 
 siting.load = (loads) => (siting.state.good < 0 ? loads.reduce((sum, load) => sum + load, 0) : loads[siting.state.good]);
-siting.width = (leg, load) => Math.max(leg.hair, (load / leg.most) * leg.widest);
+siting.width = (leg, load) => siting.scale * Math.max(leg.hair, (load / leg.most) * leg.widest);
 // Dashes grow with the line, so that a wide one still reads as dashed and not as a ladder.
 siting.dashes = (leg, width) => (leg.dashes ? leg.dashes.split(" ").map((dash) => Math.max(1, width / 4) * dash).join(" ") : null);
-siting.radius = (load) => Math.max(siting.data.dots.smallest, Math.sqrt(load / siting.data.dots.most) * siting.data.dots.largest);
+siting.radius = (load) => siting.scale * Math.max(siting.data.dots.smallest, Math.sqrt(load / siting.data.dots.most) * siting.data.dots.largest);
 
 siting.ends = { outbound: ["sites", "customers"], inbound: ["suppliers", "sites"], direct: ["suppliers", "customers"] };
 
 siting.touches = function (lane, selected) {
   const [start, end] = siting.ends[lane.leg];
   return (start === selected.kind && lane.from === selected.index) || (end === selected.kind && lane.to === selected.index);
-};
-
-// Whether the thing belongs to what is singled out; everything does while nothing is.
-siting.related = function (kind, index) {
-  const selected = siting.state.selected;
-  if (!selected || (selected.kind === kind && selected.index === index)) return true;
-  return siting.data.lanes.some((lane) => siting.touches(lane, selected) && siting.touches(lane, { kind, index }));
 };
 
 siting.bindCard = function (layer, title, heads, facts, sticky) {
@@ -107,7 +100,7 @@ siting.makeMarkers = function (kind, word) {
   const data = siting.data, group = siting.groups[kind];
   data[kind].forEach((thing, index) => {
     if (!thing.spot) return;
-    const size = thing.symbol.size_px;
+    const size = thing.symbol.size_px * siting.scale;
     const html = siting.symbol(thing.symbol, thing.level === undefined ? null : thing.level, thing.active);
     const icon = L.divIcon({ html, className: `symbol ${kind}`, iconSize: [size, size], iconAnchor: [size / 2, size / 2] });
     thing.drawn = L.marker(thing.spot, { icon, riseOnHover: true, zIndexOffset: thing.active ? 1000 : 0 });
@@ -200,7 +193,7 @@ siting.wantedLabels = function () {
     if (!map.hasLayer(groups[kind])) return;
     for (const thing of data[kind])
       if (thing.spot && thing.active === active)
-        wanted.push({ lat: thing.spot[0], lon: thing.spot[1], half: thing.symbol.size_px / 2, text: thing.label, extra: thing.level_text, style: active && kind === "sites" ? strong : plain });
+        wanted.push({ lat: thing.spot[0], lon: thing.spot[1], half: (siting.scale * thing.symbol.size_px) / 2, text: thing.label, extra: thing.level_text, style: active && kind === "sites" ? strong : plain });
   };
   add("sites", true);
   add("suppliers", true);
@@ -215,7 +208,7 @@ siting.obstacles = function () {
   const spot = (thing) => ({ lat: thing.spot[0], lon: thing.spot[1] });
   for (const kind of ["sites", "suppliers"])
     if (map.hasLayer(groups[kind]))
-      for (const thing of data[kind]) if (thing.spot) found.symbols.push({ ...spot(thing), half: thing.symbol.size_px / 2 + 1 });
+      for (const thing of data[kind]) if (thing.spot) found.symbols.push({ ...spot(thing), half: (siting.scale * thing.symbol.size_px) / 2 + 1 });
   if (map.hasLayer(groups.customers))
     for (const customer of data.customers)
       if (customer.drawn && siting.load(customer.load) > 0) found.dots.push({ ...spot(customer), half: siting.radius(siting.load(customer.load)) * 0.85 });

@@ -21,8 +21,12 @@ siting.svg = function (tag, attributes, parent) {
   return made;
 };
 
-siting.canvasSvg = function (width, height) {
-  return siting.svg("svg", { width, height, viewBox: `0 0 ${width} ${height}`, "aria-hidden": "true", focusable: "false" });
+// On a large screen text grows (map.css); symbols, dots and lines grow with it.
+siting.scale = Math.max(1, parseFloat(getComputedStyle(document.documentElement).fontSize) / 14.4);
+
+siting.canvasSvg = function (width, height, scale = 1) {
+  const size = { width: width * scale, height: height * scale, viewBox: `0 0 ${width} ${height}` };
+  return siting.svg("svg", { ...size, "aria-hidden": "true", focusable: "false", overflow: "visible" });
 };
 
 // A rounded square that fills from the bottom with `level` (null = no capacity to fill: a dot).
@@ -56,8 +60,7 @@ siting.triangle = function (symbol, root) {
 };
 
 siting.symbol = function (symbol, level, active) {
-  const s = symbol.size_px, root = siting.canvasSvg(s, s);
-  root.style.overflow = "visible";
+  const s = symbol.size_px, root = siting.canvasSvg(s, s, siting.scale);
   if (symbol.shape === "square") siting.square(symbol, level, active, root);
   else siting.triangle(symbol, root);
   if (symbol.barred) {
