@@ -28,8 +28,7 @@ def check_amounts(draft: Draft) -> None:
     """Note every fault among the amounts of a study."""
     _check_standing(draft)
     _check_yearly(draft)
-    for table in (draft.suppliers, draft.offers):
-        _check_prices(table, draft)
+    _check_prices(draft.offers if draft.offers.there else draft.suppliers, draft)
     for table_name, least in _LEAST_OF.items():
         _check_least(draft.tables[table_name], least, draft)
     _check_unlimited(draft)
@@ -53,7 +52,7 @@ def _check_yearly(draft: Draft) -> None:
     if "yearly_charge" not in sites.texts:
         return
     for index, site in enumerate(sites.rows):
-        is_blank = not sites.typed(index, "yearly_charge").strip()
+        is_blank = not sites.typed(index, "yearly_charge")
         proposed = site.standing is SiteStanding.PROPOSED and not draft.gathering.hurt("sites", site.row, "standing")
         if is_blank and proposed and site.site not in draft.size_count:
             wrong = "blank at a proposed site, which would look free to run"
@@ -61,7 +60,7 @@ def _check_yearly(draft: Draft) -> None:
 
 
 def _check_prices(table: Parsed[Any], draft: Draft) -> None:
-    blank = [row for index, row in enumerate(table.rows) if not table.typed(index, "unit_price").strip()]
+    blank = [row for index, row in enumerate(table.rows) if not table.typed(index, "unit_price")]
     if len(blank) == len(table.rows):
         return
     for row in blank:

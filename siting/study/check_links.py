@@ -102,7 +102,7 @@ def _check_demand_place(draft: Draft) -> None:
             gathering.fault("customers", None, "demand", "", wrong, "Add the column, or the table demands")
         return
     for index, row in enumerate(customers.rows):
-        if row.demand is None and not customers.typed(index, "demand").strip():
+        if not customers.typed(index, "demand"):
             wrong = "blank, and there is no table demands"
             gathering.fault("customers", row.row, "demand", "", wrong, "Write a number, 0 if that is meant")
     if len(draft.goods.rows) > 1:

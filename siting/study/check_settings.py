@@ -106,10 +106,10 @@ def _checked(
     for name, value in given.items():
         column = known.get(name)
         if column is None:
-            elsewhere = [
-                f"[solve] {c.name}" if not prefix else c.name for c in (SETTINGS if prefix else SOLVE_SETTINGS)
-            ]
-            repair = did_you_mean(name, [*known, *elsewhere], "Delete it")
+            elsewhere = {other.name for other in (SETTINGS if prefix else SOLVE_SETTINGS)}
+            repair = "Write it before the line [solve]" if prefix else "Write it below the line [solve]"
+            if name not in elsewhere:
+                repair = did_you_mean(name, known, "Delete it")
             gathering.fault(place, None, f"{prefix}{name}", _shown(value), "unknown setting", repair)
             continue
         checked = _value(column, value)

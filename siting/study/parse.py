@@ -101,7 +101,7 @@ def parse_choice(column: Column, text: str) -> str | Refusal:
     near = nearest(text, column.choices)
     listed = ", ".join(column.choices)
     repair = f"Write {near!r} if that is meant; allowed are {listed}" if near else f"Write one of {listed}"
-    return Refusal(f"not a {column.name}", repair)
+    return Refusal(f"not {'an' if column.name[0] in 'aeiou' else 'a'} {column.name}", repair)
 
 
 def parse_yes_no(text: str) -> bool | Refusal:

@@ -59,6 +59,7 @@ class _Found:
     faults: list[Fault] = field(default_factory=list)
     names: list[str] = field(default_factory=list)
     """Names of all sheets."""
+    unreadable: set[str] = field(default_factory=set)
 
 
 def read_workbook(path: Path) -> tuple[RawStudy, tuple[str, ...]]:
@@ -92,14 +93,13 @@ def read_workbook(path: Path) -> tuple[RawStudy, tuple[str, ...]]:
     if SETTINGS_SHEET not in found.names:
         wrong, repair = "the sheet is missing", "Add it, with the columns setting and value, and currency and unit"
         found.faults.append(Fault(table=SETTINGS_SHEET, wrong=wrong, repair=repair))
-    unreadable = {SETTINGS_SHEET} - set(found.names)
-    unreadable |= {name for name in found.names if name in TABLES and name not in found.tables}
+        found.unreadable.add(SETTINGS_SHEET)
     raw = RawStudy(
         tables=found.tables,
         settings=found.settings,
         settings_name=SETTINGS_SHEET,
         faults=tuple(found.faults),
-        unreadable=frozenset(unreadable),
+        unreadable=frozenset(found.unreadable),
     )
     return raw, tuple(name for name in found.names if name not in TABLES and name != SETTINGS_SHEET)
 
@@ -188,11 +188,9 @@ def _read_table(sheet: Any, found: _Found) -> None:  # noqa: ANN401  (as above)
     errors: list[tuple[int, int, str]] = []
     table = reader.read(_noting_errors(_rows(sheet), errors))
     if table is None:
-        found.faults.append(
-            Fault(
-                table=name, wrong="the sheet is empty", repair="Write the column names in its first row, or delete it"
-            )
-        )
+        repair = "Write the column names in its first row, or delete it"
+        found.faults.append(Fault(table=name, wrong="the sheet is empty", repair=repair))
+        found.unreadable.add(name)
         return
     found.tables[name] = table
     found.faults += reader.faults
@@ -248,7 +246,7 @@ def _read_settings(sheet: Any, found: _Found) -> None:  # noqa: ANN401  (as abov
     if "setting" not in header or "value" not in header:
         wrong = "the sheet does not have the columns setting and value"
         found.faults.append(Fault(table=SETTINGS_SHEET, wrong=wrong, repair="Write setting and value in its first row"))
-        found.names.remove(SETTINGS_SHEET)
+        found.unreadable.add(SETTINGS_SHEET)
         return
     name_at, value_at = header.index("setting"), header.index("value")
     cells: dict[str, object] = {}

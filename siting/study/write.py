@@ -84,18 +84,21 @@ def write_workbook(study: Study, path: Path | str) -> None:
     StudyError
         If a table has more rows than a sheet can hold.
     """
+    counts = {name: len(getattr(study, name)) for name in TABLES}
+    repair = "Write the study as a folder of CSV tables"
+    faults = [
+        Fault(table=name, wrong=f"{count} rows are more than a sheet can hold ({SHEET_ROWS - 1})", repair=repair)
+        for name, count in counts.items()
+        if count >= SHEET_ROWS
+    ]
+    if faults:
+        raise StudyError(faults)
     book = Workbook(write_only=True)
     sheet = book.create_sheet("study")
     sheet.append(["setting", "value"])
     for name, value in settings_to_write(study).items():
         sheet.append([name, _in_sheet(sheet, ("yes" if value else "no") if isinstance(value, bool) else value)])
-    for name in TABLES:
-        count = len(getattr(study, name))
-        if not count:
-            continue
-        if count >= SHEET_ROWS:
-            wrong = f"{count} rows are more than a sheet can hold ({SHEET_ROWS - 1})"
-            raise StudyError([Fault(table=name, wrong=wrong, repair="Write the study as a folder of CSV tables")])
+    for name in (name for name, count in counts.items() if count):
         header = header_to_write(study, name)
         sheet = book.create_sheet(name)
         sheet.append([safe_cell(column) for column in header])
@@ -139,12 +142,11 @@ def header_to_write(study: Study, table: str) -> tuple[str, ...]:
     """
     spec = TABLES[table]
     read = tuple(name for name in study.columns.get(table, ()) if name)
-    if not read:
-        read = tuple(column.name for column in spec.columns if column.required or not column.blank)
     filled = _filled_lanes(study.lanes) if table == "lanes" else _filled(spec, getattr(study, table))
-    known = (*spec.names, *filled)
-    kept = [name for name in read if name in spec.names or name in filled or study.columns.get(table)]
-    return tuple(dict.fromkeys([*kept, *(name for name in known if name in filled)]))
+    if not read:
+        filled |= {column.name for column in spec.columns if column.required or not column.blank}
+    known = (*spec.names, *sorted(filled))
+    return tuple(dict.fromkeys([*read, *(name for name in known if name in filled)]))
 
 
 def rows_to_write(study: Study, table: str, header: tuple[str, ...]) -> Iterator[list[Cell]]:
