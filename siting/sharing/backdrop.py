@@ -179,7 +179,8 @@ def _clipped(shapes: Any, box: Box) -> list[Any]:  # noqa: ANN401 - arrays of ge
         bounds = shapely.bounds(shapes)
         near = (bounds[:, 0] < east) & (bounds[:, 2] > west) & (bounds[:, 1] < box.north) & (bounds[:, 3] > box.south)
         cut = shapely.get_parts(shapely.clip_by_rect(shapes[near], west, box.south, east, box.north))
-        moved = shapely.transform(cut, lambda corners, turn=turn: corners + (turn, 0.0)) if turn else cut
+        step = np.array([turn, 0.0])
+        moved = shapely.transform(cut, lambda corners, step=step: corners + step) if turn else cut
         parts += [part for part in moved if not part.is_empty]
     return parts
 

@@ -102,11 +102,16 @@ def _worth_seeing(history: Sequence[Progress]) -> list[float]:
 
 
 def cost_chart(plan: Plan) -> alt.Chart:
-    """Draw the cost lines of a plan and, where today can serve everything, of today beside it."""
+    """
+    Draw the cost lines of a plan and, where today can serve everything, of today beside it.
+
+    Goods bought are left out: they would dwarf every other line.
+    """
     rows = [
         {"line": LINE_NAMES[line], "whose": whose, "money": money}
         for whose, lines in _whose(plan)
         for line, money in lines.items()
+        if line is not CostLine.GOODS
     ]
     frame = pd.DataFrame(rows)
     shown = {row["line"] for row in rows if row["money"]}

@@ -221,10 +221,7 @@ class Formats:
     def number(self, value: float) -> str:
         """Return the number: whole from 100 up, else three digits; never 0 by rounding."""
         size = abs(value)
-        if size >= WHOLE_FROM or size == 0:
-            decimals = 0
-        else:
-            decimals = max(0, 2 - math.floor(math.log10(size)))
+        decimals = 0 if size >= WHOLE_FROM or size == 0 else max(0, 2 - math.floor(math.log10(size)))
         return str(_pattern(min(decimals, 12)).apply(value, self.locale))
 
     def money(self, value: float) -> str:

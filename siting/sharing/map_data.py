@@ -11,25 +11,25 @@ import math
 import re
 from bisect import bisect_left
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from siting.plan.plan import SiteVerdict, SupplierVerdict
 from siting.plan.service import BAND_EDGES_KM
+from siting.plan.words import CAUTIONS
 from siting.sharing import looks, map_facts
 from siting.sharing.backdrop import ATTRIBUTION, backdrop, box_around
-from siting.plan.words import CAUTIONS
 from siting.sharing.map_facts import name_shown
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Mapping, Sequence
-    from enum import StrEnum
 
     from siting.plan.plan import Flow, Plan
     from siting.sharing.backdrop import Box
     from siting.sharing.looks import Formats, Symbol
     from siting.study.tables import CustomerRow, SiteRow, Study, SupplierRow
 
-Json = dict[str, object]
+Json = dict[str, Any]
+"""Values for `json.dumps`."""
 
 LEGS = ("outbound", "inbound", "direct")
 OPEN_VERDICTS = frozenset({SiteVerdict.KEEP, SiteVerdict.OPEN})
@@ -70,7 +70,8 @@ def base_json(where: Located) -> Json | None:
     if where.box is None:
         return None
     behind, box = backdrop(where.box), where.box
-    symbols = [spot for row in (*where.study.sites, *where.study.suppliers) if (spot := where.spot(row))]
+    rows: list[SiteRow | SupplierRow] = [*where.study.sites, *where.study.suppliers]
+    symbols = [spot for row in rows if (spot := where.spot(row))]
     towns = [
         [place.name, place.latitude, place.longitude]
         for place in behind.places
@@ -95,10 +96,12 @@ def _near(latitude: float, longitude: float, latitude_b: float, longitude_b: flo
 def missing_notes(where: Located) -> list[str]:
     """Return a note on the rows that have no coordinates and so are not drawn; none where all have."""
     study = where.study
-    counts = [
-        (len([row for row in rows if where.spot(row) is None]), singular)
-        for rows, singular in ((study.sites, "site"), (study.suppliers, "supplier"), (study.customers, "customer"))
+    tables: list[tuple[Sequence[SiteRow | SupplierRow | CustomerRow], str]] = [
+        (study.sites, "site"),
+        (study.suppliers, "supplier"),
+        (study.customers, "customer"),
     ]
+    counts = [(sum(where.spot(row) is None for row in rows), word) for rows, word in tables]
     parts = [f"{count} {word if count == 1 else word + 's'}" for count, word in counts if count]
     if not parts:
         return []
@@ -106,9 +109,9 @@ def missing_notes(where: Located) -> list[str]:
     return [f"{', '.join(parts)} {verb} no coordinates and so no place on the map; the tables below list all."]
 
 
-def symbols_json(symbols: Mapping[StrEnum, Symbol]) -> list[Json]:
+def symbols_json(symbols: Iterable[tuple[str, Symbol]]) -> list[Json]:
     """Return the symbols in the order of the legend."""
-    return [{"key": key.value, **symbol.as_json()} for key, symbol in symbols.items()]
+    return [{"key": str(key), **symbol.as_json()} for key, symbol in symbols]
 
 
 def dots_json(where: Located, loads: Iterable[float]) -> Json:
@@ -169,7 +172,7 @@ def frame_json(where: Located, *, kind: str, headline: str, fingerprint: str, no
 
 
 def shortened_headline(headline: str) -> str:
-    """Return the headline at a length that leaves room for the map, numbers kept with the word before and unit after."""
+    """Return the headline at a length that leaves room for the map, numbers beside the words they belong to."""
     bound = re.sub(r"(?<=[\w(]) (?=\d)|(?<=\d) (?=[A-Z%])|(?<= M) (?=[A-Z]{3}\b)", looks.NO_BREAK, headline)
     return looks.shortened(bound, 400)
 
@@ -210,8 +213,8 @@ def plan_json(study: Study, plan: Plan, *, headline: str, locale: str = "en") ->
         "supplier_heads": map_facts.SUPPLIER_HEADS,
         "customer_heads": map_facts.CUSTOMER_HEADS,
         "lane_heads": map_facts.LANE_HEADS,
-        "site_symbols": symbols_json(dict(looks.SITE_SYMBOLS)),
-        "supplier_symbols": symbols_json(dict(looks.SUPPLIER_SYMBOLS)),
+        "site_symbols": symbols_json(looks.SITE_SYMBOLS.items()),
+        "supplier_symbols": symbols_json(looks.SUPPLIER_SYMBOLS.items()),
         "sites": _sites(where, plan),
         "suppliers": _suppliers(where, plan),
         "customers": _customers(where, plan, demand),
@@ -228,7 +231,7 @@ def plan_json(study: Study, plan: Plan, *, headline: str, locale: str = "en") ->
 
 
 def _leg_scale(where: Located, lanes: Sequence[Json], leg: str) -> Json:
-    loads = [sum(lane["load"]) for lane in lanes if lane["leg"] == leg]  # type: ignore[arg-type]
+    loads = [sum(lane["load"]) for lane in lanes if lane["leg"] == leg]
     most = max(loads, default=0.0)
     hair = most * looks.HAIR_LINE_PX / looks.WIDEST_LINE_PX
     text = f"up to {where.formats.amount(hair)}" if hair else ""
@@ -356,7 +359,7 @@ def _lanes(where: Located, plan: Plan) -> list[Json]:
                 "facts": map_facts.lane_facts(study, where.formats, flows),
             }
         )
-    entries.sort(key=lambda entry: -sum(entry["load"]))  # type: ignore[arg-type, call-overload]
+    entries.sort(key=lambda entry: -sum(entry["load"]))
     return entries
 
 
@@ -365,12 +368,12 @@ def _bands(where: Located, plan: Plan) -> list[Json]:
     shares = {band_of(band.above_km + 1e-9): band for band in plan.service.bands}
     uppers = (*BAND_EDGES_KM[1:], None)
     bands: list[Json] = []
+    number, distance = where.formats.number, where.formats.distance
     for i, (lower, upper) in enumerate(zip(BAND_EDGES_KM, uppers, strict=True)):
         band = shares.get(i)
         if band is not None and band.load == 0:
             continue
-        low, number = where.formats.number(lower), where.formats.number
-        text = f"over {where.formats.distance(lower)}" if upper is None else f"{low} to {number(upper)}\N{NO-BREAK SPACE}km"
+        text = f"over {distance(lower)}" if upper is None else f"{number(lower)} to {distance(upper)}"
         share = "" if band is None else where.formats.share(band.share)
         bands.append({"band": i, "text": text, "share": share})
     return bands

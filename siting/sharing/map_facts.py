@@ -158,7 +158,7 @@ def distance_text(formats: Formats, flows: Sequence[Flow]) -> str:
     return f"{text}, {basis}"
 
 
-def customer_facts(
+def customer_facts(  # noqa: PLR0913 - a customer's cells come from its row, its line and its flows
     study: Study,
     formats: Formats,
     row: CustomerRow,
@@ -170,7 +170,9 @@ def customer_facts(
     """Return the cells of a customer in a plan, under `CUSTOMER_HEADS`; `served` holds its flows by origin."""
     several = len(served) > 1
     origins = [
-        f"{name_shown(origin)} ({goods_text(study, formats, _by_good(served[origin]))})" if several else name_shown(origin)
+        f"{name_shown(origin)} ({goods_text(study, formats, _by_good(served[origin]))})"
+        if several
+        else name_shown(origin)
         for origin in line.origins
         if origin in served
     ]

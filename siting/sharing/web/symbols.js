@@ -64,9 +64,9 @@ siting.symbol = function (symbol, level, active) {
   if (symbol.shape === "square") siting.square(symbol, level, active, root);
   else siting.triangle(symbol, root);
   if (symbol.barred) {
-    const y = symbol.shape === "square" ? s / 2 : s * 0.66;
-    siting.svg("line", { x1: -3, x2: s + 3, y1: y, y2: y, stroke: siting.data.colours.paper, "stroke-width": 5.4 }, root);
-    siting.svg("line", { x1: -3, x2: s + 3, y1: y, y2: y, stroke: symbol.outline, "stroke-width": 2.4, "stroke-linecap": "round" }, root);
+    const bar = (width, stroke) => siting.svg("line", { x1: 0.5, y1: s - 0.5, x2: s - 0.5, y2: 0.5, stroke, "stroke-width": width, "stroke-linecap": "round" }, root);
+    bar(5, siting.data.colours.paper);
+    bar(2.2, symbol.outline);
   }
   return root;
 };

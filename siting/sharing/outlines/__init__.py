@@ -1,0 +1,1 @@
+"""Outlines and place names of the whole world, and the script that derived them."""
