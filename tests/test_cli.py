@@ -186,6 +186,7 @@ def test_a_written_plan_is_audited_from_its_own_tables(
     out = tmp_path / "my plan"
     assert cli.main(["plan", str(tiny), "--quiet", "--out", str(out)]) == 0
     assert f"Written to {out}" in capsys.readouterr().out
+    assert (out / "map.html").read_text(encoding="utf-8").startswith("<!")
     shutil.rmtree(tiny)
     assert cli.main(["audit", str(out)]) == 0
     assert capsys.readouterr().out.startswith("Passed: ")
@@ -306,6 +307,19 @@ def optimum_by_cbc(path: Path) -> float:
     head = solution.read_text(encoding="utf-8").partition("\n")[0]
     assert head.startswith("Optimal")
     return float(head.rpartition(" ")[2])
+
+
+def test_a_folder_that_is_no_plan_is_refused_before_solving(
+    tiny: Path, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Nobody waits for a solve to hear that its plan cannot be written over their own files."""
+
+    def never(*_: object, **__: object) -> None:
+        pytest.fail("solved before the place was checked")
+
+    monkeypatch.setattr("siting.solving.solve.solve", never)
+    assert cli.main(["plan", str(tiny), "--out", str(tiny)]) == 2
+    assert "is not a PLAN folder, so it is not overwritten" in capsys.readouterr().err
 
 
 def test_a_place_that_cannot_be_written_is_bad_input(tiny: Path, capsys: pytest.CaptureFixture[str]) -> None:

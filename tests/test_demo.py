@@ -84,6 +84,16 @@ def test_the_word_demo_means_the_demo_study(tmp_path: Path, monkeypatch: pytest.
     assert study_path(DEMO) == Path(DEMO)
 
 
+def test_the_folder_of_a_plan_is_no_study(tmp_path: Path) -> None:
+    """Its tables of results have names of study tables too; the user is sent to the study inside."""
+    shutil.copytree(demo_folder(), tmp_path / "study")
+    (tmp_path / "plan.json").write_text("{}", encoding="utf-8")
+    with pytest.raises(
+        siting.StudyError, match=r"the folder of a plan, not of a study\. Give the study in it, .*study\."
+    ):
+        study_path(str(tmp_path))
+
+
 def test_the_demo_of_an_installed_package_comes_first(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """In a wheel the study lies inside the package; without either place the installation is damaged."""
     monkeypatch.setattr(demo, "__file__", str(tmp_path / "siting" / "study" / "demo.py"))

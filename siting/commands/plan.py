@@ -53,12 +53,14 @@ def run(arguments: argparse.Namespace) -> int:
     from siting.commands.progress import progress_on_stderr
     from siting.listener import Stop
     from siting.plan.audit import audit
-    from siting.plan.folder import write_plan_folder
+    from siting.plan.folder import check_place, write_plan_folder
     from siting.solving.solve import solve
     from siting.study.demo import study_path
     from siting.study.read import read_study
 
     study = read_study(study_path(arguments.study))
+    if arguments.out:
+        check_place(arguments.out)
     _write_model(arguments, study)
     settings = _solve_settings(arguments, study.settings.solve)
     listener = progress_on_stderr(wanted=not (arguments.json or arguments.quiet))
@@ -66,7 +68,7 @@ def run(arguments: argparse.Namespace) -> int:
     answer = run_stoppable(lambda: solve(study, settings, listener=listener, stop=stop), stop)
     report = audit(study, answer.plan) if answer.plan else None
     if arguments.out:
-        write_plan_folder(arguments.out, study, answer, report)
+        write_plan_folder(arguments.out, study, answer, report, more=_map(study, answer))
     _show(arguments, study, answer, report)
     if answer.plan:
         return FOUND
@@ -113,6 +115,17 @@ def _write_model(arguments: argparse.Namespace, study: Study) -> None:
     from siting.solving.export import write_models
 
     write_models(build_network(study), mps=arguments.mps, lp=arguments.lp)
+
+
+def _map(study: Study, answer: Answer) -> dict[str, str]:
+    """Return the map of the plan by its file name; nothing without a plan."""
+    from siting.plan.folder import MAP_FILE
+    from siting.plan.words import headline
+    from siting.sharing.map import draw_map
+
+    if answer.plan is None:
+        return {}
+    return {MAP_FILE: draw_map(study, answer.plan, headline=headline(answer)).html}
 
 
 def _show(arguments: argparse.Namespace, study: Study, answer: Answer, report: AuditReport | None) -> None:

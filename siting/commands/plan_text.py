@@ -137,7 +137,8 @@ def _distance(study: Study, service: Service) -> Iterator[str]:
         yield f"Customers are {service.average_km:,.0f} road km from what serves them, on average by load."
     if service.share_within is not None:
         asked = "" if settings.service_share is None else f", at least {percent(settings.service_share)} is asked"
-        yield f"{percent(service.share_within)} of the weight is delivered within {settings.service_km:g} road km{asked}."
+        within = f"within {settings.service_km:g} road km{asked}"
+        yield f"{percent(service.share_within)} of the weight is delivered {within}."
 
 
 def _proof(proof: Proof, currency: str) -> str:

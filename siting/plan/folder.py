@@ -22,7 +22,7 @@ from siting.study.read import read_study
 from siting.study.write import write_study
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Iterable, Mapping
 
     from siting.plan.audit import AuditReport
     from siting.plan.plan import Answer
@@ -68,7 +68,7 @@ def write_plan_folder(
         If the folder holds something that no plan writes, or cannot be written. The message names it.
     """
     folder = Path(folder).absolute()
-    _refuse_foreign(folder, {*OWN_NAMES, *more})
+    check_place(folder, more)
     try:
         folder.parent.mkdir(parents=True, exist_ok=True)
         with tempfile.TemporaryDirectory(prefix=f".{folder.name}-", dir=folder.parent) as beside:
@@ -83,8 +83,23 @@ def write_plan_folder(
         raise PlanFileError(msg) from error
 
 
-def _refuse_foreign(folder: Path, own: set[str]) -> None:
-    """Raise where replacing the folder would take something that no plan wrote."""
+def check_place(folder: Path, more: Iterable[str] = ()) -> None:
+    """
+    Refuse a place that `write_plan_folder` would refuse, so that nobody solves for an hour before they hear of it.
+
+    Parameters
+    ----------
+    folder
+        Where a plan is to be written.
+    more
+        Names of further files that are written with it.
+
+    Raises
+    ------
+    PlanFileError
+        If replacing the folder would take something that no plan wrote. The message names it.
+    """
+    folder = Path(folder).absolute()
     if folder.is_symlink() or (folder.exists() and not folder.is_dir()):
         msg = f"{folder} is there already and is not a folder. Choose another with --out."
         raise PlanFileError(msg)
@@ -96,7 +111,7 @@ def _refuse_foreign(folder: Path, own: set[str]) -> None:
             f"{folder} is there already and is not a PLAN folder, so it is not overwritten. Choose another with --out."
         )
         raise PlanFileError(msg)
-    if foreign := sorted(held - own):
+    if foreign := sorted(held - OWN_NAMES - set(more)):
         msg = f"{folder} holds {', '.join(foreign)}, which no plan wrote. Move that away, or choose another with --out."
         raise PlanFileError(msg)
 

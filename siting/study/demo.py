@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from pathlib import Path
 
+from siting.errors import Fault, StudyError
+
 DEMO = "demo"
 """What a user writes instead of a path to mean the demo study."""
 
@@ -38,6 +40,14 @@ def study_path(given: str) -> Path:
     ----------
     given
         What the user wrote.
+
+    Raises
+    ------
+    StudyError
+        If it is the folder of a plan, whose tables of results are easily taken for a study's.
     """
     path = Path(given)
+    if (path / "plan.json").is_file() and (path / "study" / "study.toml").is_file():
+        wrong, repair = "the folder of a plan, not of a study", f"Give the study in it, {path / 'study'}"
+        raise StudyError([Fault(table="study", value=given, wrong=wrong, repair=repair)])
     return demo_folder() if given == DEMO and not path.exists() else path
