@@ -14,7 +14,12 @@ if TYPE_CHECKING:
 
 
 class FlowRows:
-    """Gathers rows `lower <= sum of coefficient x share <= upper`; every share lies in [0, 1]."""
+    """
+    Gathers rows `lower <= sum of coefficient x share <= upper`; shares are at least 0.
+
+    That no share exceeds 1 follows from demand and balance. It must not be stated again: the bound would take part of
+    the dual that belongs to the demand row.
+    """
 
     def __init__(self) -> None:
         self._row: list[NDArray[Any]] = []
@@ -92,7 +97,7 @@ class FlowRows:
         problem = highspy.HighsLp()
         problem.num_col_, problem.num_row_ = cost.size, self._count
         problem.col_cost_ = cost
-        problem.col_lower_, problem.col_upper_ = np.zeros(cost.size), np.ones(cost.size)
+        problem.col_lower_, problem.col_upper_ = np.zeros(cost.size), np.full(cost.size, np.inf)
         problem.row_lower_ = np.concatenate(self._lower) * scale
         problem.row_upper_ = np.concatenate(self._upper) * scale
         problem.a_matrix_.format_ = highspy.MatrixFormat.kRowwise

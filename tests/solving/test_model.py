@@ -106,7 +106,8 @@ def test_closing_spends_the_budget(two_sites: Network, budget: float, cost: floa
     changes = {"site_running": [True, False], "site_closing_one_off": [20, 0], "one_off_budget": budget}
     found = best(change(two_sites, **changes))
     assert found is not None
-    assert (found.cost, found.options) == (pytest.approx(cost), options)
+    assert found.cost == pytest.approx(cost)
+    assert found.options == options
 
 
 @pytest.mark.parametrize(("share", "cost", "options"), [(0.5, 290, [1]), (0.501, 300, [0, 1]), (1.0, 300, [0, 1])])
@@ -116,7 +117,8 @@ def test_service_share(two_sites: Network, share: float, cost: float, options: l
     lanes = replace(two_sites.outbound, km=km)
     found = best(replace(two_sites, outbound=lanes, service_km=100.0, service_share=share))
     assert found is not None
-    assert (found.cost, found.options) == (pytest.approx(cost), options)
+    assert found.cost == pytest.approx(cost)
+    assert found.options == options
 
 
 def test_service_share_goes_by_weight(make_network: NetworkMaker) -> None:
@@ -131,7 +133,8 @@ def test_service_share_goes_by_weight(make_network: NetworkMaker) -> None:
     enough, more = best(replace(network, service_share=0.9)), best(replace(network, service_share=0.901))
     assert enough is not None
     assert more is not None
-    assert (enough.cost, more.cost) == (pytest.approx(20), pytest.approx(70))
+    assert enough.cost == pytest.approx(20)
+    assert more.cost == pytest.approx(70)
 
 
 @pytest.mark.parametrize(("demand", "cost", "option"), [(50.0, 60.0, 0), (51.0, 81.0, 1), (60.0, 90.0, 1)])
@@ -142,7 +145,8 @@ def test_the_cheapest_size_that_holds_is_taken(
     network = make_network(demand=[[demand]], charges=[10, 30], capacities=[50, 60], sites=[0, 0], outbound=[(0, 0, 1)])
     found = best(network)
     assert found is not None
-    assert (found.cost, found.options) == (pytest.approx(cost), [option])
+    assert found.cost == pytest.approx(cost)
+    assert found.options == [option]
 
 
 def test_two_sizes_never_open_together(make_network: NetworkMaker) -> None:
@@ -166,7 +170,8 @@ def test_a_pinned_site_takes_its_cheapest_size(make_network: NetworkMaker) -> No
     )
     found = best(network)
     assert found is not None
-    assert (found.cost, found.options) == (pytest.approx(35), [1, 2])
+    assert found.cost == pytest.approx(35)
+    assert found.options == [1, 2]
 
 
 SUPPLIERS = [
@@ -274,10 +279,10 @@ def test_drop_shipment_touches_no_site(
 @pytest.mark.parametrize("engine", [direct, cbc], ids=["direct", "cbc"])
 @pytest.mark.parametrize(
     ("capacities", "single", "cost"),
-    [([30, 30], False, 60), ([30, 30], True, None), ([40, 20], True, 60), ([40, 19.999], True, None)],
+    [([30, 30], 0, 60), ([30, 30], 3, None), ([40, 20], 3, 60), ([40, 19.999], 3, None)],
 )
 def test_single_sourced_customers_are_never_split(
-    make_network: NetworkMaker, engine: Engine, capacities: list[float], single: bool, cost: float | None
+    make_network: NetworkMaker, engine: Engine, capacities: list[float], single: int, cost: float | None
 ) -> None:
     """Three customers of 20 fill two sites of 30 only when one is split; 40 and 20 take them whole."""
     network = make_network(
@@ -285,7 +290,7 @@ def test_single_sourced_customers_are_never_split(
         charges=[0, 0],
         capacities=capacities,
         outbound=[(site, customer, 1) for site in range(2) for customer in range(3)],
-        single_source=[single] * 3,
+        single_source=[customer < single for customer in range(3)],
     )
     found = best(network, engine)
     assert (None if found is None else pytest.approx(found.cost)) == cost
@@ -298,7 +303,8 @@ def test_all_goods_of_a_single_sourced_customer_come_from_one_origin(make_networ
     split, whole = best(network), best(change(network, single_source=[True]))
     assert split is not None
     assert whole is not None
-    assert (split.cost, whole.cost) == (pytest.approx(15), pytest.approx(40))
+    assert split.cost == pytest.approx(15)
+    assert whole.cost == pytest.approx(40)
     assert whole.decisions.source[0] in {0, 1}
 
 
@@ -329,7 +335,8 @@ def test_a_single_sourced_customer_needs_a_size_that_holds_it_whole(make_network
     )
     found = best(network)
     assert found is not None
-    assert (found.cost, found.options) == (pytest.approx(29), [1])
+    assert found.cost == pytest.approx(29)
+    assert found.options == [1]
 
 
 def relaxation(network: Network, links: Links) -> float:
@@ -383,7 +390,8 @@ def test_units_do_not_matter(two_sites: Network, money: float, amount: float) ->
     )
     found = best(network)
     assert found is not None
-    assert (found.cost, found.options) == (pytest.approx(300 * money, rel=1e-8), [0, 1])
+    assert found.cost == pytest.approx(300 * money, rel=1e-8)
+    assert found.options == [0, 1]
 
 
 @pytest.mark.parametrize(("largest", "unit"), [(0.0, 1.0), (1.0, 1.0), (1e6, 1.0), (4e6, 8.0), (0.25, 0.5)])
