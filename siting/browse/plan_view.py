@@ -53,11 +53,11 @@ def show_answer(study: Study, answer: Answer, map_html: str) -> None:
         return
     headline(plan_headline(answer, currency=currency), second=payback(plan))
     formats = Formats(currency=plan.currency, unit=load_unit(study))
-    listed, drawn = st.columns([1, 1.25], gap="medium")
-    with listed:
-        st.html(site_table(plan, formats) + supplier_table(plan, formats))
-    with drawn:
-        st.iframe(map_html, height=MAP_HEIGHT_PX)
+    st.iframe(map_html, height=MAP_HEIGHT_PX)
+    section("Verdicts one by one")
+    sites, suppliers = st.columns(2, gap="medium")
+    sites.html(site_table(plan, formats))
+    suppliers.html(supplier_table(plan, formats))
     for warning in plan.warnings:
         notice(warning, kind="stale")
     _costs(study, plan, formats)
@@ -76,7 +76,7 @@ def site_table(plan: Plan, formats: Formats) -> str:
         return ""
     headings = (
         Heading(text="Verdict", verdict=True),
-        Heading(text="Site"),
+        Heading(text="Site", name=True),
         Heading(text=f"Throughput, {formats.unit} a year", number=True),
         Heading(text="Full", number=True),
         Heading(text=f"Charge, {formats.currency} a year", number=True),
@@ -110,7 +110,7 @@ def supplier_table(plan: Plan, formats: Formats) -> str:
         return ""
     headings = (
         Heading(text="Verdict", verdict=True),
-        Heading(text="Supplier"),
+        Heading(text="Supplier", name=True),
         Heading(text=f"Volume, {formats.unit} a year", number=True),
         Heading(text="Full", number=True),
         Heading(text=f"Charge, {formats.currency} a year", number=True),
@@ -145,10 +145,11 @@ def _costs(study: Study, plan: Plan, formats: Formats) -> None:
         st.html(cost_table(plan, formats))
         delivery = delivery_sentence(study, plan)
         if delivery:
-            st.html('<p class="lead"></p>')
             notice(delivery)
     with chart:
         st.altair_chart(cost_chart(plan))
+        if plan.cost_lines[CostLine.GOODS]:
+            st.caption("Goods bought are left out of the drawing, so that the other lines can be seen.")
     if plan.today is not None and plan.today.outcome is not TodayOutcome.SERVED:
         notice(plan.today.reason, kind="stale")
 

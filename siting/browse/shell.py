@@ -92,7 +92,7 @@ def notice(text: str, *, kind: str = "note") -> None:
 _STYLE = f"""
 .stMainBlockContainer {{max-width:{LARGEST_WIDTH_PX}px; padding-top:4.2rem; padding-bottom:4rem; margin:0 auto;}}
 header[data-testid="stHeader"] {{border-bottom:1px solid var(--rule); background:var(--paper);}}
-h1.headline {{font-size:1.55rem; line-height:1.32; font-weight:650; color:var(--ink); margin:.1rem 0 .25rem;
+h1.headline {{font-size:1.36rem; line-height:1.34; font-weight:650; color:var(--ink); margin:.1rem 0 .25rem;
  padding:0; max-width:72rem; letter-spacing:-.005em;}}
 p.second {{color:var(--quiet); font-size:1rem; margin:0 0 .4rem; max-width:72rem;}}
 h2.section {{font-size:1.08rem; font-weight:650; color:var(--ink); margin:1.1rem 0 .1rem; padding:.7rem 0 0;
@@ -109,10 +109,13 @@ table.report th {{text-align:left; font-weight:600; color:var(--quiet); border-b
  padding:.25rem .55rem .25rem 0; vertical-align:bottom; font-size:.8rem;}}
 table.report td {{padding:.26rem .55rem .26rem 0; border-bottom:1px solid var(--rule); vertical-align:top;
  overflow-wrap:anywhere;}}
-table.report .n {{text-align:right; white-space:nowrap;}}
+table.report .n {{text-align:right;}}
+table.report td.n {{white-space:nowrap;}}
+table.report th, table.report td.verdict {{overflow-wrap:normal;}}
+table.report td.name {{min-width:7.5rem;}}
 table.report tr.total td {{border-top:1px solid var(--ink); font-weight:650;}}
 table.report tr.faint td {{color:var(--quiet);}}
 table.report td.verdict {{white-space:nowrap; font-weight:600;}}
-table.report svg {{vertical-align:-4px; margin-right:.4rem;}}
+table.report img {{vertical-align:-4px; margin-right:.4rem; display:inline;}}
 .stIFrame iframe, iframe {{border:1px solid var(--rule);}}
 """

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import base64
 import html
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
@@ -19,6 +20,8 @@ class Heading:
     """Right-aligned."""
     verdict: bool = False
     """Set in bold, never broken."""
+    name: bool = False
+    """A name of the user's: wide enough to be read, broken where it is too long."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -29,7 +32,7 @@ class Line:
     kind: str = ""
     """`total` for sums, `faint` for what matters less; empty otherwise."""
     mark: str = ""
-    """Trusted SVG put before the first cell."""
+    """SVG of ours put before the first cell."""
 
 
 def report_table(headings: Sequence[Heading], lines: Iterable[Line], *, caption: str = "") -> str:
@@ -53,13 +56,20 @@ def report_table(headings: Sequence[Heading], lines: Iterable[Line], *, caption:
 
 def _row(headings: Sequence[Heading], line: Line) -> str:
     cells = "".join(
-        f"<td{_class(heading)}>{line.mark if position == 0 else ''}{html.escape(cell)}</td>"
+        f"<td{_class(heading)}>{_image(line.mark) if position == 0 else ''}{html.escape(cell)}</td>"
         for position, (heading, cell) in enumerate(zip(headings, line.cells, strict=True))
     )
     kind = f' class="{line.kind}"' if line.kind else ""
     return f"<tr{kind}>{cells}</tr>"
 
 
+def _image(svg: str) -> str:
+    """Return the drawing as an image: inline SVG does not survive the cleaning of a page's HTML."""
+    if not svg:
+        return ""
+    return f'<img alt="" src="data:image/svg+xml;base64,{base64.b64encode(svg.encode()).decode()}">'
+
+
 def _class(heading: Heading) -> str:
-    names = " ".join(name for name, on in (("n", heading.number), ("verdict", heading.verdict)) if on)
+    names = " ".join(name for name, on in (("n", heading.number), ("verdict", heading.verdict), ("name", heading.name)) if on)
     return f' class="{names}"' if names else ""
