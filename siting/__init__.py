@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from siting.plan.folder import read_plan_folder, write_plan_folder
     from siting.plan.plan import Answer, Plan, Today
     from siting.plan.proof import Outcome, Proof
+    from siting.sharing.map import MapPage, draw_map, write_map
     from siting.solving.solve import solve
     from siting.study.demo import demo_folder
     from siting.study.fingerprint import fingerprint
@@ -33,6 +34,7 @@ __all__ = [
     "EngineError",
     "Fault",
     "Listener",
+    "MapPage",
     "Network",
     "Outcome",
     "Plan",
@@ -52,10 +54,12 @@ __all__ = [
     "audit",
     "build_network",
     "demo_folder",
+    "draw_map",
     "fingerprint",
     "read_plan_folder",
     "read_study",
     "solve",
+    "write_map",
     "write_plan_folder",
     "write_study",
     "write_workbook",
@@ -77,6 +81,7 @@ _HOMES = {
     "siting.plan.folder": ("read_plan_folder", "write_plan_folder"),
     "siting.plan.plan": ("Answer", "Plan", "Today"),
     "siting.plan.proof": ("Outcome", "Proof"),
+    "siting.sharing.map": ("MapPage", "draw_map", "write_map"),
     "siting.solving.solve": ("solve",),
     "siting.study.demo": ("demo_folder",),
     "siting.study.fingerprint": ("fingerprint",),

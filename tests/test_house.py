@@ -20,7 +20,8 @@ if TYPE_CHECKING:
 ROOT = Path(__file__).resolve().parent.parent
 FOLDERS = ("siting", "pages", "tests", "demo_data", ".ci")
 TEXT = {".py", ".md", ".toml", ".csv", ".json", ".js", ".html", ".css", ".typed", ""}
-MOST_LINES = 500
+MOST_LINES = {"siting": 500, "pages": 500, "tests": 600}
+"""Lines of a file; tests may be longer, since lists of cases are."""
 
 UNFINISHED = ("TO" + "DO", "FIX" + "ME", "XX" + "X:", "NotImplemented" + "Error", "assert " + "True")
 """What stands for work not done. Composed, so that this file does not contain it."""
@@ -58,7 +59,7 @@ def public_functions() -> Iterator[str]:
             if inspect.isfunction(value):
                 yield f"{module_info.name}.{name}"
             elif inspect.isclass(value):
-                methods = inspect.getmembers(value, inspect.isfunction)
+                methods = [pair for pair in vars(value).items() if inspect.isfunction(pair[1])]
                 yield from (
                     f"{module_info.name}.{name}.{method}" for method, _ in methods if not method.startswith("_")
                 )
@@ -88,9 +89,14 @@ def test_no_word_tells_how_the_program_came_to_be(word: str) -> None:
 
 
 def test_a_file_holds_one_job() -> None:
-    """A file of code or tests has at most 500 lines."""
-    lines = {path: len(path.read_text(encoding="utf-8").splitlines()) for path in house_files() if path.suffix == ".py"}
-    assert {str(path.relative_to(ROOT)): count for path, count in lines.items() if count > MOST_LINES} == {}
+    """A file of code has at most 500 lines, one of tests 600."""
+    too_long = [
+        f"{path}: {lines} lines"
+        for folder, most in MOST_LINES.items()
+        for path in (ROOT / folder).rglob("*.py")
+        if (lines := len(path.read_text(encoding="utf-8").splitlines())) > most
+    ]
+    assert too_long == []
 
 
 def test_docstrings_speak_of_the_parameters_that_exist() -> None:
