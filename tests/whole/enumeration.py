@@ -274,7 +274,7 @@ def annuity(interest: float, years: float) -> float:
     """Return yearly money per money paid once at the start of `years` years: 1 / (sum of discounted ones)."""
     if interest == 0:
         return 1 / years
-    return interest / (1 - (1 + interest) ** -years)
+    return interest / (1 - math.pow(1 + interest, -years))
 
 
 def _charges(study: Study, options: Mapping[str, SizeRow | None], signed: frozenset[str]) -> tuple[float, float]:

@@ -31,7 +31,10 @@ def full_size(seed: int = 7) -> Study:
     random = np.random.default_rng(seed)
 
     def places(count: int) -> list[tuple[float, float]]:
-        return [(float(a), float(b)) for a, b in zip(random.uniform(46, 52, count), random.uniform(9, 20, count), strict=True)]
+        return [
+            (float(a), float(b))
+            for a, b in zip(random.uniform(46, 52, count), random.uniform(9, 20, count), strict=True)
+        ]
 
     def whole(low: int, high: int) -> float:
         return float(random.integers(low, high))
@@ -79,7 +82,7 @@ def full_size(seed: int = 7) -> Study:
         for n, (latitude, longitude) in enumerate(places(SUPPLIERS))
     ]
     customers = [
-        CustomerRow(customer=f"C{n}", latitude=latitude, longitude=longitude, reach_km=600.0)
+        CustomerRow(customer=f"C{n}", latitude=latitude, longitude=longitude, reach_km=400.0)
         for n, (latitude, longitude) in enumerate(places(CUSTOMERS))
     ]
     return Study(
