@@ -104,6 +104,9 @@ class _Start(MacroElement):
 
     _template = Template("{% macro script(this, kwargs) %}siting.start({{ this._parent.get_name() }});{% endmacro %}")
 
+    def __init__(self) -> None:
+        super().__init__()  # type: ignore[no-untyped-call]  # branca leaves it without types
+
 
 @lru_cache(maxsize=1)
 def _leaflet() -> tuple[str, str]:

@@ -45,6 +45,7 @@ DISTRICT_KM = 5.0
 PART_KM = 30.0
 """A place this near to a larger one whose name its own begins with is a part of that, and is left out."""
 KM_PER_DEGREE = 111.2
+TURN = 360.0
 RING_POINTS = 4
 """Fewest points of a closed ring; an island that simplifies to less is left out."""
 
@@ -62,14 +63,41 @@ def read_topology(path: Path, tolerance: float) -> Topology:
     raw = json.loads(path.read_text("utf-8"))
     scale, shift = np.array(raw["transform"]["scale"]), np.array(raw["transform"]["translate"])
     arcs = [np.cumsum(np.array(arc, dtype=float), axis=0) * scale + shift for arc in raw["arcs"]]
+    for arc in arcs:
+        arc[:, 0] = np.unwrap(arc[:, 0], period=TURN)
     simple = [shapely.get_coordinates(shapely.simplify(shapely.linestrings(arc), tolerance)) for arc in arcs]
     return Topology(simple, raw["objects"])
 
 
 def ring_of(topology: Topology, numbers: list[int]) -> Floats:
-    """Return the ring that the numbered arcs make; ~n is arc n walked backwards."""
-    parts = [topology.arcs[n] if n >= 0 else topology.arcs[~n][::-1] for n in numbers]
-    return np.concatenate([parts[0], *(part[1:] for part in parts[1:])])
+    """
+    Return the ring that the numbered arcs make; ~n is arc n walked backwards.
+
+    The source lets rings run across the antimeridian: each arc is moved by whole turns to begin where the one before
+    it ends, and a ring around a pole is closed over the pole.
+    """
+    ring: list[Floats] = []
+    for n in numbers:
+        arc = topology.arcs[n] if n >= 0 else topology.arcs[~n][::-1]
+        if ring:
+            turns = np.round((ring[-1][-1, 0] - arc[0, 0]) / TURN) * TURN
+            arc = arc[1:] + np.array([turns, 0.0])
+        ring.append(arc)
+    closed = np.concatenate(ring)
+    if abs(closed[-1, 0] - closed[0, 0]) > TURN / 2:
+        pole = np.copysign(90.0, closed[0, 1])
+        closed = np.concatenate([closed, [[closed[-1, 0], pole], [closed[0, 0], pole], closed[0]]])
+    return closed
+
+
+def cut_at_antimeridian(shape: Any) -> list[Any]:  # noqa: ANN401 - any shapely geometry
+    """Return the parts of a polygon in [-180, 180], those beyond moved in by whole turns."""
+    parts = []
+    for turn in (-TURN, 0.0, TURN):
+        cut = shapely.intersection(shape, shapely.box(turn - TURN / 2, -90, turn + TURN / 2, 90))
+        moved = shapely.transform(cut, lambda corners, turn=turn: corners - np.array([turn, 0.0]))
+        parts += list(shapely.get_parts(shapely.get_parts(shapely.set_precision(moved, 1 / DECIMALS))))
+    return [part for part in parts if part.geom_type == "Polygon" and part.area > 0]
 
 
 def polygon_arcs(geometry: dict[str, Any]) -> Iterator[list[list[int]]]:
@@ -90,9 +118,13 @@ def polygons_of(topology: Topology, name: str) -> list[shapely.Polygon]:
         outer, *holes = (ring_of(topology, numbers) for numbers in rings)
         if len(outer) < RING_POINTS:
             continue
-        made = shapely.make_valid(shapely.Polygon(outer, [hole for hole in holes if len(hole) >= RING_POINTS]))
-        parts = shapely.get_parts(shapely.get_parts(shapely.set_precision(made, 1 / DECIMALS)))
-        polygons += [part for part in parts if part.geom_type == "Polygon" and part.area > 0]
+        middle = outer[:, 0].min() / 2 + outer[:, 0].max() / 2
+        inner = [
+            hole + np.array([np.round((middle - hole[0, 0]) / TURN) * TURN, 0.0])
+            for hole in holes
+            if len(hole) >= RING_POINTS
+        ]
+        polygons += cut_at_antimeridian(shapely.make_valid(shapely.Polygon(outer, inner)))
     return polygons
 
 
