@@ -82,7 +82,12 @@ def test_number_texts_read_back(value: float) -> None:
 def test_files_follow_rfc_4180(tmp_path: Path) -> None:
     """RFC 4180 (2005), section 2: CRLF ends each record, quotes are doubled, commas and line breaks are quoted."""
     file = tmp_path / "t.csv"
-    rows = [['Gy\u0151r, "Old" town', 1.5], ["two\nlines", None], ["=1+1", math.inf], ["A", -5.0]]
+    rows: list[tuple[str, float | None]] = [
+        ('Gy\u0151r, "Old" town', 1.5),
+        ("two\nlines", None),
+        ("=1+1", math.inf),
+        ("A", -5.0),
+    ]
     write_csv(file, ["name", "amount"], rows)
     assert file.read_bytes().decode() == (
         '"name","amount"\r\n"Gy\u0151r, ""Old"" town",1.5\r\n"two\nlines",""\r\n"\'=1+1","unlimited"\r\n"A",-5\r\n'

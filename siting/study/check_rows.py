@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any, Generic, TypeVar
 
 from siting.study.columns import Column, Kind, TableSpec
 from siting.study.gathering import nearest
-from siting.study.parse import Refusal, parse_cell
+from siting.study.parse import Refusal, check_text, parse_cell
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
@@ -124,6 +124,11 @@ def parse_table(spec: TableSpec, raw: RawTable | None, gathering: Gathering) -> 
     attributes = check_header(spec, raw.header, gathering)
     texts = {name: raw.columns[raw.header.index(name)].to_pylist() for name in dict.fromkeys(raw.header) if name}
     numbers = raw.rows.tolist()
+    for name in attributes:
+        for row, text in zip(numbers, texts[name], strict=True):
+            refusal = check_text(text)
+            if refusal:
+                refuse(gathering, spec.name, row, name, text, refusal)
     kinds = {
         column.name: [_cell(spec, column, *cell, gathering) for cell in zip(numbers, texts[column.name], strict=True)]
         for column in spec.columns

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
-import difflib
 from collections import Counter
+from functools import lru_cache
 from typing import TYPE_CHECKING
+
+from rapidfuzz import process
+from rapidfuzz.distance import Indel
 
 from siting.errors import Fault
 from siting.study.columns import TABLES
@@ -102,15 +105,20 @@ class _Listed:
 
 def nearest(word: str, known: Iterable[str], cutoff: float = 0.6) -> str | None:
     """Return the known word most like this one, or None where none is alike; case and blanks do not count."""
-    folded = {_fold(name): name for name in known}
-    found = difflib.get_close_matches(_fold(word), folded, n=1, cutoff=cutoff)
-    return folded[found[0]] if found else None
+    names = tuple(known)
+    found = process.extractOne(_fold(word), _folded(names), scorer=Indel.normalized_similarity, score_cutoff=cutoff)
+    return names[found[2]] if found else None
 
 
 def did_you_mean(word: str, known: Iterable[str], otherwise: str) -> str:
     """Return a repair that names the nearest known word, or ``otherwise`` where none is near."""
     near = nearest(word, known)
     return f"Write {near!r} if that is meant, or {otherwise[0].lower()}{otherwise[1:]}" if near else otherwise
+
+
+@lru_cache(maxsize=8)
+def _folded(names: tuple[str, ...]) -> list[str]:
+    return [_fold(name) for name in names]
 
 
 def _fold(word: str) -> str:

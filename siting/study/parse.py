@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import re
+import unicodedata
 from dataclasses import dataclass
 
 from siting.cells import is_plain_number
@@ -21,6 +22,10 @@ _THOUSANDS_POINT = re.compile(r"-?[0-9]{1,3}(\.[0-9]{3})+,[0-9]+|-?[0-9]{1,3}(\.
 _DECIMAL_COMMA = re.compile(r"-?[0-9]+,[0-9]+")
 _PER_CENT = re.compile(r"(-?[0-9]+(?:[.,][0-9]+)?)\s*%")
 _CURRENCY = re.compile(r"[^\W\d_]{3}\s?-?[0-9].*|.*[0-9]\s?[^\W\d_]{3}|.*[€$£¥].*")
+_CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f]")
+_UNSEEN = frozenset({"Cc", "Zl", "Zp", "Zs"})
+"""Unicode categories of control characters, of separators of lines and paragraphs, and of blanks."""
+
 _NOT_FINITE = frozenset({"nan", "inf", "-inf", "+inf", "infinity", "-infinity", "+infinity"})
 
 
@@ -35,12 +40,19 @@ class Refusal:
 def parse_text(column: Column, text: str) -> str | Refusal:
     """Return the text, or a refusal where a name has blanks around it or cannot be told apart from another."""
     if column.kind is not Kind.NAME:
-        return text
+        return check_text(text) or text
     if text != text.strip():
         return Refusal("the name begins or ends with a blank", f"Write {text.strip()!r}")
-    if not text.isprintable():
-        return Refusal("the name holds a line break or another character that cannot be seen", "Retype the name")
+    if any(unicodedata.category(letter) in _UNSEEN and letter != " " for letter in text):
+        return Refusal("the name holds a line break or an unusual blank", "Retype the name")
     return text
+
+
+def check_text(text: str) -> Refusal | None:
+    """Return why a text cannot be kept: a workbook holds no control characters, line breaks and tabs aside."""
+    if _CONTROL.search(text):
+        return Refusal("the text holds a control character", "Retype the text")
+    return None
 
 
 def parse_number(column: Column, text: str) -> float | Refusal:

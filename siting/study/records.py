@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import gc
+from contextlib import contextmanager
+from itertools import compress, islice
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -16,8 +19,10 @@ from siting.study.raw import RawTable
 if TYPE_CHECKING:
     from collections.abc import Iterable, Iterator
 
-CHUNK_ROWS = 65_536
-"""Records turned into Arrow arrays at a time, so that few Python strings live at once."""
+    from siting.arrays import Positions
+
+CHUNK_ROWS = 2_048
+"""Records turned into Arrow arrays at a time: few enough for their strings to stay in the processor's cache."""
 
 
 class RecordReader:
@@ -29,7 +34,7 @@ class RecordReader:
         """Whether cells may be missing at the end of a record: a sheet has no others, a CSV file must have them."""
         self._ragged = 0
         self._chunks: list[list[pa.Array]] = []
-        self._rows: list[int] = []
+        self._rows: list[Positions] = []
         self.header: list[str] = []
         self.record = 0
         """Number of records read so far, blank ones included."""
@@ -49,17 +54,13 @@ class RecordReader:
         table
             Its rows bear the numbers of their records. Ragged records are in `faults`.
         """
-        numbered = self._numbered(records)
-        self.header = next(numbered, [])
-        if not self.header:
+        rest = iter(records)
+        width = self._read_header(rest)
+        if not width:
             return None
-        chunk: list[list[str]] = []
-        for record in numbered:
-            chunk.append(record)
-            if len(chunk) == CHUNK_ROWS:
-                self._keep(chunk)
-                chunk = []
-        self._keep(chunk)
+        with _no_collections():
+            while self._read_chunk(rest, width):
+                pass
         if self._ragged > MOST_LISTED:
             wrong = f"{self._ragged - MOST_LISTED} more rows have too few or too many cells"
             self.faults.append(Fault(table=self._table, wrong=wrong, repair="Repair them too"))
@@ -68,27 +69,43 @@ class RecordReader:
         return RawTable(
             header=tuple(self.header[at] for at in used),
             columns=tuple(columns[at] for at in used),
-            rows=np.array(self._rows, dtype=np.int32),
+            rows=np.concatenate(self._rows),
         )
 
-    def _numbered(self, records: Iterable[list[str]]) -> Iterator[list[str]]:
-        """Yield the header, then the records that are not blank, all as wide as the header."""
-        width = 0
+    def _read_header(self, records: Iterator[list[str]]) -> int:
+        """Read up to the first record that is not blank, and return how many columns it has; 0 = there is none."""
         for record in records:
             self.record += 1
-            if not any(record):
-                continue
-            if not width:
-                header = [read_cell(name) for name in record]
-                while not header[-1]:
-                    header.pop()
-                width = len(header)
-                yield header
-                continue
-            self._rows.append(self.record)
-            yield record if len(record) == width else self._evened(record, width)
+            if any(record):
+                self.header = [read_cell(name) for name in record]
+                while not self.header[-1]:
+                    self.header.pop()
+                break
+        return len(self.header)
 
-    def _evened(self, record: list[str], width: int) -> list[str]:
+    def _read_chunk(self, records: Iterator[list[str]], width: int) -> bool:
+        """Keep the next records that are not blank, and return whether there were any records at all."""
+        chunk: list[list[str]] = []
+        try:
+            chunk.extend(islice(records, CHUNK_ROWS))
+        finally:  # where the source breaks off, its fault tells in which record
+            first = self.record + 1
+            self.record += len(chunk)
+        rows = np.arange(first, self.record + 1, dtype=np.int32)
+        if not all(map(any, chunk)):
+            filled = [any(record) for record in chunk]
+            rows, chunk = rows[filled], list(compress(chunk, filled))
+        if any(len(record) != width for record in chunk):
+            chunk = [
+                record if len(record) == width else self._evened(record, width, row)
+                for record, row in zip(chunk, rows.tolist(), strict=True)
+            ]
+        columns = zip(*chunk, strict=True) if chunk else ((),) * width
+        self._chunks.append([pa.array(column, type=pa.string()) for column in columns])
+        self._rows.append(rows)
+        return self.record >= first
+
+    def _evened(self, record: list[str], width: int, row: int) -> list[str]:
         """Return a record of the width of the header; note a fault unless it lacks or exceeds it by blank cells."""
         too_short = len(record) < width and not self._may_be_short
         if too_short or any(record[width:]):
@@ -98,12 +115,24 @@ class RecordReader:
                 repair = "Put texts that hold a comma in double quotes, and keep the commas of blank cells"
                 if self._may_be_short:
                     wrong, repair = "a cell has no column name above it", "Name its column or clear it"
-                self.faults.append(Fault(table=self._table, row=self.record, wrong=wrong, repair=repair))
+                self.faults.append(Fault(table=self._table, row=row, wrong=wrong, repair=repair))
         return (record + [""] * width)[:width]
 
-    def _keep(self, chunk: list[list[str]]) -> None:
-        columns = zip(*chunk, strict=True) if chunk else ((),) * len(self.header)
-        self._chunks.append([pa.array(column, type=pa.string()) for column in columns])
+
+@contextmanager
+def _no_collections() -> Iterator[None]:
+    """
+    Keep the garbage collector from running.
+
+    Records make no cycles, but their lists are so many that the collector would take longer than the reading.
+    """
+    was_on = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_on:
+            gc.enable()
 
 
 def _cleaned(cells: pa.Array) -> pa.Array:

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import re
 import zipfile
-from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import pytest
@@ -20,6 +19,7 @@ from tests.builders import TINY, TINY_SETTINGS, tiny_goods, tiny_study, write_fo
 
 if TYPE_CHECKING:
     from collections.abc import Callable
+    from pathlib import Path
 
 
 def faults_of(path: Path) -> list[str]:
@@ -204,7 +204,7 @@ def test_a_formula_without_a_result_is_a_fault(book: Path) -> None:
 
 
 def test_an_error_in_a_cell_is_a_fault(book: Path) -> None:
-    """Error values are told apart from text, once, in tables and settings; beside the known columns they are harmless."""
+    """Error values are told apart from text, once; beside the known columns they are harmless."""
 
     def change(opened: Any) -> None:  # noqa: ANN401
         opened["demands"]["C2"] = "#N/A"

@@ -9,19 +9,20 @@ import pytest
 from tests.builders import TINY, TINY_SETTINGS, check_tables, tiny_goods, tiny_study, with_cells, without_column
 
 NOWHERE = {"latitude": "", "longitude": ""}
+SWAPPED = {"latitude": "16.37208", "longitude": "48.20849"}
 
 WARNINGS = [
     ({"sites": without_column(TINY["sites"], "standing")}, r"^sites, standing: .*every row is taken as proposed"),
     ({"suppliers": without_column(TINY["suppliers"], "standing")}, r"^suppliers, standing: .*taken as offered"),
     (with_cells(TINY, "sites", {2: {"capacity": ""}}), r"^sites, row 2, column capacity: blank, taken as unlimited"),
-    ({"sites": without_column(TINY["sites"], "capacity")}, r"^sites, capacity: .*every capacity is taken as unlimited"),
+    ({"sites": without_column(TINY["sites"], "capacity")}, r"^sites, capacity: .*every capacity is taken as unlim"),
     (with_cells(TINY, "suppliers", {3: {"capacity": ""}}), r"^suppliers, row 3, column capacity: blank, taken as unl"),
-    (with_cells(TINY, "customers", {2: {"demand": "0"}}), r"^customers, row 2, column demand: .*'Vienna' needs nothing"),
+    (with_cells(TINY, "customers", {2: {"demand": "0"}}), r"^customers, row 2, column demand: .*'Vienna' needs noth"),
     (with_cells(TINY, "sites", {2: {"remark": "old"}}), r"^sites: .* does not know are carried along unused: remark\."),
     ({"contacts": "name\nx\n"}, r"^contacts: the file is not a table of a study and was not read"),
     ({"goods": "good\n"}, r"^goods: the table has no rows and counts as absent"),
-    ({"lanes": "origin,destination,road_km\nLinz,Vienna,700\n"}, r"^lanes, row 2, column road_km, value '700': .*Linz to Vi"),
-    (with_cells(TINY, "customers", {2: {"latitude": "16.37208", "longitude": "48.20849"}}), r"^customers, row 2, .*swapped"),
+    ({"lanes": "origin,destination,road_km\nLinz,Vienna,700\n"}, r"^lanes, row 2, column road_km, value '700': .*Linz"),
+    (with_cells(TINY, "customers", {2: SWAPPED}), r"^customers, row 2, column latitude, value '16.3721': .*swapped"),
 ]  # fmt: skip
 
 
@@ -102,10 +103,10 @@ def test_rates_that_were_never_said() -> None:
     for name in ("outbound_rate", "inbound_rate"):
         line = next(line for line in TINY_SETTINGS.splitlines() if line.startswith(name))
         found = [str(warning) for warning in check_tables(TINY, TINY_SETTINGS.replace(line, "")).warnings]
-        assert found == [
-            f"study.toml, {name}: the setting is missing: freight by distance is taken as free of charge. "
-            "Add it; write 0 if freight costs nothing."
-        ]
+        assert len(found) == 1
+        assert re.search(
+            rf"study\.toml, {name}: .*taken as free of charge\. Add it; write 0 if freight costs", found[0]
+        )
         assert check_tables(TINY, TINY_SETTINGS.replace(line, f"{name} = 0")).warnings == ()
 
 

@@ -152,13 +152,25 @@ def test_the_fingerprint_ignores_order_and_spelling() -> None:
 
 
 CHANGES = [
-    ("sites", 2, {"yearly_charge": "1001"}), ("sites", 2, {"remark": "x"}), ("sites", 2, {"ruling": "pinned-open"}),
-    ("customers", 2, {"reach_km": "900"}), ("customers", 2, {"single_source": "no"}), ("suppliers", 2, {"capacity": "1"}),
-    ("sizes", 2, {"size": "tiny"}), ("goods", 2, {"load": "1.01"}), ("demands", 2, {"demand": "41"}),
-    ("offers", 2, {"unit_price": "10.5"}), ("rules", 2, {"number": "1"}), ("lanes", 2, {"road_km": "185"}),
-    ("lanes", 3, {"unit_cost": "35"}), ("lanes", 3, {"barred": "yes"}), ("lanes", 2, {"good": "pots"}),
-    ("lanes", 2, {"destination": "Munich"}), ("lanes", 2, {"haulier": "Nord"}), ("rules", 3, {"members": "Szombathely;Brno"}),
-]  # fmt: skip
+    ("sites", 2, {"yearly_charge": "1001"}),
+    ("sites", 2, {"remark": "x"}),
+    ("sites", 2, {"ruling": "pinned-open"}),
+    ("customers", 2, {"reach_km": "900"}),
+    ("customers", 2, {"single_source": "no"}),
+    ("suppliers", 2, {"capacity": "1"}),
+    ("sizes", 2, {"size": "tiny"}),
+    ("goods", 2, {"load": "1.01"}),
+    ("demands", 2, {"demand": "41"}),
+    ("offers", 2, {"unit_price": "10.5"}),
+    ("rules", 2, {"number": "1"}),
+    ("lanes", 2, {"road_km": "185"}),
+    ("lanes", 3, {"unit_cost": "35"}),
+    ("lanes", 3, {"barred": "yes"}),
+    ("lanes", 2, {"good": "pots"}),
+    ("lanes", 2, {"destination": "Munich"}),
+    ("lanes", 2, {"haulier": "Nord"}),
+    ("rules", 3, {"members": "Szombathely;Brno"}),
+]
 
 
 @pytest.mark.parametrize(("table", "row", "cells"), CHANGES)
