@@ -122,7 +122,8 @@ def test_limits_met_exactly_are_accepted() -> None:
     for added in (
         "circuity = 1", "circuity = 5", "most_sites = 0", "fewest_sites = 2", "one_off_budget = 0",
         "single_source = true", 'single_source = "yes"', "drop_charge = 48\ndrop_size = 0.001",
-        "service_km = 1\nservice_share = 0.999", "service_km = 1\nservice_share = 0", "emission_kg_per_tkm = 0", "most_sites = 2.0",
+        "service_km = 1\nservice_share = 0.999", "service_km = 1\nservice_share = 0", "emission_kg_per_tkm = 0",
+        "most_sites = 2.0",
         '[solve]\ngap = 0\ntime_limit_s = 0.5\nengine = "cbc"',
     ):  # fmt: skip
         assert faults_of(TINY_SETTINGS + added) == [], added
