@@ -14,7 +14,7 @@ class QuietHighs(highspy.Highs):
     def enableCallbacks(self) -> None:  # noqa: N802 - overrides a method of highspy, called by its constructor
         """Silence the console before anything can be logged."""
         self.setOptionValue("log_to_console", False)  # noqa: FBT003 - highspy takes it by position
-        super().enableCallbacks()
+        super().enableCallbacks()  # type: ignore[no-untyped-call] # highspy types only part of its methods
 
 
 def is_impossible(highs: highspy.Highs) -> bool:
