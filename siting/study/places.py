@@ -298,8 +298,8 @@ def _inbound(draft: Draft, ends: _Ends) -> Iterator[set[str]]:
     """Yield, for each good, the sites that an inbound lane reaches with it; a row with a good beats one without."""
     lanes = ends.lanes
     sites, suppliers = ends.located("sites"), ends.located("suppliers")
-    site_at = {row.site: at for at, row in enumerate(draft.sites.rows)}
-    supplier_at = {row.supplier: at for at, row in enumerate(draft.suppliers.rows)}
+    site_at = {name: at for at, name in enumerate(dict.fromkeys(row.site for row in draft.sites.rows))}
+    supplier_at = {name: at for at, name in enumerate(dict.fromkeys(row.supplier for row in draft.suppliers.rows))}
     by_coordinates = np.outer([name in suppliers for name in supplier_at], [name in sites for name in site_at])
     from_at = np.array([*(supplier_at.get(name, -1) for name in lanes.names), -1], dtype=np.int32)
     to_at = np.array([*(site_at.get(name, -1) for name in lanes.names), -1], dtype=np.int32)
