@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 from dataclasses import fields, is_dataclass, replace
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
-from siting.plan.plan import Plan
-from siting.study.tables import Study
 from tests.plan import hand
+
+if TYPE_CHECKING:
+    from siting.plan.plan import Plan
+    from siting.study.tables import Study
 
 HOSTILE = (
     "<script>alert(1)</script>",
@@ -59,7 +61,7 @@ def hostile_case() -> tuple[Study, Plan, dict[str, str]]:
     names["Wels"] = LONG
     study, plan = (renamed(thing, names) for thing in hand_case())
     text = " ".join(HOSTILE)
-    rows = {
+    rows: dict[str, Any] = {
         table: tuple(replace(row, place=text, country=HOSTILE[1]) for row in getattr(study, table))
         for table in ("sites", "suppliers", "customers")
     }

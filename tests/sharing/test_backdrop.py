@@ -33,7 +33,7 @@ def land_at(latitude: float, longitude: float, box: Box) -> bool:
     behind = backdrop(box)
     spot = shapely.Point(box.longitude(longitude), latitude)
     rings = [shapely.Polygon(corners(ring, behind.decimals)) for ring in behind.land]
-    return sum(ring.contains(spot) for ring in rings) % 2 == 1
+    return bool(sum(ring.contains(spot) for ring in rings) % 2 == 1)
 
 
 @pytest.mark.parametrize(("latitudes", "longitudes"), REGIONS.values(), ids=REGIONS.keys())

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import pytest
 
 from siting.errors import SettingsError
@@ -74,7 +76,7 @@ def test_bands_darken_with_distance() -> None:
     """The farther the customer, the darker its dot, so that the order survives a black-and-white print."""
     light = [looks.relative_luminance(shade) for shade in looks.BAND_SHADES]
     assert light == sorted(light, reverse=True)
-    assert min(near / far for near, far in zip(light, light[1:], strict=False)) > 1.2
+    assert min(near / far for near, far in pairwise(light)) > 1.2
 
 
 @pytest.mark.parametrize(

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from typing import Any
 
 import pytest
 
 from siting.plan.plan import Plan, SiteVerdict, SupplierVerdict
 from siting.plan.service import BAND_EDGES_KM
 from siting.sharing import map_facts
-from siting.sharing.looks import NO_BREAK
+from siting.sharing.looks import NO_BREAK, Formats
 from siting.sharing.map_data import Json, band_of, plan_json
 from siting.sharing.map_given import given_json
 from siting.study.tables import Leg, Study
@@ -171,21 +172,19 @@ def test_distances_say_what_they_rest_on(
     """Given, estimated, mixed and missing distances each read differently."""
     study, plan, _ = case
     flows = [replace(plan.flows[0], km=km, km_given=known) for km, known in zip(kms, given, strict=True)]
-    formats = map_facts_formats(study)
+    formats = formats_of(study)
     assert map_facts.distance_text(formats, flows).replace(NO_BREAK, " ") == text
 
 
-def map_facts_formats(study: Study) -> map_facts.Formats:
+def formats_of(study: Study) -> Formats:
     """Return the formats of the study in English."""
-    from siting.sharing.looks import Formats  # noqa: PLC0415 - kept beside its only use
-
     return Formats(currency=study.settings.currency, unit=study.settings.unit)
 
 
 def test_one_good_needs_no_name_and_no_load(case: tuple[Study, Plan, Json]) -> None:
     """In a study without goods, amounts are plain and capacities are in the study's unit."""
     study = replace(case[0], goods=(), demands=(), offers=())
-    formats = map_facts_formats(study)
+    formats = formats_of(study)
     assert map_facts.load_unit(study) == "t"
     assert map_facts.goods_text(study, formats, {"goods": 40.0}).replace(NO_BREAK, " ") == "40 t a year"
 
@@ -213,7 +212,7 @@ def test_what_has_no_coordinates_is_counted(case: tuple[Study, Plan, Json]) -> N
 def test_a_study_without_any_coordinates_has_no_base(case: tuple[Study, Plan, Json]) -> None:
     """Then there is nothing to draw, but the verdicts and tables remain."""
     study, plan, _ = case
-    tables = {
+    tables: dict[str, Any] = {
         name: tuple(replace(row, latitude=None, longitude=None) for row in getattr(study, name))
         for name in ("sites", "suppliers", "customers")
     }

@@ -89,7 +89,7 @@ siting.makeCustomers = function () {
     const shade = customer.band === null ? data.colours.ink : data.shades[customer.band], hollow = customer.beyond || customer.band === null;
     customer.drawn = L.circleMarker(customer.spot, {
       renderer: siting.canvas, fillColor: hollow ? data.colours.paper : shade, fillOpacity: 1,
-      color: hollow ? shade : data.colours.paper, weight: hollow ? 2 : 0.8, dashArray: customer.band === null ? "2 2" : null,
+      color: hollow ? shade : data.colours.paper, weight: hollow ? 2 : 0.8, dashArray: customer.band === null ? "2 2" : null, bubblingMouseEvents: false,
     });
     siting.bindCard(customer.drawn, [customer.name], data.customer_heads, customer.facts, true);
     customer.drawn.on("click", () => siting.select("customers", index));
@@ -110,6 +110,11 @@ siting.makeMarkers = function (kind, word) {
       shown.setAttribute("role", "button");
       shown.setAttribute("aria-label", `${word} ${thing.name}, ${thing.facts.filter(Boolean).join(", ")}`);
       L.DomEvent.disableClickPropagation(shown);
+      L.DomEvent.on(shown, "keydown", (event) => {
+        if (event.key !== "Enter" && event.key !== " ") return;
+        L.DomEvent.stop(event);
+        siting.select(kind, index);
+      });
     });
     thing.drawn.on("click", () => siting.select(kind, index));
     group.addLayer(thing.drawn);
