@@ -61,7 +61,7 @@ def located(study: Study, locale: str) -> Located:
     rows: list[SiteRow | SupplierRow | CustomerRow] = [*study.sites, *study.suppliers, *study.customers]
     spots = [(row.latitude, row.longitude) for row in rows if row.latitude is not None and row.longitude is not None]
     box = box_around([spot[0] for spot in spots], [spot[1] for spot in spots]) if spots else None
-    formats = looks.Formats(currency=study.settings.currency, unit=study.settings.unit, locale=locale)
+    formats = looks.Formats(currency=study.settings.currency, unit=map_facts.unit_shown(study), locale=locale)
     return Located(study, formats, box)
 
 
@@ -264,7 +264,7 @@ def _sites(where: Located, plan: Plan) -> list[Json]:
                 "level_text": "" if level is None else where.formats.share(level),
                 "throughput": line.throughput,
                 "brief": brief,
-                "note": line.note,
+                "note": name_shown(line.note),
                 "facts": map_facts.site_facts(where.study, where.formats, row, line, is_open=is_open),
             }
         )
@@ -289,7 +289,7 @@ def _suppliers(where: Located, plan: Plan) -> list[Json]:
                 "active": is_signed,
                 "volume": line.volume,
                 "brief": brief,
-                "note": line.note,
+                "note": name_shown(line.note),
                 "facts": map_facts.supplier_facts(where.study, where.formats, row, line, is_signed=is_signed),
             }
         )

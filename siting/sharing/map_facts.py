@@ -10,7 +10,7 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING
 
-from siting.sharing.looks import NO_BREAK, shortened
+from siting.sharing.looks import NO_BREAK, label, shortened
 from siting.study.tables import SiteRuling, SupplierRuling
 
 if TYPE_CHECKING:
@@ -22,6 +22,9 @@ if TYPE_CHECKING:
 
 NAME_LENGTH = 160
 """Characters of a name that are shown; longer ones end in a mark and their full length."""
+
+UNIT_LENGTH = 24
+"""Characters of a unit that are shown."""
 
 SITE_HEADS = (
     "Verdict",
@@ -76,10 +79,16 @@ def name_shown(name: str) -> str:
     return shortened(name, NAME_LENGTH)
 
 
+def unit_shown(study: Study) -> str:
+    """Return the study's unit as typed, cut where it is no unit's length."""
+    return label(study.settings.unit, UNIT_LENGTH)
+
+
 def load_unit(study: Study) -> str:
     """Return the unit that capacities and throughputs are in: the study's, or its `of load` where goods differ."""
     differ = any(good.load != 1.0 for good in study.all_goods)
-    return f"{study.settings.unit} of load" if differ else study.settings.unit
+    unit = unit_shown(study)
+    return f"{unit} of load" if differ else unit
 
 
 def load_text(study: Study, formats: Formats, load: float) -> str:
@@ -125,7 +134,7 @@ def site_facts(study: Study, formats: Formats, row: SiteRow, line: SiteLine, *, 
         formats.money_a_year(line.charge) if line.charge or is_open else "",
         _once(formats, line.one_off),
         "" if row.ruling is SiteRuling.FREE else row.ruling.value,
-        line.note,
+        name_shown(line.note),
     ]
 
 
@@ -143,7 +152,7 @@ def supplier_facts(
         formats.money_a_year(line.charge) if line.charge or is_signed else "",
         _once(formats, line.one_off),
         "" if row.ruling is SupplierRuling.FREE else row.ruling.value,
-        line.note,
+        name_shown(line.note),
     ]
 
 
@@ -178,7 +187,7 @@ def customer_facts(  # noqa: PLR0913 - a customer's cells come from its row, its
     ]
     flows = [flow for part in served.values() for flow in part]
     marginal = [
-        f"{'' if len(study.all_goods) == 1 else name_shown(good) + ' '}{formats.money(money)} per {study.settings.unit}"
+        f"{'' if len(study.all_goods) == 1 else name_shown(good) + ' '}{formats.money(money)} per {unit_shown(study)}"
         for good, money in line.marginal_cost.items()
     ]
     return [

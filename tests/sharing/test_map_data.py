@@ -241,3 +241,10 @@ def test_the_given_map_shows_standings(case: tuple[Study, Plan, Json]) -> None:
         "4 customers that need 340 t of load a year."
     )
     assert facts_of(payload, "site", "Linz")["Capacity"] == "60 to 120 t of load a year"
+
+
+def test_a_unit_of_any_length_leaves_room_for_numbers(case: tuple[Study, Plan, Json]) -> None:
+    """24 characters of a unit are shown whole, of 25 the last two give way to an ellipsis."""
+    settings = case[0].settings
+    units = [replace(case[0], settings=replace(settings, unit="u" * length)) for length in (24, 25)]
+    assert [map_facts.unit_shown(study) for study in units] == ["u" * 24, "u" * 23 + "\N{HORIZONTAL ELLIPSIS}"]
