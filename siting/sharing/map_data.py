@@ -38,6 +38,8 @@ FINGERPRINT_LENGTH = 12
 """Characters of the fingerprint that the map shows."""
 TOWN_NEAR_KM = 12.0
 """A town this near to a site or supplier is not named: the symbol's own label says where it is."""
+TOWN_NEAR_SHARE = 0.02
+"""The same as a share of the box's width, which counts where it is less: within a city, its name stays."""
 KM_PER_DEGREE = 111.2
 
 
@@ -70,12 +72,13 @@ def base_json(where: Located) -> Json | None:
     if where.box is None:
         return None
     behind, box = backdrop(where.box), where.box
+    near_km = min(TOWN_NEAR_KM, TOWN_NEAR_SHARE * box.width * KM_PER_DEGREE)
     rows: list[SiteRow | SupplierRow] = [*where.study.sites, *where.study.suppliers]
     symbols = [spot for row in rows if (spot := where.spot(row))]
     towns = [
         [place.name, place.latitude, place.longitude]
         for place in behind.places
-        if not any(_near(place.latitude, place.longitude, *spot) for spot in symbols)
+        if all(_apart_km(place.latitude, place.longitude, *spot) > near_km for spot in symbols)
     ]
     return {
         "box": [box.south, box.west, box.north, box.east],
@@ -88,9 +91,10 @@ def base_json(where: Located) -> Json | None:
     }
 
 
-def _near(latitude: float, longitude: float, latitude_b: float, longitude_b: float) -> bool:
+def _apart_km(latitude: float, longitude: float, latitude_b: float, longitude_b: float) -> float:
+    """Return roughly how far two spots near each other are apart."""
     east = (longitude - longitude_b) * math.cos(math.radians(latitude))
-    return math.hypot(east, latitude - latitude_b) * KM_PER_DEGREE < TOWN_NEAR_KM
+    return math.hypot(east, latitude - latitude_b) * KM_PER_DEGREE
 
 
 def missing_notes(where: Located) -> list[str]:

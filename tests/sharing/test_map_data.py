@@ -228,6 +228,13 @@ def test_towns_at_a_site_are_not_named_twice(case: tuple[Study, Plan, Json]) -> 
     assert "Bratislava" in towns
 
 
+def test_a_city_is_named_on_a_map_of_itself(case: tuple[Study, Plan, Json]) -> None:
+    """Two sites in Vienna, 8 km from its centre: the map of the city still says Vienna."""
+    north, south = (replace(case[0].sites[1], latitude=at, longitude=16.4) for at in (48.28, 48.13))
+    one_city = replace(case[0], sites=(north, replace(south, site="Other")), sizes=(), suppliers=(), customers=())
+    assert "Vienna" in {town[0] for town in given_json(one_city)["base"]["towns"]}
+
+
 def test_the_given_map_shows_standings(case: tuple[Study, Plan, Json]) -> None:
     """Sites and suppliers by standing, no lanes, and a headline that counts what was given."""
     study, _, _ = case
