@@ -72,6 +72,50 @@ def flows_for(network: Network, decisions: Decisions) -> Amounts | None:
     return _clean(network, held, outbound, direct, inbound, marginal)
 
 
+def unserved_by(network: Network, decisions: Decisions) -> Floats:
+    """
+    Return what decisions leave unserved at least, where no customer is single-sourced.
+
+    Parameters
+    ----------
+    network
+        Without least volumes and service share, which may not be met while demand goes unserved.
+    decisions
+        Which options are open and which suppliers signed.
+
+    Returns
+    -------
+    missing
+        Shape (customers, goods). Units a year; the load unserved is least (a good without load counts its units).
+
+    Raises
+    ------
+    EngineError
+        If HiGHS gives up for a reason of its own.
+    """
+    held = _Held(network, decisions)
+    customers = held.outbound.size + held.direct.size
+    to = np.concatenate([network.outbound.destination[held.outbound], network.direct.destination[held.direct]])
+    good = np.concatenate([network.outbound.good[held.outbound], network.direct.good[held.direct]])
+    missing = network.demand.copy()
+    if not customers:
+        return missing
+    weight = np.where(network.load > 0, network.load, 1.0)
+    gain = np.zeros(held.units.size)
+    gain[:customers] = held.units[:customers] * weight[good]
+    problem = _rows(network, decisions, held).as_problem(-gain / float(gain.max()))
+    lower = np.array(problem.row_lower_)
+    lower[: np.count_nonzero(held.asked)] = 0.0
+    problem.row_lower_ = lower
+    highs = _run(problem)
+    if highs.getModelStatus() != highspy.HighsModelStatus.kOptimal:
+        msg = f"HiGHS could not find what is unserved: {highs.modelStatusToString(highs.getModelStatus())}."
+        raise EngineError(msg)
+    shares = np.array(highs.getSolution().col_value)[:customers]
+    np.subtract.at(missing, (to, good), held.units[:customers] * shares)
+    return missing
+
+
 def price(network: Network, decisions: Decisions, amounts: Amounts) -> float:
     """
     Return what decisions and amounts cost, money a year.
@@ -242,12 +286,7 @@ def _solve(held: _Held, rows: FlowRows) -> tuple[Floats, Floats] | None:
     if not held.units.size:
         return (np.zeros(0), np.zeros(count)) if rows.hold_without_flow(FEASIBLE) else None
     money = money_unit(float(np.abs(held.cost).max(initial=0.0)))
-    highs = QuietHighs()  # type: ignore[no-untyped-call] # highspy types only part of its methods
-    highs.setOptionValue("output_flag", False)  # noqa: FBT003 - highspy takes it by position
-    highs.setOptionValue("primal_feasibility_tolerance", FEASIBLE)
-    highs.setOptionValue("dual_feasibility_tolerance", TINY)
-    highs.passModel(rows.as_problem(held.cost / money))
-    highs.run()
+    highs = _run(rows.as_problem(held.cost / money))
     status = highs.getModelStatus()
     if status in {highspy.HighsModelStatus.kInfeasible, highspy.HighsModelStatus.kUnboundedOrInfeasible}:
         return None
@@ -256,6 +295,16 @@ def _solve(held: _Held, rows: FlowRows) -> tuple[Floats, Floats] | None:
         raise EngineError(msg)
     solution = highs.getSolution()
     return np.array(solution.col_value), np.array(solution.row_dual)[:count] * money
+
+
+def _run(problem: highspy.HighsLp) -> highspy.Highs:
+    highs = QuietHighs()  # type: ignore[no-untyped-call] # highspy types only part of its methods
+    highs.setOptionValue("output_flag", False)  # noqa: FBT003 - highspy takes it by position
+    highs.setOptionValue("primal_feasibility_tolerance", FEASIBLE)
+    highs.setOptionValue("dual_feasibility_tolerance", TINY)
+    highs.passModel(problem)
+    highs.run()
+    return highs
 
 
 def _clean(  # noqa: PLR0913, PLR0917 - the parts of one answer

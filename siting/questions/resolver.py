@@ -1,0 +1,269 @@
+"""
+The machinery that the questions share: a study's plan, and the best plan under each of many restrictions.
+
+One network, one incumbent and one bound serve them all. What the store holds is not computed again; small studies are
+resolved in this process, larger ones on all cores; Stop keeps what is done.
+"""
+
+from __future__ import annotations
+
+import time
+from dataclasses import replace
+from typing import TYPE_CHECKING
+
+from siting.errors import PlanFileError
+from siting.listener import Progress, Silent, Stop
+from siting.network.network import build_network
+from siting.questions.pool import cores, in_processes
+from siting.questions.resolved import Resolved
+from siting.questions.restriction import Restriction
+from siting.questions.searching import Ask, Bench, resolve_one
+from siting.questions.store import Key, MemoryStore
+from siting.solving.solve import solve
+from siting.study.fingerprint import fingerprint
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator, Sequence
+
+    from siting.listener import Listener
+    from siting.plan.plan import Answer
+    from siting.questions.store import Store
+    from siting.study.settings import SolveSettings
+    from siting.study.tables import Study
+
+POOL_START_S = 3.0
+"""Seconds of work from which processes are worth starting: each takes about one to be there."""
+
+
+class Resolver:
+    """
+    Resolves restrictions of one study.
+
+    Parameters
+    ----------
+    study
+        The study asked about.
+    answer
+        Its plan, where there is one already.
+    settings
+        Gap, time limit (of each search) and engine; the study's own where None.
+    store
+        Where answers are kept; in memory where None.
+    listener
+        Told what is being done and how long it may still take.
+    stop
+        Once requested, what is done is kept and nothing more begins.
+
+    Raises
+    ------
+    PlanFileError
+        If the answer is of another study.
+    """
+
+    def __init__(  # noqa: PLR0913 - what a question is asked with, each by name
+        self,
+        study: Study,
+        *,
+        answer: Answer | None = None,
+        settings: SolveSettings | None = None,
+        store: Store | None = None,
+        listener: Listener | None = None,
+        stop: Stop | None = None,
+    ) -> None:
+        self.study = study
+        self.settings = settings or study.settings.solve
+        self.mark = fingerprint(study)
+        self.stop = stop or Stop()
+        self.searches = 0
+        """How many restrictions were resolved and not found in the store."""
+        self._store = MemoryStore() if store is None else store
+        self._listener = listener or Silent()
+        self._began = time.monotonic()
+        self._given = answer
+        self._bench: Bench | None = None
+        self._refuse_another()
+
+    def start(self, task: str) -> None:
+        """Tell the listener what begins."""
+        self._began = time.monotonic()
+        self._listener.start(task)
+
+    def end(self, phase: str) -> None:
+        """Tell the listener that it ended, and how."""
+        self._listener.end(Progress(elapsed_s=self.seconds, phase=phase))
+
+    @property
+    def seconds(self) -> float:
+        """Seconds since the start."""
+        return time.monotonic() - self._began
+
+    def plan(self) -> Resolved:
+        """
+        Return the study's own plan: the one given, the one kept, or a new one.
+
+        Returns
+        -------
+        resolved
+            With its proof; why there is none where it is impossible.
+
+        Raises
+        ------
+        EngineError, AuditError
+            As `solve` raises them.
+        """
+        key = self._key(Restriction(), "best", self.settings.gap)
+        if self._given is not None:
+            resolved = _kept(self._given, self.settings)
+            self._store.put(replace(key, gap=self._given.proof.gap_asked), resolved)
+            return resolved
+        kept = self._found(key)
+        if kept is not None:
+            return kept
+        self.searches += 1
+        heard = _Part(self._listener, self.seconds)
+        answer = solve(self.study, self.settings, listener=heard, stop=self.stop)
+        resolved = _kept(answer, self.settings)
+        self._keep(key, resolved)
+        return resolved
+
+    def resolve(self, asks: Sequence[Ask]) -> Iterator[tuple[Ask, Resolved]]:
+        """
+        Yield each restriction with its answer as it comes: those kept first, then the others in any order.
+
+        Parameters
+        ----------
+        asks
+            What to resolve; what is asked twice is answered once.
+
+        Yields
+        ------
+        ask, resolved
+            Once stopped, those that were not begun are left out, and those under way may be without a proof.
+
+        Raises
+        ------
+        EngineError, AuditError
+            If a solver gives up, or a plan fails its audit.
+        """
+        todo: list[Ask] = []
+        for ask in dict.fromkeys(asks):
+            kept = self._found(self._key(ask.restriction, ask.question, ask.gap))
+            if kept is None:
+                todo.append(ask)
+            else:
+                yield ask, kept
+        for ask, resolved in self._answers(todo):
+            self.searches += 1
+            self._keep(self._key(ask.restriction, ask.question, ask.gap), resolved)
+            yield ask, resolved
+
+    def bench(self) -> Bench:
+        """Return what all restrictions of the study share, its plan as the incumbent."""
+        if self._bench is None:
+            network = build_network(self.study)
+            resolved = self.plan()
+            plan = resolved.plan
+            if plan is None or plan.today is None:
+                msg = "a question needs the plan of the study; there is none to begin from"
+                raise PlanFileError(msg)
+            self._bench = Bench(
+                study=self.study,
+                network=network,
+                settings=self.settings,
+                today=plan.today,
+                incumbent=plan,
+                floor=resolved.bound,
+            )
+        return self._bench
+
+    def _answers(self, todo: list[Ask]) -> Iterator[tuple[Ask, Resolved]]:
+        """Resolve here while that is quick, on all cores once it is not."""
+        if not todo:
+            return
+        bench, left, began = self.bench(), list(todo), time.monotonic()
+        expected = bench.incumbent.proof.seconds if bench.incumbent else 0.0
+        workers = min(cores(), len(left))
+        while left and not self.stop.requested:
+            if workers > 1 and len(left) > 1 and expected * len(left) > POOL_START_S:
+                break
+            ask = left.pop(0)
+            yield ask, resolve_one(bench, ask, self.stop)
+            done = len(todo) - len(left)
+            expected = (time.monotonic() - began) / done
+            self._report(len(todo), done, began, 1)
+        if left and not self.stop.requested:
+            yield from self._on_all_cores(bench, left, len(todo), workers)
+
+    def _on_all_cores(self, bench: Bench, left: list[Ask], total: int, workers: int) -> Iterator[tuple[Ask, Resolved]]:
+        before, began, done = total - len(left), time.monotonic(), 0
+
+        def tick() -> None:
+            self._report(total, before + done, began, workers, here=done)
+
+        for ask, resolved in in_processes(bench, left, workers=workers, stop=self.stop, tick=tick):
+            done += 1
+            yield ask, resolved
+
+    def _report(self, total: int, done: int, began: float, workers: int, *, here: int | None = None) -> None:
+        """Tell how many are done and, once some are, how long the rest may take."""
+        finished = done if here is None else here
+        left = total - done
+        phase = f"{done} of {total} searches done"
+        if finished and left:
+            seconds = (time.monotonic() - began) / finished * left
+            phase += f", about {seconds:,.0f} s left"
+        if workers > 1:
+            phase += f", {workers} at a time"
+        self._listener.update(Progress(elapsed_s=self.seconds, phase=phase))
+
+    def _key(self, restriction: Restriction, question: str, gap: float) -> Key:
+        return Key(fingerprint=self.mark, question=question, parameters=restriction.text, gap=gap)
+
+    def _found(self, key: Key) -> Resolved | None:
+        """Return what the store holds, unless its search was cut short and more time is allowed now."""
+        kept = self._store.get(key)
+        if kept is None or kept.within or kept.time_limit_s >= self.settings.time_limit_s:
+            return kept
+        return None
+
+    def _keep(self, key: Key, resolved: Resolved) -> None:
+        """Keep an answer; one that was cut short by a stop is not, since it can be had better."""
+        if resolved.within or not self.stop.requested:
+            self._store.put(key, resolved)
+
+    def _refuse_another(self) -> None:
+        plan = self._given.plan if self._given else None
+        if plan is not None and plan.fingerprint != self.mark:
+            msg = "the plan is of another study, or of this one before it was changed. Plan the study again."
+            raise PlanFileError(msg)
+
+
+def _kept(answer: Answer, settings: SolveSettings) -> Resolved:
+    """Return a study's answer as it is kept."""
+    return Resolved(
+        proof=answer.proof,
+        plan=answer.plan,
+        time_limit_s=settings.time_limit_s,
+        reasons=answer.reasons,
+        together=answer.together,
+    )
+
+
+class _Part:
+    """A listener for a part that began `by` seconds after the whole."""
+
+    def __init__(self, listener: Listener, by: float) -> None:
+        self._listener = listener
+        self._by = by
+
+    def start(self, task: str) -> None:
+        """Say what the whole does first."""
+        self._listener.update(Progress(elapsed_s=self._by, phase=task))
+
+    def update(self, progress: Progress) -> None:
+        """Pass the update on in the whole's seconds."""
+        self._listener.update(replace(progress, elapsed_s=progress.elapsed_s + self._by))
+
+    def end(self, progress: Progress) -> None:
+        """Pass the last state on; the whole goes on."""
+        self.update(progress)
