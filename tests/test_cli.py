@@ -20,7 +20,7 @@ from siting import cli
 from siting.commands import plan as plan_command
 from siting.plan.contract import schema
 from siting.study.demo import demo_folder
-from tests.builders import TINY, with_cells, without_column, write_folder
+from tests.builders import TINY, TINY_SETTINGS, with_cells, without_column, write_folder
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -229,6 +229,32 @@ def test_an_impossible_study_is_explained(tmp_path: Path, capsys: pytest.Capture
     jsonschema.validate(held, schema())
     assert held["outcome"] == "impossible"
     assert held["cost"] is None
+
+
+@pytest.mark.parametrize(
+    ("settings", "brno", "deggendorf", "first"),
+    [
+        ("one_off_budget = 0\n", "unlimited", "unlimited", "Impossible. Any one of these repairs it."),
+        ("", "40", "5", "Impossible. All of these together must be met."),
+    ],
+)
+def test_several_reasons_are_a_point_each(  # noqa: PLR0917  (what differs, and the two fixtures)
+    settings: str,
+    brno: str,
+    deggendorf: str,
+    first: str,
+    tmp_path: Path,
+    capsys: pytest.CaptureFixture[str],
+) -> None:
+    """Whether any one or all must be met comes first, then one point a reason, in lines of at most 100 columns."""
+    tables = with_cells(TINY, "sites", {2: {"capacity": "50"}, 3: {"capacity": brno}})
+    tables = with_cells(tables, "suppliers", {2: {"capacity": deggendorf}})
+    write_folder(tmp_path / "short", tables, TINY_SETTINGS + settings)
+    assert cli.main(["plan", str(tmp_path / "short"), "--quiet"]) == 3
+    lines = capsys.readouterr().out.splitlines()
+    assert lines[0] == first
+    assert sum(line.startswith("- ") for line in lines) == 2
+    assert max(len(line) for line in lines) <= COLUMNS
 
 
 def test_a_study_stopped_before_any_plan(

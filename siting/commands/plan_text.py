@@ -37,12 +37,20 @@ def answer_text(study: Study, answer: Answer) -> str:
     text
         Headline, verdicts, cost lines, proof, warnings and cautions; without a plan, the reasons.
     """
-    parts = [paragraph(headline(answer, currency=study.settings.currency))]
+    parts = [_reasons(answer) or paragraph(headline(answer, currency=study.settings.currency))]
     if answer.plan is not None:
         parts += _plan_parts(study, answer.plan)
     elif answer.today is not None and answer.today.reason:
         parts.append(paragraph(f"Today: {answer.today.reason}"))
     return "\n\n".join(parts)
+
+
+def _reasons(answer: Answer) -> str:
+    """Return why there can be no plan, a point a reason, where there is more than one; else nothing."""
+    if len(answer.reasons) <= 1:
+        return ""
+    how = "All of these together must be met." if answer.together else "Any one of these repairs it."
+    return f"Impossible. {how}\n" + bullets([reason.sentence for reason in answer.reasons])
 
 
 def _plan_parts(study: Study, plan: Plan) -> Iterator[str]:
