@@ -363,7 +363,7 @@ def test_an_internal_error_is_one_paragraph(
         msg = "wheel came off"
         raise ZeroDivisionError(msg)
 
-    monkeypatch.setattr(plan_command, "_solve_settings", broken)
+    monkeypatch.setattr(plan_command, "solve_settings", broken)
     monkeypatch.delenv("SITING_DEBUG", raising=False)
     assert cli.main(["plan", str(tiny)]) == 1
     err = capsys.readouterr().err
