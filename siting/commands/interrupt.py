@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 Result = TypeVar("Result")
 
 
-def run_stoppable(work: Callable[[], Result], stop: Stop) -> Result:
+def run_stoppable(work: Callable[[], Result], stop: Stop, *, keeping: str = "the best plan so far") -> Result:
     """
     Run `work` beside a Ctrl-C handler that stops it.
 
@@ -32,6 +32,8 @@ def run_stoppable(work: Callable[[], Result], stop: Stop) -> Result:
         The computation; it watches `stop` itself.
     stop
         Requested at the first Ctrl-C. A second one ends the process with the exit code of "stopped before any plan".
+    keeping
+        What is kept at the first, in words.
 
     Returns
     -------
@@ -47,7 +49,7 @@ def run_stoppable(work: Callable[[], Result], stop: Stop) -> Result:
             sys.stderr.flush()
             os._exit(NO_PLAN_YET)
         stop.request()
-        sys.stderr.write("\nStopping with the best plan so far; Ctrl-C again to abort without one.\n")
+        sys.stderr.write(f"\nStopping with {keeping}; Ctrl-C again to abort without it.\n")
 
     before = signal.signal(signal.SIGINT, interrupted)
     try:

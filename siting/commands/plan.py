@@ -2,25 +2,23 @@
 
 from __future__ import annotations
 
-import argparse
-from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from siting.commands.command import FOUND, IMPOSSIBLE, NO_PLAN_YET, add_json, add_study, say, say_json
+from siting.commands.solving import add_solving, solve_settings
 
 if TYPE_CHECKING:
+    import argparse
+
     from siting.commands.command import Commands
     from siting.plan.audit import AuditReport
     from siting.plan.plan import Answer
-    from siting.study.settings import SolveSettings
     from siting.study.tables import Study
 
 
 def add(commands: Commands) -> None:
     """Add the command to the command line."""
-    from siting.study.settings import ENGINES
-
     parser = commands.add_parser(
         "plan",
         help="find the plan: which sites to open, keep or close, which suppliers to sign",
@@ -28,14 +26,9 @@ def add(commands: Commands) -> None:
     )
     add_study(parser)
     parser.add_argument("--out", metavar="DIR", type=Path, help="write the plan folder: plan, study, result tables")
-    parser.add_argument(
-        "--gap", type=_gap, metavar="FRACTION", help="stop within this fraction of the best; 1 %% is 0.01"
-    )
-    parser.add_argument("--time-limit", type=_seconds, metavar="SECONDS", help="stop after this long")
-    parser.add_argument("--engine", choices=ENGINES, help="how to search; auto picks")
+    add_solving(parser)
     parser.add_argument("--mps", metavar="FILE", type=Path, help="also write the exact model as free MPS")
     parser.add_argument("--lp", metavar="FILE", type=Path, help="also write the exact model as an LP file")
-    parser.add_argument("--quiet", action="store_true", help="show no progress")
     add_json(parser)
     parser.set_defaults(run=run)
 
@@ -62,7 +55,7 @@ def run(arguments: argparse.Namespace) -> int:
     if arguments.out:
         check_place(arguments.out)
     _write_model(arguments, study)
-    settings = _solve_settings(arguments, study.settings.solve)
+    settings = solve_settings(arguments, study.settings.solve)
     listener = progress_on_stderr(wanted=not (arguments.json or arguments.quiet))
     stop = Stop()
     answer = run_stoppable(lambda: solve(study, settings, listener=listener, stop=stop), stop)
@@ -73,39 +66,6 @@ def run(arguments: argparse.Namespace) -> int:
     if answer.plan:
         return FOUND
     return IMPOSSIBLE if answer.proof.outcome == "impossible" else NO_PLAN_YET
-
-
-def _gap(text: str) -> float:
-    value = _number(text)
-    if not 0.0 <= value < 1.0:
-        msg = f"a gap is a fraction from 0 to below 1, got {text}; write 1 % as 0.01"
-        raise argparse.ArgumentTypeError(msg)
-    return value
-
-
-def _seconds(text: str) -> float:
-    value = _number(text)
-    if not 0.0 < value < float("inf"):
-        msg = f"a time limit is a number of seconds above 0, got {text}; write two minutes as 120"
-        raise argparse.ArgumentTypeError(msg)
-    return value
-
-
-def _number(text: str) -> float:
-    try:
-        return float(text)
-    except ValueError:
-        msg = f"{text!r} is not a number; write one such as 0.01 or 120"
-        raise argparse.ArgumentTypeError(msg) from None
-
-
-def _solve_settings(arguments: argparse.Namespace, of_study: SolveSettings) -> SolveSettings:
-    return replace(
-        of_study,
-        gap=of_study.gap if arguments.gap is None else arguments.gap,
-        time_limit_s=arguments.time_limit or of_study.time_limit_s,
-        engine=arguments.engine or of_study.engine,
-    )
 
 
 def _write_model(arguments: argparse.Namespace, study: Study) -> None:

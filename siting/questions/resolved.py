@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from siting.plan.plan import Plan, Reason, Unserved  # noqa: TC001 - read at run time when a kept answer is decoded
+from siting.plan.plan import Answer, Plan, Reason, Unserved
 from siting.plan.proof import Outcome, Proof
 
 
@@ -42,3 +42,8 @@ class Resolved:
     def bound(self) -> float | None:
         """Money a year that no plan under the restriction can undercut; None where none was found."""
         return self.proof.bound
+
+    def as_answer(self) -> Answer:
+        """Return it as `solve` returns a study's answer."""
+        today = self.plan.today if self.plan else None
+        return Answer(proof=self.proof, plan=self.plan, today=today, reasons=self.reasons, together=self.together)

@@ -113,16 +113,20 @@ class Resolver:
         """
         key = self._key(Restriction(), "best", self.settings.gap)
         if self._given is not None:
-            resolved = _kept(self._given, self.settings)
-            self._store.put(replace(key, gap=self._given.proof.gap_asked), resolved)
-            return resolved
+            given = self._given.proof
+            self._store.put(replace(key, gap=given.gap_asked), _kept(self._given, self.settings))
         kept = self._found(key)
         if kept is not None:
             return kept
         self.searches += 1
+        rough = self._store.get(replace(key, gap=1.0))
         heard = _Part(self._listener, self.seconds)
-        answer = solve(self.study, self.settings, listener=heard, stop=self.stop)
-        resolved = _kept(answer, self.settings)
+        if rough is not None and rough.plan is not None:
+            heard.start("proving the plan closer")
+            ask = Ask(restriction=Restriction(), gap=self.settings.gap)
+            resolved = resolve_one(self._bench_of(rough), ask, self.stop)
+        else:
+            resolved = _kept(solve(self.study, self.settings, listener=heard, stop=self.stop), self.settings)
         self._keep(key, resolved)
         return resolved
 
@@ -160,21 +164,22 @@ class Resolver:
     def bench(self) -> Bench:
         """Return what all restrictions of the study share, its plan as the incumbent."""
         if self._bench is None:
-            network = build_network(self.study)
-            resolved = self.plan()
-            plan = resolved.plan
-            if plan is None or plan.today is None:
-                msg = "a question needs the plan of the study; there is none to begin from"
-                raise PlanFileError(msg)
-            self._bench = Bench(
-                study=self.study,
-                network=network,
-                settings=self.settings,
-                today=plan.today,
-                incumbent=plan,
-                floor=resolved.bound,
-            )
+            self._bench = self._bench_of(self.plan())
         return self._bench
+
+    def _bench_of(self, resolved: Resolved) -> Bench:
+        plan = resolved.plan
+        if plan is None or plan.today is None:
+            msg = "a question needs the plan of the study, and there is none to begin from. Plan the study first."
+            raise PlanFileError(msg)
+        return Bench(
+            study=self.study,
+            network=build_network(self.study),
+            settings=self.settings,
+            today=plan.today,
+            incumbent=plan,
+            floor=resolved.bound,
+        )
 
     def _answers(self, todo: list[Ask]) -> Iterator[tuple[Ask, Resolved]]:
         """Resolve here while that is quick, on all cores once it is not."""

@@ -34,13 +34,19 @@ class Store(Protocol):
 
     def get(self, key: Key) -> Resolved | None:
         """
-        Return the answer kept under the key's fingerprint, question and parameters, asked for at most at its gap.
+        Return an answer kept under the key's fingerprint, question and parameters that is good enough for its gap.
 
-        Of several the one with the smallest gap asked; None where there is none.
+        As `serves` says; of several the one with the smallest gap asked. None where there is none.
         """
 
     def put(self, key: Key, answer: Resolved) -> None:
         """Keep an answer under its key, in place of what the key held before."""
+
+
+def serves(answer: Resolved, asked: float, gap: float) -> bool:
+    """Return whether an answer asked for at one gap answers another: asked no wider, found no wider, or impossible."""
+    found = answer.proof.gap
+    return asked <= gap or answer.impossible or (found is not None and found <= gap)
 
 
 class MemoryStore:
@@ -51,11 +57,11 @@ class MemoryStore:
         self._kept: dict[tuple[str, str, str], dict[float, Resolved]] = {}
 
     def get(self, key: Key) -> Resolved | None:
-        """Return the answer asked for at the smallest gap, if that is at most the gap of the key."""
+        """Return the answer asked for at the smallest gap that serves the key."""
         with self._lock:
             by_gap = self._kept.get((key.fingerprint, key.question, key.parameters), {})
-            smallest = min(by_gap, default=None)
-            return None if smallest is None or smallest > key.gap else by_gap[smallest]
+            fit = [asked for asked, answer in by_gap.items() if serves(answer, asked, key.gap)]
+            return by_gap[min(fit)] if fit else None
 
     def put(self, key: Key, answer: Resolved) -> None:
         """Keep an answer under its key."""
