@@ -5,13 +5,13 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 import pulp
-from siting.solving.solve import solve
 
 from siting.network.network import build_network
 from siting.plan.audit import audit
 from siting.plan.plan import SiteVerdict, SupplierVerdict
 from siting.plan.proof import Outcome
 from siting.solving.model import build_model
+from siting.solving.solve import solve
 from siting.study.settings import SolveSettings
 
 if TYPE_CHECKING:

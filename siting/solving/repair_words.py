@@ -120,8 +120,8 @@ class Words:
             customer = self._network.customers.index(place[0])
             alone = alone and customer not in reached
             km = _km_to(customer, far)
-            if not km.size:  # what is nearest is barred as well
-                km = _km_to(customer, build_network(lifted(self._study, {Requirement.REACH, Requirement.BARS})))
+            if not km.size:  # what is nearest is barred, or too small for the customer, as well
+                km = _km_to(customer, build_network(lifted(self._study, set(Requirement))))
             reach = self._study.customers[customer].reach_km or 0.0
             listed.append(f"{place[0]} (reach {shown(reach)} km, nearest {shown(float(np.nanmin(km)))} km)")
         origin = "supplier" if not self._study.sites else "site or supplier" if len(far.direct) else "site"
