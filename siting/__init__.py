@@ -17,6 +17,11 @@ if TYPE_CHECKING:
     from siting.plan.folder import read_plan_folder, write_plan_folder
     from siting.plan.plan import Answer, Plan, Today
     from siting.plan.proof import Outcome, Proof
+    from siting.questions.closing import closing
+    from siting.questions.closing_result import ClosingTest
+    from siting.questions.headroom import headroom
+    from siting.questions.headroom_result import Headroom
+    from siting.questions.store import MemoryStore, Store
     from siting.sharing.map import MapPage, draw_map, write_map
     from siting.solving.solve import solve
     from siting.study.demo import demo_folder
@@ -31,10 +36,13 @@ if TYPE_CHECKING:
 __all__ = [
     "Answer",
     "AuditError",
+    "ClosingTest",
     "EngineError",
     "Fault",
+    "Headroom",
     "Listener",
     "MapPage",
+    "MemoryStore",
     "Network",
     "Outcome",
     "Plan",
@@ -47,15 +55,18 @@ __all__ = [
     "SitingError",
     "SolveSettings",
     "Stop",
+    "Store",
     "Study",
     "StudyError",
     "Today",
     "__version__",
     "audit",
     "build_network",
+    "closing",
     "demo_folder",
     "draw_map",
     "fingerprint",
+    "headroom",
     "read_plan_folder",
     "read_study",
     "solve",
@@ -82,6 +93,11 @@ _HOMES = {
     "siting.plan.plan": ("Answer", "Plan", "Today"),
     "siting.plan.proof": ("Outcome", "Proof"),
     "siting.sharing.map": ("MapPage", "draw_map", "write_map"),
+    "siting.questions.closing": ("closing",),
+    "siting.questions.closing_result": ("ClosingTest",),
+    "siting.questions.headroom": ("headroom",),
+    "siting.questions.headroom_result": ("Headroom",),
+    "siting.questions.store": ("MemoryStore", "Store"),
     "siting.solving.solve": ("solve",),
     "siting.study.demo": ("demo_folder",),
     "siting.study.fingerprint": ("fingerprint",),

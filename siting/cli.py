@@ -7,14 +7,14 @@ import os
 import sys
 from typing import TYPE_CHECKING
 
-from siting.commands import audit, browse, check, plan
+from siting.commands import audit, browse, check, closing, headroom, plan
 from siting.commands.command import BAD_INPUT, FOUND, NO_PLAN_YET
 from siting.errors import SitingError
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-COMMANDS = (check, plan, audit, browse)
+COMMANDS = (check, plan, closing, headroom, audit, browse)
 """In the order of the help."""
 
 EXIT_CODES = (

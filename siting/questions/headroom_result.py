@@ -107,7 +107,7 @@ class Headroom:
     lines: tuple[HeadroomLine, ...]
     """In the plan first, the smallest headroom first; then outside, the smallest fall first."""
     budgeted: bool
-    """True where the study has a one-off budget, which a higher opening charge may break before the headroom is used."""
+    """True where the study has a one-off budget, which a higher opening charge may break before that."""
     why_none: tuple[str, ...] = ()
     """Where there is no plan to measure from: why."""
     seconds: float = 0.0
