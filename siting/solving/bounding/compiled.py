@@ -48,10 +48,10 @@ _FOLDER = cache_folder()
 def compiled(function: F) -> F:
     """Return `function` compiled on its first call, without the interpreter's lock, kept in the user's cache."""
     if _FOLDER is None:
-        return numba.njit(nogil=True)(function)  # type: ignore[no-any-return]
+        return numba.njit(nogil=True, error_model="numpy")(function)  # type: ignore[no-any-return]
     before = numba.config.CACHE_DIR
     numba.config.CACHE_DIR = str(_FOLDER)
     try:
-        return numba.njit(nogil=True, cache=True)(function)  # type: ignore[no-any-return]
+        return numba.njit(nogil=True, cache=True, error_model="numpy")(function)  # type: ignore[no-any-return]
     finally:
         numba.config.CACHE_DIR = before

@@ -20,17 +20,20 @@ Operational Research 50(3): 280-297; Barahona & Anbil (2000), Mathematical Progr
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
-
 import numpy as np
 
 from siting.solving.bounding.compiled import compiled
+from siting.solving.bounding.knapsack import FREE, OPEN, SHUT, fill
+from siting.solving.bounding.master import price_cover, whole_cover
 
-if TYPE_CHECKING:
-    from siting.arrays import Floats
-
-FREE, OPEN, SHUT = 0, 1, -1
-"""State of a site in a node of the search."""
+BEST, FACTOR, MU, STEPS, IDLE = 0, 1, 2, 3, 4
+"""Places in `numbers`: best bound, step factor, cover multiplier, steps made, steps since the bound last rose."""
+DEFLECTION = 0.7
+"""Share of the last direction that the next one keeps."""
+AVERAGING = 0.1
+"""Weight of the newest solution in the averaged one."""
+LEAST_FACTOR = 1e-4
+"""Step factor at which steps have become too short to help."""
 
 
 @compiled
@@ -54,66 +57,6 @@ def gather_margins(v, row_start, lane_site, lane_cost, demand, state, site_start
             load[k] = amount
             row[k] = r
             held[site] += 1
-
-
-@compiled
-def _swap(margin, load, row, a, b):  # type: ignore[no-untyped-def]
-    gain, amount, r = margin[a], load[a], row[a]
-    margin[a], load[a], row[a] = margin[b], load[b], row[b]
-    margin[b], load[b], row[b] = gain, amount, r
-
-
-@compiled
-def fill(margin, load, row, begin, end, room, guess):  # type: ignore[no-untyped-def]
-    """
-    Fill a continuous knapsack of size `room` with the lanes in `begin:end`, whose loads exceed it.
-
-    Reorders the lanes so that `begin:k` are taken whole and k in part. A quickselect by weight, linear on average;
-    the first pivots lie closely around `guess`, the margin at which the knapsack was full last time.
-
-    Returns
-    -------
-    k, rest
-        First lane not taken whole, and the load taken of it.
-    """
-    a, b = begin, end
-    turn = 0
-    while b > a:
-        if turn < 2 and guess > 0.0:
-            pivot = guess * (1.02 if turn == 0 else 0.98)
-        else:
-            x, y, z = margin[a], margin[(a + b) >> 1], margin[b - 1]
-            pivot = max(min(x, y), min(max(x, y), z))
-        turn += 1
-        above, k, below = a, a, b
-        heavy, equal = 0.0, 0.0
-        while k < below:
-            gain = margin[k]
-            if gain > pivot:
-                heavy += load[k]
-                if above < k:
-                    _swap(margin, load, row, k, above)
-                above += 1
-                k += 1
-            elif gain < pivot:
-                below -= 1
-                _swap(margin, load, row, k, below)
-            else:
-                equal += load[k]
-                k += 1
-        if heavy > room:
-            b = above
-        elif heavy + equal > room:
-            room -= heavy
-            for j in range(above, below):
-                if load[j] > room:
-                    return j, room
-                room -= load[j]
-            return below, 0.0
-        else:
-            room -= heavy + equal
-            a = below
-    return a, 0.0
 
 
 @compiled
@@ -152,170 +95,13 @@ def price_options(charge, capacity, site_option, state, site_start, held, margin
 
 
 @compiled
-def pick_options(cost, capacity, site_option, state, fewest, most, mu, reduced, pick):  # type: ignore[no-untyped-def]
-    """
-    Pick the options that are cheapest when each unit of capacity earns `mu`.
-
-    Returns
-    -------
-    value, total, rate
-        Sum of cost - mu x capacity picked, capacity picked, and the price of the count row (0 where it is slack).
-    """
-    value, total = 0.0, 0.0
-    held, below = 0, 0
-    for site in range(state.shape[0]):
-        pick[site] = -1
-        if state[site] == SHUT:
-            continue
-        least = np.inf
-        for option in range(site_option[site], site_option[site + 1]):
-            price = cost[option] - mu * capacity[option]
-            if price < least:
-                least = price
-                pick[site] = option
-        reduced[site] = least
-        if state[site] == OPEN:
-            held += 1
-        elif least < 0.0:
-            below += 1
-    free = reduced[state == FREE]
-    wanted = min(min(max(held + below, fewest), most) - held, free.shape[0])
-    rate, ties = 0.0, 0
-    if wanted != below:
-        if wanted > 0:
-            rate = np.partition(free, wanted - 1)[wanted - 1]
-            ties = wanted - np.sum(free < rate)
-        else:
-            rate = np.min(free)
-    for site in range(state.shape[0]):
-        if state[site] == FREE:
-            price = reduced[site]
-            if price == rate and ties > 0 and wanted != below:
-                ties -= 1
-            elif not price < rate:
-                pick[site] = -1
-        if pick[site] >= 0:
-            value += reduced[site]
-            total += capacity[pick[site]]
-    return value, total, rate
-
-
-@compiled
-def _fill_cover(cost, capacity, site_option, state, need, fewest, most, reduced, pick, pick_more):  # type: ignore[no-untyped-def]
-    """
-    Solve the covering problem as a continuous knapsack where each site has one option and the counts do not bind.
-
-    Returns
-    -------
-    solved, value, mu, share
-        False where the counts bind (or a site has several options); else as `price_cover`.
-    """
-    sites = state.shape[0]
-    if site_option[sites] != sites:
-        return False, 0.0, 0.0, 1.0
-    value, room, count, listed = 0.0, need, 0, 0
-    ratio, order = np.empty(sites), np.empty(sites, np.int32)
-    for site in range(sites):
-        pick[site] = -1
-        if state[site] == SHUT:
-            continue
-        if state[site] == OPEN or cost[site] < 0.0:
-            pick[site] = site
-            value += cost[site]
-            room -= capacity[site]
-            count += 1
-        else:
-            ratio[listed] = -cost[site] / capacity[site]
-            order[listed] = site
-            listed += 1
-    mu, share, last = 0.0, 1.0, -1
-    if room > 0.0:
-        size = np.empty(listed)
-        for k in range(listed):
-            size[k] = capacity[order[k]]
-        k, part = fill(ratio, size, order, 0, listed, room, 0.0)
-        if k >= listed:
-            return False, 0.0, 0.0, 1.0
-        for j in range(k):
-            site = order[j]
-            pick[site] = site
-            value += cost[site]
-            count += 1
-        last = order[k]
-        share = 1.0 - part / capacity[last]
-        mu = cost[last] / capacity[last]
-        value += (1.0 - share) * cost[last]
-    if count + 1.0 - share < fewest or count + 1.0 - share > most:
-        return False, 0.0, 0.0, 1.0
-    for site in range(sites):
-        pick_more[site] = pick[site]
-        reduced[site] = cost[site] - mu * capacity[site]
-    if last >= 0:
-        pick_more[last] = last
-    return True, value, mu, share
-
-
-@compiled
-def price_cover(cost, capacity, site_option, state, need, fewest, most, mu, reduced, pick, pick_more):  # type: ignore[no-untyped-def]
-    """
-    Solve the continuous covering problem of the options by its one multiplier `mu` (money per load of capacity).
-
-    The value is concave and piecewise linear in `mu`: two picks, one with too little capacity and one with enough,
-    are moved to where their lines meet until the meeting point is the top. `pick` and `pick_more` are left as the two
-    picks whose mixture is the continuous optimum, `reduced` as the options' reduced costs at `mu`.
-
-    Returns
-    -------
-    value, mu, rate, share
-        Minimum, the two multipliers, and the weight of `pick` in the mixture.
-    """
-    plain, value, mu, share = _fill_cover(cost, capacity, site_option, state, need, fewest, most, reduced, pick, pick_more)
-    if plain:
-        return value, mu, 0.0, share
-    value, total, rate = pick_options(cost, capacity, site_option, state, fewest, most, 0.0, reduced, pick)
-    if total >= need:
-        pick_more[:] = pick
-        return value, 0.0, rate, 1.0
-    low, low_value, low_slope = 0.0, value, need - total
-    high = mu if mu > 0.0 else 1e-3
-    while True:
-        value, total, rate = pick_options(cost, capacity, site_option, state, fewest, most, high, reduced, pick_more)
-        value += high * need
-        if total >= need or high > 1e30:
-            break
-        low, low_value, low_slope = high, value, need - total
-        pick[:] = pick_more
-        high *= 2.0
-    high_value, high_slope = value, need - total
-    other = np.empty_like(pick)
-    for _ in range(60):
-        if low_slope <= high_slope:
-            break
-        mu = (high_value - high_slope * high - low_value + low_slope * low) / (low_slope - high_slope)
-        top = low_value + low_slope * (mu - low)
-        value, total, rate = pick_options(cost, capacity, site_option, state, fewest, most, mu, reduced, other)
-        value += mu * need
-        if value >= top - 1e-12 * abs(top):
-            break
-        if total >= need:
-            high, high_value, high_slope = mu, value, need - total
-            pick_more[:] = other
-        else:
-            low, low_value, low_slope = mu, value, need - total
-            pick[:] = other
-    value, total, rate = pick_options(cost, capacity, site_option, state, fewest, most, mu, reduced, other)
-    share = -high_slope / (low_slope - high_slope) if low_slope > high_slope else 0.0
-    return value + mu * need, mu, rate, share
-
-
-@compiled
 def cover_rows(weight, pick, site_start, taken, rest, load, row, covered, used):  # type: ignore[no-untyped-def]
-    """Add `weight` times what the picked options serve to `covered` (rows,) and times 1 to `used` (sites,)."""
+    """Add `weight` times what the picked options serve to `covered` (rows,) and times 1 to `used` (options,)."""
     for site in range(pick.shape[0]):
         option = pick[site]
         if option < 0:
             continue
-        used[site] += weight
+        used[option] += weight
         end = taken[option]
         for k in range(site_start[site], end):
             covered[row[k]] += weight * load[k]
@@ -344,68 +130,77 @@ def sift(reduced, rate, state, slack):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def ascend(problem, space, state, fewest, most, v, mean, used, numbers, steps, target, cutoff, alpha, patience, fix):  # type: ignore[no-untyped-def]
-    """
-    Raise the bound by `steps` deflected subgradient steps from multipliers `v` (rows,), which become the best seen.
+def _follow(numbers, v, way, best_v, covered, demand, target, value):  # type: ignore[no-untyped-def]
+    """Make the subgradient step: `way` is the deflected direction; return False when there is nowhere to go."""
+    norm = 0.0
+    for r in range(v.shape[0]):
+        way[r] = demand[r] - covered[r] + DEFLECTION * way[r]
+        norm += way[r] * way[r] / demand[r]
+    if norm <= 0.0 or numbers[FACTOR] < LEAST_FACTOR:
+        return False
+    size = numbers[FACTOR] * (target - value) / norm
+    for r in range(v.shape[0]):
+        v[r] += size * way[r] / demand[r]
+    return True
 
-    Rows are weighted by one over their demand, so that steps do not depend on the unit of amount. `mean` (rows,) and
-    `used` (sites,) become what the averaged solution serves and opens. Sites are fixed in `state` on the way when
-    `fix`; steps end early when the bound reaches `cutoff`. `numbers` = [best bound, step factor, mu, steps made].
 
+@compiled
+def ascend(problem, space, state, charge, fewest, most, numbers, steps, target, cutoff, patience, fix, whole):  # type: ignore[no-untyped-def]
     """
-    row_start, lane_site, lane_cost, site_option, charge, capacity, demand = problem
-    site_start, held, margin, load, row, cost, taken, rest, edge, reduced, pick, pick_more = space[:12]
-    covered, opened, way, best_v = space[12:]
+    Raise the bound by at most `steps` deflected subgradient steps; return True when there is no more to gain.
+
+    `space` holds the multipliers and `numbers` the rest of the state, so that the steps may be made in portions. Rows
+    are weighted by one over their demand, so that steps do not depend on the unit of amount. Sites are fixed in `state`
+    on the way when `fix`; steps end when the bound reaches `cutoff`. `charge` is infinite for options not allowed;
+    `whole` is how many items the 0-1 covering problem may try in each step (0: its continuous relaxation).
+    """
+    row_start, lane_site, lane_cost, site_option, _, capacity, demand = problem
+    site_start, held, margin, load, row, cost, taken, rest, edge, reduced, pick, pick_more, pick_whole = space[:13]
+    covered, opened, way, v, best_v, used = space[13:]
     need = np.sum(demand) * (1.0 - 1e-12)
-    best, factor, mu = numbers[0], numbers[1], numbers[2]
-    best_v[:] = v
-    way[:] = 0.0
-    bad = 0
-    made = 0
-    first = True
-    while made < steps:
-        made += 1
+    for _ in range(steps):
         gather_margins(v, row_start, lane_site, lane_cost, demand, state, site_start, held, margin, load, row)
         price_options(charge, capacity, site_option, state, site_start, held, margin, load, row, cost, taken, rest, edge)
-        bound, mu, rate, share = price_cover(
-            cost, capacity, site_option, state, need, fewest, most, mu, reduced, pick, pick_more
+        bound, numbers[MU], rate, share = price_cover(
+            cost, capacity, site_option, state, need, fewest, most, numbers[MU], reduced, pick, pick_more
         )
+        worth = 0.0
         for r in range(v.shape[0]):
-            bound += v[r] * demand[r]
-        if bound > best:
-            if bound > best + 1e-6 * abs(bound):
-                bad = 0
-            best = bound
-            best_v[:] = v
-            if best >= cutoff:
-                break
-        else:
-            bad += 1
-        if fix and bound > best - 0.5 * (cutoff - best):
+            worth += v[r] * demand[r]
+        bound += worth
+        numbers[STEPS] += 1.0
+        if fix and bound > numbers[BEST] - 0.5 * (cutoff - numbers[BEST]):
             sift(reduced, rate, state, cutoff - bound)
+        if whole > 0 and share < 1.0 and bound < cutoff:
+            count = fewest if rate > 0.0 else most
+            slack = 0.01 * (cutoff - bound)
+            exact, found = whole_cover(cost, capacity, state, need, rate, count, slack, whole, pick_whole)
+            if exact + worth > bound and found - exact <= 0.1 * (cutoff - bound):
+                pick[:] = pick_whole
+                share = 1.0
+            bound = max(bound, exact + worth)
+        if bound > numbers[BEST]:
+            if bound > numbers[BEST] + 1e-6 * abs(bound):
+                numbers[IDLE] = 0.0
+            numbers[BEST] = bound
+            best_v[:] = v
+            if bound >= cutoff:
+                return True
+        else:
+            numbers[IDLE] += 1.0
         covered[:] = 0.0
         opened[:] = 0.0
         cover_rows(share, pick, site_start, taken, rest, load, row, covered, opened)
         if share < 1.0:
             cover_rows(1.0 - share, pick_more, site_start, taken, rest, load, row, covered, opened)
-        weight = 1.0 if first else alpha
-        first = False
-        for site in range(used.shape[0]):
-            used[site] += weight * (opened[site] - used[site])
-        if bad >= patience:
-            factor *= 0.5
-            bad = 0
+        weight = 1.0 if numbers[STEPS] == 1.0 else AVERAGING
+        for option in range(used.shape[0]):
+            used[option] += weight * (opened[option] - used[option])
+        if numbers[IDLE] >= patience:
+            numbers[FACTOR] *= 0.5
+            numbers[IDLE] = 0.0
             v[:] = best_v
-            bound = best
-        norm = 0.0
-        for r in range(v.shape[0]):
-            mean[r] += weight * (covered[r] - mean[r])
-            way[r] = demand[r] - covered[r] + 0.7 * way[r]
-            norm += way[r] * way[r] / demand[r]
-        if norm <= 1e-24 * need or factor < 1e-4:
-            break
-        size = factor * (target - bound) / norm
-        for r in range(v.shape[0]):
-            v[r] += size * way[r] / demand[r]
-    v[:] = best_v
-    numbers[0], numbers[1], numbers[2], numbers[3] = best, factor, mu, made
+            bound = numbers[BEST]
+        if not _follow(numbers, v, way, best_v, covered, demand, target, bound):
+            return True
+    return False

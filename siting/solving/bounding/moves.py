@@ -16,7 +16,7 @@ from __future__ import annotations
 import numpy as np
 
 from siting.solving.bounding.compiled import compiled
-from siting.solving.bounding.kernels import fill
+from siting.solving.bounding.knapsack import fill
 from siting.solving.bounding.simplex import (
     COST,
     DEPTH,
@@ -176,7 +176,7 @@ def descend(problem, flows, saved, chosen, fixed, space, fewest, most, far, tole
     """
     Try at most `trials` moves, take each that saves; return True at a set that no single move improves.
 
-    `numbers` = [cost, moves of the present list tried so far, row to price next]; cost must be that of `flows`.
+    `numbers` = [cost of `flows`, moves of the present list tried so far].
     """
     row_start, lane_site, lane_cost, site_option, charge, capacity, demand = problem
     tree, value, limits, at_top, root_cost, is_open, turn = flows

@@ -30,6 +30,8 @@ FLOW, COST, PRICE = 0, 1, 2
 NONE = -1
 LEAF = -2
 """Depth of a row that one site serves alone."""
+BLOCK = 12
+"""Rows priced before the best lane among them enters: measured best from 100 to 10,000 rows."""
 
 
 @compiled
@@ -222,7 +224,7 @@ def improve(tree, value, capacity, at_top, root_cost, is_open, row_start, lane_s
     sites = is_open.shape[0]
     root = sites + 1
     rows = row_start.shape[0] - 1
-    block = max(24, int(np.sqrt(rows)))
+    block = BLOCK
     r = state[0]
     clean = 0
     made = 0
