@@ -34,7 +34,7 @@ def gather_limits(network: Network, most: Tightest, places: Places) -> Rows:
     -------
     rows
         Demand first, one for each customer and good that is needed (single-sourced: one a customer), then balance,
-        sizes, capacities, least volumes, service, counts, budget and rules.
+        sizes, capacities, least volumes, service, budget and rules; last the number of sites and of suppliers.
     """
     made = Gathering(places.count)
     _demand(made, network, places)
@@ -43,9 +43,10 @@ def gather_limits(network: Network, most: Tightest, places: Places) -> Rows:
     _sites(made, network, most, places)
     _suppliers(made, network, most, places)
     _service(made, network, most, places)
-    _money_and_counts(made, network, places)
+    _budget(made, network, places)
     for rule in network.rules:
         _rule(made, network, places, rule)
+    _counts(made, network, places)
     return made.rows(scaled=True)
 
 
@@ -138,11 +139,7 @@ def _service(made: Gathering, network: Network, most: Tightest, places: Places) 
     made.add(np.zeros(column.size), column, np.concatenate(weights), np.array([asked]), np.array([math.inf]))
 
 
-def _money_and_counts(made: Gathering, network: Network, places: Places) -> None:
-    ones = np.ones(places.option.size)
-    if network.fewest_sites > 0 or network.most_sites < len(network.sites):
-        fewest, most = np.array([float(network.fewest_sites)]), np.array([float(network.most_sites)])
-        made.add(0 * places.option, places.option, ones, fewest, most)
+def _budget(made: Gathering, network: Network, places: Places) -> None:
     if math.isfinite(network.one_off_budget):
         site = network.option_one_off - network.site_closing_one_off[network.option_site]
         supplier = network.supplier_one_off - network.supplier_dropping_one_off
@@ -150,6 +147,14 @@ def _money_and_counts(made: Gathering, network: Network, places: Places) -> None
         column = np.concatenate([places.option, places.supplier])
         left = np.array([network.one_off_budget - spent])
         made.add(0 * column, column, np.concatenate([site, supplier]), np.array([-math.inf]), left)
+
+
+def _counts(made: Gathering, network: Network, places: Places) -> None:
+    """Add the number of open sites and the number of signed suppliers, also where they are free: a search splits them."""
+    fewest, most = np.array([float(network.fewest_sites)]), np.array([float(network.most_sites)])
+    made.add(0 * places.option, places.option, np.ones(places.option.size), fewest, most)
+    all_of_them = np.array([float(places.supplier.size)])
+    made.add(0 * places.supplier, places.supplier, np.ones(places.supplier.size), np.zeros(1), all_of_them)
 
 
 def _rule(made: Gathering, network: Network, places: Places, rule: NetworkRule) -> None:

@@ -23,7 +23,7 @@ from siting.solving.tightest import holds, in_units, tightest
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
-    from siting.arrays import Flags, Floats, Positions
+    from siting.arrays import Floats, Positions
     from siting.network.network import Network
     from siting.solving.tightest import Tightest
 
