@@ -20,10 +20,12 @@ from siting.study.check_settings import check_settings
 from siting.study.columns import TABLES
 from siting.study.draft import KEYS, Draft
 from siting.study.gathering import Gathering
+from siting.study.numbers import with_plain_numbers
 from siting.study.places import check_places
 from siting.study.tables import Study
 
 if TYPE_CHECKING:
+    from siting.study.check_lanes import ParsedLanes
     from siting.study.raw import RawStudy
 
 
@@ -50,7 +52,7 @@ class Checked:
         return self.study
 
 
-def check_raw(raw: RawStudy) -> Checked:
+def check_raw(raw: RawStudy, lanes: ParsedLanes | None = None) -> Checked:
     """
     Check a study as read from files, a workbook or a page.
 
@@ -58,12 +60,15 @@ def check_raw(raw: RawStudy) -> Checked:
     ----------
     raw
         Tables of text and loose settings.
+    lanes
+        Lanes that were checked against the names of the other tables already; taken from ``raw`` where None.
 
     Returns
     -------
     checked
         The frozen study, or every fault; and the warnings either way.
     """
+    raw = with_plain_numbers(raw)
     gathering = Gathering()
     gathering.extend(raw.faults, raw.warnings)
     settings = check_settings(raw, gathering)
@@ -80,12 +85,13 @@ def check_raw(raw: RawStudy) -> Checked:
     check_links(draft)
     check_amounts(draft)
     check_rules(draft)
-    known = Known(**draft.names) if draft.is_sound(*KEYS) else None
-    parsed = parse_lanes(raw.tables.get("lanes"), known, gathering)
-    check_places(draft, parsed)
+    if lanes is None:
+        known = Known(**draft.names) if draft.is_sound(*KEYS) else None
+        lanes = parse_lanes(raw.tables.get("lanes"), known, gathering)
+    check_places(draft, lanes)
     study = Study(
         settings=settings,
-        lanes=parsed.table,
+        lanes=lanes.table,
         columns={name: table.header for name, table in raw.tables.items()},
         warnings=gathering.warnings(),
         **{name: table.rows for name, table in draft.tables.items()},

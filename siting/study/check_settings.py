@@ -10,7 +10,7 @@ from siting.study.check_rows import refuse
 from siting.study.columns import SETTINGS, SOLVE_SETTINGS, Column, Kind
 from siting.study.currency import check_currency
 from siting.study.gathering import did_you_mean
-from siting.study.parse import Refusal, in_range, parse_cell
+from siting.study.parse import Refusal, in_range, parse_cell, per_cent_fraction
 from siting.study.raw import cell_text
 from siting.study.settings import Settings, SolveSettings
 
@@ -112,11 +112,15 @@ def _checked(
                 repair = did_you_mean(name, known, "Delete it")
             gathering.fault(place, None, f"{prefix}{name}", _shown(value), "unknown setting", repair)
             continue
-        checked = _value(column, value)
+        fraction = per_cent_fraction(value) if column.fraction and isinstance(value, str) else None
+        checked = _value(column, value if fraction is None else fraction)
         if isinstance(checked, Refusal):
             refuse(gathering, place, None, f"{prefix}{name}", _shown(value), checked)
         else:
             values[name] = checked
+            if fraction is not None:
+                wrong = f"read as {number_text(fraction)}, since it has a percent sign"
+                gathering.warn(place, None, f"{prefix}{name}", str(value), wrong, f"Write {number_text(fraction)}")
     for column in columns:
         if column.required and column.name not in given:
             gathering.fault(place, None, column.name, "", "the setting is missing", f"Add it: {_example(column)}")
@@ -145,6 +149,13 @@ def _value(column: Column, value: object) -> object:
 def _number(column: Column, value: object) -> object:
     if isinstance(value, str) and is_plain_number(value):
         return Refusal("a text, not a number", f"Write {value} without quotes")
+    if isinstance(value, str) and value.strip():
+        refused = parse_cell(column, value)
+        return (
+            refused
+            if isinstance(refused, Refusal)
+            else Refusal("not a number", f"Write a number {_suggestion(column)}")
+        )
     if isinstance(value, bool) or not isinstance(value, int | float):
         return Refusal("not a number", f"Write a number {_suggestion(column)}")
     try:

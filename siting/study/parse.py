@@ -20,11 +20,20 @@ _THOUSANDS_COMMA = re.compile(r"-?[0-9]{1,3}(,[0-9]{3})+(\.[0-9]+)?")
 _THOUSANDS_OTHER = re.compile(r"-?[0-9]{1,3}(['\u2019\s][0-9]{3})+([.,][0-9]+)?")
 _THOUSANDS_POINT = re.compile(r"-?[0-9]{1,3}(\.[0-9]{3})+,[0-9]+|-?[0-9]{1,3}(\.[0-9]{3}){2,}")
 _DECIMAL_COMMA = re.compile(r"-?[0-9]+,[0-9]+")
+_DOUBTFUL = re.compile(r"-?[1-9][0-9]{0,2}[.,][0-9]{3}")
 _PER_CENT = re.compile(r"(-?[0-9]+(?:[.,][0-9]+)?)\s*%")
 _CURRENCY = re.compile(r"[^\W\d_]{3}\s?-?[0-9].*|.*[0-9]\s?[^\W\d_]{3}|.*[€$£¥].*")
 _CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f]")
 _UNSEEN = frozenset({"Cc", "Zl", "Zp", "Zs"})
 """Unicode categories of control characters, of separators of lines and paragraphs, and of blanks."""
+
+_MONTHS = r"(?:jan|feb|mar|apr|may|jun|jul|aug|sep|oct|nov|dec)[a-z]*"
+_DATE = re.compile(
+    rf"[0-9]{{4}}-[0-9]{{1,2}}-[0-9]{{1,2}}(?:[T ].*)?|[0-9]{{1,2}}[./-][0-9]{{1,2}}[./-](?:[0-9]{{2}}|[0-9]{{4}})"
+    rf"|[0-9]{{1,2}}[-. ]+{_MONTHS}(?:[-. ]+[0-9]{{2,4}})?|{_MONTHS}[-. ]+[0-9]{{1,4}}|[0-9]{{1,2}}:[0-9]{{2}}(?::[0-9.]+)?",
+    re.IGNORECASE,
+)
+"""Dates and times of day, as text or as a sheet's date cells become text."""
 
 _NOT_FINITE = frozenset({"nan", "inf", "-inf", "+inf", "infinity", "-infinity", "+infinity"})
 
@@ -151,7 +160,7 @@ def parse_cell(column: Column, text: str) -> object:
 
 
 def _not_a_number(column: Column, text: str) -> Refusal:
-    for refusal in (_separated(text), _per_cent(column, text), _worded(column, text)):
+    for refusal in (_separated(text), _per_cent(column, text), _dated(text), _worded(column, text)):
         if refusal is not None:
             return refusal
     return Refusal("not a number", "Write a number such as 1250 or 1250.5")
@@ -183,6 +192,21 @@ def _per_cent(column: Column, text: str) -> Refusal | None:
     number = float(found[1].replace(",", "."))
     repair = f"Write {text.strip()} as {number / 100:g}" if column.fraction else "Write the number without %"
     return Refusal("not a number, since it has a percent sign", repair)
+
+
+def _dated(text: str) -> Refusal | None:
+    if not _DATE.fullmatch(text.strip()):
+        return None
+    wrong = "a date or time, which spreadsheet programs make of numbers such as 12.5"
+    return Refusal(wrong, "Format the column as numbers and type the number again")
+
+
+def per_cent_fraction(text: str) -> float | None:
+    """Return the fraction that a text with a percent sign means, such as 0.08 for ``8 %``; None for any other text."""
+    found = _PER_CENT.fullmatch(text.strip())
+    if not found or _DOUBTFUL.fullmatch(found[1]):
+        return None
+    return float(f"{found[1].replace(',', '.')}e-2")
 
 
 def _worded(column: Column, text: str) -> Refusal | None:

@@ -26,6 +26,23 @@ FIRST_ROW = 2
 """Row of the first record under a header in row 1."""
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Form:
+    """How a table was written where it was found. The form that the program writes is the default."""
+
+    encoding: str = "utf-8"
+    separator: str = ","
+    """What stands between the cells of a text file; "" in a sheet."""
+    skipped: int = 0
+    """Filled rows above the header, such as a title."""
+    text_cells: Mapping[str, frozenset[int]] = field(default_factory=dict)
+    """In a sheet, by column: rows whose cell is a text that looks like a number. Other numbers there are certain."""
+    decimal: str = ""
+    """The decimal mark as the analyst stated it, "." or ","; "" = found out from the cells."""
+    hidden: bool = False
+    """Whether the sheet, or some of its rows, are hidden."""
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class RawTable:
     """One table as text."""
@@ -36,6 +53,7 @@ class RawTable:
     """One array of strings a column, in the order of the header; blank is "", never null."""
     rows: Positions
     """(rows,) number of each row as the user's spreadsheet shows it."""
+    form: Form = field(default_factory=Form)
 
     def __len__(self) -> int:
         """Return the number of rows."""

@@ -23,6 +23,9 @@ if TYPE_CHECKING:
 
 SETTINGS_FILE = "study.toml"
 
+WORKBOOKS = frozenset({".xlsx", ".xlsm", ".xlsb", ".xls"})
+"""Endings of files that are looked into as workbooks; all but .xlsx are then refused with their repair."""
+
 NEAR_MISS = 0.78
 """How alike, from 0 to 1, an unknown table and a known one must be for the unknown one to be a slip."""
 
@@ -66,7 +69,7 @@ def read_raw(path: Path | str) -> RawStudy:
     path = Path(path)
     if path.is_dir():
         return _read_folder(path)
-    if path.is_file() and path.suffix.lower() in {".xlsx", ".xlsm"}:
+    if path.is_file() and path.suffix.lower() in WORKBOOKS:
         raw, others = read_workbook(path)
         return _with_strangers(raw, others, "sheet")
     wrong = "there is no such folder or workbook" if not path.exists() else "neither a folder nor an .xlsx workbook"

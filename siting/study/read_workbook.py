@@ -4,50 +4,34 @@ from __future__ import annotations
 
 import re
 import warnings
-import zipfile
-from dataclasses import dataclass, field
+from collections import defaultdict
+from dataclasses import dataclass, field, replace
+from itertools import islice, product
 from typing import TYPE_CHECKING, Any
 
 from openpyxl import load_workbook
 from openpyxl.cell.cell import ERROR_CODES
+from openpyxl.utils.cell import range_boundaries
 
 from siting.errors import Fault
 from siting.study.check_settings import settings_from_cells
 from siting.study.columns import TABLES
 from siting.study.gathering import MOST_LISTED
-from siting.study.raw import RawStudy, cell_text
+from siting.study.raw import Form, RawStudy, cell_text
 from siting.study.records import RecordReader
+from siting.study.workbook_guard import CORRUPT, RefusedError, inspect_workbook
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
     from pathlib import Path
 
     from siting.study.raw import RawTable
+    from siting.study.workbook_guard import Inspection
 
 SETTINGS_SHEET = "study"
 
-MOST_BYTES = 200_000_000
-"""Size of the largest workbook read."""
-
-MOST_UNPACKED_BYTES = 1_500_000_000
-"""Size of the largest workbook read once it is unpacked; a million lanes take about 200 MB."""
-
-_COMPOUND_FILE = bytes.fromhex("d0cf11e0a1b11ae1")
-"""First bytes of encrypted workbooks and of the .xls format before 2007."""
-
-_ENTITY = re.compile(rb"<!(DOCTYPE|ENTITY)")
-_FORMULA = re.compile(rb"<f[ />]")
-_BLOCK = 1 << 20
-_OVERLAP = 16
-
-_CORRUPT = "Open it in a spreadsheet program and save it again as .xlsx"
-
-
-class _RefusedError(Exception):
-    """The workbook cannot be used; the arguments are what is wrong and the repair."""
-
-
-_UNPROTECTED = "Save it as .xlsx without a password"
+_NUMBER_LIKE = re.compile(r"[-+\u2212\s]*[0-9][0-9.,'\u2019\s]*([eE][-+]?[0-9]+)?")
+"""A text cell that may be a number stored as text."""
 
 
 @dataclass(slots=True)
@@ -80,16 +64,16 @@ def read_workbook(path: Path) -> tuple[RawStudy, tuple[str, ...]]:
     """
     found = _Found()
     try:
-        formulas = _inspect(path)
+        inspection = inspect_workbook(path)
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")  # openpyxl warns of looks and validations that it does not keep
-            _read_sheets(path, found, formulas=formulas)
-    except _RefusedError as refused:
+            _read_sheets(path, found, inspection)
+    except RefusedError as refused:
         return _unusable(path, *refused.args), ()
     except OSError as error:
         return _unusable(path, f"the workbook cannot be read ({error.strerror})", "Check that you may read it"), ()
     except Exception as error:  # noqa: BLE001  (openpyxl lets the errors of zip, zlib, XML and its own types through)
-        return _unusable(path, f"the workbook is damaged ({type(error).__name__})", _CORRUPT), ()
+        return _unusable(path, f"the workbook is damaged ({type(error).__name__})", CORRUPT), ()
     if SETTINGS_SHEET not in found.names:
         wrong, repair = "the sheet is missing", "Add it, with the columns setting and value, and currency and unit"
         found.faults.append(Fault(table=SETTINGS_SHEET, wrong=wrong, repair=repair))
@@ -110,59 +94,15 @@ def _unusable(path: Path, wrong: str, repair: str) -> RawStudy:
     return RawStudy(tables={}, settings_name=SETTINGS_SHEET, faults=(fault,), unreadable=everything)
 
 
-def _inspect(path: Path) -> bool:
-    """Return whether the workbook has formulas, after refusing what must not be opened."""
-    size = path.stat().st_size
-    if size > MOST_BYTES:
-        wrong = f"the workbook has {size / 1e6:.0f} MB, more than {MOST_BYTES / 1e6:.0f} MB"
-        raise _RefusedError(wrong, "Give the study as a folder of CSV tables")
-    with path.open("rb") as file:
-        if file.read(len(_COMPOUND_FILE)) == _COMPOUND_FILE:
-            wrong = "the workbook is protected by a password, or in the .xls format of before 2007"
-            raise _RefusedError(wrong, _UNPROTECTED)
-    if not zipfile.is_zipfile(path):
-        wrong = "the file is not an .xlsx workbook, or is damaged"
-        raise _RefusedError(wrong, _CORRUPT)
-    with zipfile.ZipFile(path) as archive:
-        members = archive.infolist()
-        unpacked = sum(member.file_size for member in members)
-        if unpacked > MOST_UNPACKED_BYTES:
-            wrong = f"the workbook unpacks to {unpacked / 1e6:.0f} MB, more than {MOST_UNPACKED_BYTES / 1e6:.0f} MB"
-            raise _RefusedError(wrong, "Give the study as a folder of CSV tables")
-        if any(member.flag_bits & 1 for member in members):
-            wrong = "the workbook is protected by a password"
-            raise _RefusedError(wrong, _UNPROTECTED)
-        has_formulas = False
-        for member in members:
-            if member.filename.endswith((".xml", ".rels")):
-                has_formulas |= _inspect_member(archive, member)
-    return has_formulas
-
-
-def _inspect_member(archive: zipfile.ZipFile, member: zipfile.ZipInfo) -> bool:
-    """Return whether a part of the workbook has formulas; refuse one that declares entities."""
-    has_formulas = False
-    kept = b""
-    with archive.open(member) as part:
-        while block := part.read(_BLOCK):
-            text = kept + block
-            if _ENTITY.search(text):
-                wrong = "the workbook declares XML entities, which no spreadsheet program writes"
-                raise _RefusedError(wrong, _CORRUPT)
-            has_formulas = has_formulas or _FORMULA.search(text) is not None
-            kept = text[-_OVERLAP:]
-    return has_formulas
-
-
-def _read_sheets(path: Path, found: _Found, *, formulas: bool) -> None:
+def _read_sheets(path: Path, found: _Found, inspection: Inspection) -> None:
     values = load_workbook(path, read_only=True, data_only=True)
-    typed = load_workbook(path, read_only=True) if formulas else None
+    typed = load_workbook(path, read_only=True) if inspection.formulas else None
     try:
         for sheet in values.worksheets:
             sheet.reset_dimensions()
             found.names.append(sheet.title)
             if sheet.title in TABLES:
-                _read_table(sheet, found)
+                _read_table(sheet, found, inspection)
             elif sheet.title == SETTINGS_SHEET:
                 _read_settings(sheet, found)
             if typed is not None and (sheet.title in found.tables or sheet.title == SETTINGS_SHEET):
@@ -174,38 +114,78 @@ def _read_sheets(path: Path, found: _Found, *, formulas: bool) -> None:
             typed.close()
 
 
-def _rows(sheet: Any) -> Iterator[list[str]]:  # noqa: ANN401  (openpyxl has no public type for read-only sheets)
-    for row in sheet.iter_rows(values_only=True):
+@dataclass(slots=True)
+class _Noted:
+    """What the cells of a sheet are besides their text."""
+
+    errors: list[tuple[int, int, str]] = field(default_factory=list)
+    """Row, position of the column and text of cells that show an error."""
+    text_cells: defaultdict[int, list[int]] = field(default_factory=lambda: defaultdict(list))
+    """By position of the column: rows whose cell is a text that looks like a number."""
+
+
+def _rows(sheet: Any, noted: _Noted) -> Iterator[list[str]]:  # noqa: ANN401  (openpyxl has no public type for these)
+    for number, row in enumerate(sheet.iter_rows(values_only=True), start=1):
         texts = ["" if value is None else cell_text(value) for value in row]
+        for at, value in enumerate(row):
+            if isinstance(value, str):
+                if value in _ERRORS:
+                    noted.errors.append((number, at, value))
+                elif _NUMBER_LIKE.fullmatch(value):
+                    noted.text_cells[at].append(number)
         while texts and not texts[-1]:
             texts.pop()
         yield texts
 
 
-def _read_table(sheet: Any, found: _Found) -> None:  # noqa: ANN401  (as above)
+def _read_table(sheet: Any, found: _Found, inspection: Inspection) -> None:  # noqa: ANN401  (as above)
     name = sheet.title
-    reader = RecordReader(name, may_be_short=True)
-    errors: list[tuple[int, int, str]] = []
-    table = reader.read(_noting_errors(_rows(sheet), errors))
+    reader = RecordReader(name, TABLES[name].names, separator="")
+    noted = _Noted()
+    table = reader.read(_rows(sheet, noted))
     if table is None:
         repair = "Write the column names in its first row, or delete it"
         found.faults.append(Fault(table=name, wrong="the sheet is empty", repair=repair))
         found.unreadable.add(name)
         return
-    found.tables[name] = table
+    part = str(sheet._worksheet_path).lstrip("/")  # noqa: SLF001  (openpyxl offers no public way to a sheet's part)
+    form = Form(
+        separator="",
+        skipped=reader.skipped,
+        hidden=sheet.sheet_state != "visible" or part in inspection.hidden_rows,
+        text_cells={
+            reader.header[at]: frozenset(rows) for at, rows in noted.text_cells.items() if at < len(reader.header)
+        },
+    )
+    found.tables[name] = replace(table, form=form)
     found.faults += reader.faults
-    for row, at, text in errors[:MOST_LISTED]:
+    for row, at, text in noted.errors[:MOST_LISTED]:
         wrong = "the cell shows an error of a formula"
         found.faults += _in_known_column(
             name, reader.header, at, row, text, wrong, "Repair the formula, or type the value"
         )
+    covered = _covered(inspection.merged.get(part, set()), reader, table)
+    for row, at, corner in islice(covered, MOST_LISTED):
+        wrong = f"the cell is merged with {corner}, so that only that one holds a value"
+        found.faults += _in_known_column(
+            name, reader.header, at, row, "", wrong, "Unmerge the cells and fill in each of them"
+        )
 
 
-def _noting_errors(rows: Iterator[list[str]], errors: list[tuple[int, int, str]]) -> Iterator[list[str]]:
-    for number, row in enumerate(rows, start=1):
-        if not _ERRORS.isdisjoint(row):
-            errors += [(number, at, text) for at, text in enumerate(row) if text in _ERRORS]
-        yield row
+def _covered(merged: set[str], reader: RecordReader, table: RawTable) -> Iterator[tuple[int, int, str]]:
+    """Yield row and position of each cell below the header that a merged cell with a value covers, and that cell."""
+    places = {row: place for place, row in enumerate(table.rows.tolist())} if merged else {}
+    for name in sorted(merged):
+        left, top, right, bottom = range_boundaries(name)
+        header = reader.header[left - 1] if left <= len(reader.header) else ""
+        cells = table.column(header)
+        if cells is None or top not in places or not cells[places[top]].as_py():
+            continue
+        columns = range(left - 1, min(right, len(reader.header)))
+        corner = name.partition(":")[0]
+        for row, at in product(range(top, bottom + 1), columns):
+            if (row, at) != (top, left - 1):
+                yield row, at, corner
 
 
 _ERRORS = frozenset(ERROR_CODES)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import gc
 from contextlib import contextmanager
-from itertools import compress, islice
+from itertools import chain, compress, islice
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -17,7 +17,7 @@ from siting.study.gathering import MOST_LISTED
 from siting.study.raw import RawTable
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Iterator
+    from collections.abc import Collection, Iterable, Iterator
 
     from siting.arrays import Positions
 
@@ -25,17 +25,30 @@ CHUNK_ROWS = 2_048
 """Records turned into Arrow arrays at a time: few enough for their strings to stay in the processor's cache."""
 
 
+MOST_ABOVE = 20
+"""Records above a header, such as a title and the date of an export, that are looked through for it."""
+
+LEAST_KNOWN = 2
+"""Known column names that make a record below the first one the header."""
+
+SEPARATOR_WORDS = {",": "comma", ";": "semicolon", "\t": "tab"}
+
+
 class RecordReader:
     """One pass over the records of a table."""
 
-    def __init__(self, table: str, *, may_be_short: bool) -> None:
+    def __init__(self, table: str, known: Collection[str], *, separator: str) -> None:
         self._table = table
-        self._may_be_short = may_be_short
-        """Whether cells may be missing at the end of a record: a sheet has no others, a CSV file must have them."""
+        self._known = frozenset(known)
+        """Column names that a header is known by."""
+        self._separator = separator
+        """What stands between cells; "" in a sheet."""
         self._ragged = 0
         self._chunks: list[list[pa.Array]] = []
         self._rows: list[Positions] = []
         self.header: list[str] = []
+        self.skipped = 0
+        """Filled records above the header."""
         self.record = 0
         """Number of records read so far, blank ones included."""
         self.faults: list[Fault] = []
@@ -47,15 +60,16 @@ class RecordReader:
         Parameters
         ----------
         records
-            Cells of one row each; the first that is not blank is the header. Blank ones are counted but left out.
+            Cells of one row each. The first that is not blank is the header, unless it has no known name and one soon
+            after has several: then what stands above is a title. Blank records are counted but left out.
 
         Returns
         -------
         table
             Its rows bear the numbers of their records. Ragged records are in `faults`.
         """
-        rest = iter(records)
-        width = self._read_header(rest)
+        rest = self._read_header(iter(records))
+        width = len(self.header)
         if not width:
             return None
         with _no_collections():
@@ -72,16 +86,42 @@ class RecordReader:
             rows=np.concatenate(self._rows),
         )
 
-    def _read_header(self, records: Iterator[list[str]]) -> int:
-        """Read up to the first record that is not blank, and return how many columns it has; 0 = there is none."""
+    def _read_header(self, records: Iterator[list[str]]) -> Iterator[list[str]]:
+        """Read up to the header, which stays empty where there is none, and return the records below it."""
+        first = self._next_filled(records)
+        if first is None or self._count_known(first):
+            self._take_header(first or [])
+            return records
+        above = self.record
+        peeked: list[list[str]] = []
+        try:
+            peeked.extend(islice(records, MOST_ABOVE))
+        except Exception:
+            self.record += len(peeked)  # the fault of the source tells in which record it broke off
+            raise
+        for at, record in enumerate(peeked):
+            if self._count_known(record) >= LEAST_KNOWN:
+                self.skipped = 1 + sum(map(any, peeked[:at]))
+                self.record = above + at + 1
+                self._take_header(record)
+                return chain(peeked[at + 1 :], records)
+        self._take_header(first)
+        return chain(peeked, records)
+
+    def _next_filled(self, records: Iterator[list[str]]) -> list[str] | None:
         for record in records:
             self.record += 1
             if any(record):
-                self.header = [read_cell(name) for name in record]
-                while not self.header[-1]:
-                    self.header.pop()
-                break
-        return len(self.header)
+                return record
+        return None
+
+    def _take_header(self, record: list[str]) -> None:
+        self.header = [read_cell(name) for name in record]
+        while self.header and not self.header[-1]:
+            self.header.pop()
+
+    def _count_known(self, record: list[str]) -> int:
+        return len(self._known.intersection(record))
 
     def _read_chunk(self, records: Iterator[list[str]], width: int) -> bool:
         """Keep the next records that are not blank, and return whether there were any records at all."""
@@ -107,13 +147,14 @@ class RecordReader:
 
     def _evened(self, record: list[str], width: int, row: int) -> list[str]:
         """Return a record of the width of the header; note a fault unless it lacks or exceeds it by blank cells."""
-        too_short = len(record) < width and not self._may_be_short
+        too_short = len(record) < width and self._separator != ""
         if too_short or any(record[width:]):
             self._ragged += 1
             if self._ragged <= MOST_LISTED:
                 wrong = f"the row has {len(record)} cells, the header has {width}"
-                repair = "Put texts that hold a comma in double quotes, and keep the commas of blank cells"
-                if self._may_be_short:
+                mark = SEPARATOR_WORDS.get(self._separator, "")
+                repair = f"Put texts that hold a {mark} in double quotes, and keep the {mark}s of blank cells"
+                if not self._separator:
                     wrong, repair = "a cell has no column name above it", "Name its column or clear it"
                 self.faults.append(Fault(table=self._table, row=row, wrong=wrong, repair=repair))
         return (record + [""] * width)[:width]
