@@ -18,6 +18,8 @@ Geoffrion (1974), Mathematical Programming Study 2: 82-114; Cornuejols, Sridhara
 Operational Research 50(3): 280-297; Barahona & Anbil (2000), Mathematical Programming 87(3): 385-399.
 """
 
+# ruff: noqa: ANN001, ANN201, ANN202, PLR0913, PLR0917, PLR0912 - compiled loops: the compiler
+# finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
 
 import numpy as np
@@ -32,6 +34,10 @@ DEFLECTION = 0.7
 """Share of the last direction that the next one keeps."""
 AVERAGING = 0.1
 """Weight of the newest solution in the averaged one."""
+ROUNDING = 1e-14
+"""Share of the sum of all multipliers times demand by which rounding may at most falsify a bound: taken off it."""
+SERVED = 1e-18
+"""Squared share of demand not served, or served twice, at which the relaxed solution is a plan: nothing to gain."""
 LEAST_FACTOR = 1e-4
 """Step factor at which steps have become too short to help."""
 
@@ -71,8 +77,7 @@ def price_options(charge, capacity, site_option, state, site_start, held, margin
         if state[site] == SHUT:
             continue
         begin, end = site_start[site], held[site]
-        total = 0.0
-        profit = 0.0
+        total, profit, full = 0.0, 0.0, False
         for k in range(begin, end):
             total += load[k]
             profit += margin[k] * load[k]
@@ -84,14 +89,17 @@ def price_options(charge, capacity, site_option, state, site_start, held, margin
                 for k in range(begin, end):
                     total += load[k]
                     profit += margin[k] * load[k]
-                if part > 0.0:
-                    edge[option] = margin[end]
-                    profit += part * margin[end]
-            cost[option] = charge[option] - profit
+                full = True
+            elif full:
+                # A smaller size that takes the same lanes whole, and less of the next one.
+                part = capacity[option] - total
+            extra = 0.0
+            if part > 0.0:
+                edge[option] = margin[end]
+                extra = part * margin[end]
+            cost[option] = charge[option] - profit - extra
             taken[option] = end
             rest[option] = part
-            if part > 0.0:
-                profit -= part * margin[end]
 
 
 @compiled
@@ -130,13 +138,13 @@ def sift(reduced, rate, state, slack):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def _follow(numbers, v, way, best_v, covered, demand, target, value):  # type: ignore[no-untyped-def]
+def _follow(numbers, v, way, covered, demand, target, value):  # type: ignore[no-untyped-def]
     """Make the subgradient step: `way` is the deflected direction; return False when there is nowhere to go."""
     norm = 0.0
     for r in range(v.shape[0]):
         way[r] = demand[r] - covered[r] + DEFLECTION * way[r]
         norm += way[r] * way[r] / demand[r]
-    if norm <= 0.0 or numbers[FACTOR] < LEAST_FACTOR:
+    if norm <= SERVED * np.sum(demand) or numbers[FACTOR] < LEAST_FACTOR:
         return False
     size = numbers[FACTOR] * (target - value) / norm
     for r in range(v.shape[0]):
@@ -164,9 +172,11 @@ def ascend(problem, space, state, charge, fewest, most, numbers, steps, target, 
         bound, numbers[MU], rate, share = price_cover(
             cost, capacity, site_option, state, need, fewest, most, numbers[MU], reduced, pick, pick_more
         )
-        worth = 0.0
+        worth, size = 0.0, 0.0
         for r in range(v.shape[0]):
             worth += v[r] * demand[r]
+            size += abs(v[r]) * demand[r]
+        worth -= ROUNDING * size
         bound += worth
         numbers[STEPS] += 1.0
         if fix and bound > numbers[BEST] - 0.5 * (cutoff - numbers[BEST]):
@@ -201,6 +211,6 @@ def ascend(problem, space, state, charge, fewest, most, numbers, steps, target, 
             numbers[IDLE] = 0.0
             v[:] = best_v
             bound = numbers[BEST]
-        if not _follow(numbers, v, way, best_v, covered, demand, target, bound):
+        if not _follow(numbers, v, way, covered, demand, target, bound):
             return True
     return False

@@ -1,5 +1,7 @@
 """The continuous knapsack by quickselect, compiled; used for the lanes of a site and for the sites themselves."""
 
+# ruff: noqa: ANN001, ANN201, ANN202, PLR0913, PLR0917, PLR0912, PLR2004 - compiled loops: the compiler
+# finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
 
 from siting.solving.bounding.compiled import compiled

@@ -7,6 +7,8 @@ The covering problem in which the sites compete once their knapsacks are priced,
 search where each site has one option.
 """
 
+# ruff: noqa: ANN001, ANN201, ANN202, PLR0913, PLR0917, PLR0912, PLR0915, PLR2004, C901 - compiled loops: the compiler
+# finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
 
 import numpy as np

@@ -11,6 +11,8 @@ rows of k would pay for i. Moves are tried in the order of that promise, so the 
 move improves, or when its trials are used up.
 """
 
+# ruff: noqa: ANN001, ANN201, PLR0913, PLR0917, PLR0912, PLR0915, C901 - compiled loops: the compiler
+# finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
 
 import numpy as np
@@ -74,7 +76,7 @@ def price_moves(problem, flows, chosen, fixed, space, drop, add, worth, second):
     for site in range(sites):
         if is_open[site] or fixed[site] != 0:
             continue
-        first, end = site_start[site], held[site]
+        first, end, full = site_start[site], held[site], False
         for option in range(site_option[site], site_option[site + 1]):
             total = 0.0
             for k in range(first, end):
@@ -82,6 +84,9 @@ def price_moves(problem, flows, chosen, fixed, space, drop, add, worth, second):
             part = 0.0
             if total > capacity[option]:
                 end, part = fill(margin, load, row, first, end, capacity[option], 0.0)
+                full = True
+            elif full:
+                part = capacity[option] - total
             profit = part * margin[end] if part > 0.0 else 0.0
             for k in range(first, end):
                 profit += margin[k] * load[k]

@@ -19,6 +19,8 @@ References
 Cunningham (1976), Mathematical Programming 11: 105-116; Ahuja, Magnanti & Orlin (1993), Network Flows, chapter 11.
 """
 
+# ruff: noqa: ANN001, ANN201, ANN202, PLR0913, PLR0917, PLR0912, PLR0915, C901 - compiled loops: the compiler
+# finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
 
 import numpy as np

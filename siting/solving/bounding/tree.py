@@ -13,7 +13,7 @@ import heapq
 import itertools
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -63,11 +63,13 @@ class Goal:
     """When a search may end."""
 
     gap: float
-    """Relative distance between cost and bound."""
+    """Distance between cost and bound, relative to the cost."""
+    constant: float
+    """Money a year that no decision changes: part of the cost that the gap is relative to."""
 
     def cutoff(self, cost: float) -> float:
         """Return the bound from which nothing matters, given the best cost; a safe margin above it for rounding."""
-        return cost - (self.gap - SAFE) * abs(cost) if np.isfinite(cost) else float("inf")
+        return cost - (self.gap - SAFE) * abs(cost + self.constant) if np.isfinite(cost) else float("inf")
 
 
 SAFE = 1e-9
@@ -105,7 +107,7 @@ class Worker:
         box = replace(box, fewest=max(box.fewest, least_count(problem, box)))
         free = int((box.state == FREE).sum())
         held = int((box.state == OPEN).sum())
-        if box.fewest > min(box.most, held + free):
+        if held > box.most or box.fewest > min(box.most, held + free):
             return float("inf"), []
         if _decided(problem, box):
             priced = self.incumbents.price(_only_set(problem, box))
@@ -175,7 +177,7 @@ def split(problem: Problem, node: Node, used: Floats) -> list[Node]:
     return [replace(node, box=half) for half in boxes]
 
 
-def _with(state: NDArray[np.int8], site: int, value: int) -> NDArray[np.int8]:
+def _with(state: NDArray[np.int8], site: np.integer[Any], value: int) -> NDArray[np.int8]:
     changed = state.copy()
     changed[site] = value
     return changed
@@ -187,7 +189,7 @@ def _without(charge: Floats, options: NDArray[np.int64]) -> Floats:
     return changed
 
 
-def _allowed(problem: Problem, box: Box, site: int) -> NDArray[np.int64]:
+def _allowed(problem: Problem, box: Box, site: np.integer[Any]) -> NDArray[np.int64]:
     options = np.arange(problem.site_option[site], problem.site_option[site + 1])
     return options[np.isfinite(box.charge[options])]
 
@@ -255,8 +257,10 @@ def search_tree(  # noqa: PLR0913 - what a search starts from and reports to
             for worker in workers:
                 worker.incumbents.offer(best.cost, best.chosen)
             cutoff, cost = goal.cutoff(best.cost), best.cost
-            jobs = zip(workers, batch, strict=False)
-            for bound, children in pool.map(lambda job: job[0].work(job[1], cutoff, cost), jobs):
+            done = [
+                pool.submit(worker.work, node, cutoff, cost) for worker, node in zip(workers, batch, strict=False)
+            ]
+            for bound, children in (future.result() for future in done):
                 if not children:
                     least_dropped = min(least_dropped, bound)
                 for child in children:
