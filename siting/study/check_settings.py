@@ -10,7 +10,7 @@ from siting.study.check_rows import refuse
 from siting.study.columns import SETTINGS, SOLVE_SETTINGS, Column, Kind
 from siting.study.currency import check_currency
 from siting.study.gathering import did_you_mean
-from siting.study.parse import Refusal, in_range, parse_cell, per_cent_fraction
+from siting.study.parse import Refusal, in_range, parse_cell, parse_number, per_cent_fraction
 from siting.study.raw import cell_text
 from siting.study.settings import Settings, SolveSettings
 
@@ -150,12 +150,7 @@ def _number(column: Column, value: object) -> object:
     if isinstance(value, str) and is_plain_number(value):
         return Refusal("a text, not a number", f"Write {value} without quotes")
     if isinstance(value, str) and value.strip():
-        refused = parse_cell(column, value)
-        return (
-            refused
-            if isinstance(refused, Refusal)
-            else Refusal("not a number", f"Write a number {_suggestion(column)}")
-        )
+        return parse_number(column, value)
     if isinstance(value, bool) or not isinstance(value, int | float):
         return Refusal("not a number", f"Write a number {_suggestion(column)}")
     try:

@@ -8,6 +8,7 @@ Windows-1252 for what is none of these. Separators are told by the column names 
 from __future__ import annotations
 
 import codecs
+import contextlib
 import csv
 import io
 import re
@@ -121,10 +122,8 @@ def find_separator(start: Start, encoding: str, spec: TableSpec) -> Separation:
 
 def _sample(text: str, separator: str, *, is_cut: bool) -> list[list[str]]:
     records: list[list[str]] = []
-    try:
+    with contextlib.suppress(csv.Error):  # it is reported when the whole file is read
         records.extend(islice(csv.reader(io.StringIO(text, newline=""), delimiter=separator), SAMPLE_RECORDS))
-    except csv.Error:
-        pass  # what was read up to there is enough; the fault is reported when the whole file is read
     if is_cut and 1 < len(records) < SAMPLE_RECORDS:
         records.pop()
     return [record for record in records if any(record)]
@@ -138,6 +137,6 @@ def _score(records: Sequence[Sequence[str]], spec: TableSpec) -> tuple[int, floa
     header = known.index(max(known))
     width = len(records[header])
     if width == 1:
-        return max(known), 0.0, 1
+        return max(known), 0.0, 0
     below = records[header:]
     return max(known), sum(len(record) == width for record in below) / len(below), width

@@ -38,7 +38,7 @@ _THOUSANDS = 1000.0
 """Least number with a separator of thousands: a column that ends below has none."""
 
 _OTHER = {".": ",", ",": "."}
-_WAYS = {".": "separators of thousands", ",": "decimal commas"}
+_OTHER_WAYS = "blanks, signs or separators of thousands"
 
 
 def _proves(mark: str) -> str:
@@ -235,7 +235,7 @@ def _example(numbers: _Numbers, turned: pa.Array, decimal: str, table: RawTable)
     marked = numbers.proven["."] | numbers.proven[","] | numbers.doubtful["."] | numbers.doubtful[","]
     telling = changed & marked if (changed & marked).any() else changed
     first = int(np.argmax(telling))
-    way = _WAYS[decimal] if (changed & marked).any() else "blanks or separators of thousands"
+    way = "decimal commas" if decimal == "," and (changed & marked).any() else _OTHER_WAYS
     before, after = numbers.cells[first].as_py(), turned[first].as_py()
     yield f"{name} with {way}, such as {before!r} in row {int(table.rows[first])} as {after}"
 

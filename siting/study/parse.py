@@ -30,7 +30,8 @@ _UNSEEN = frozenset({"Cc", "Zl", "Zp", "Zs"})
 _MONTHS = r"(?:jan|feb|mar|apr|may|jun|jul|aug|sep|oct|nov|dec)[a-z]*"
 _DATE = re.compile(
     rf"[0-9]{{4}}-[0-9]{{1,2}}-[0-9]{{1,2}}(?:[T ].*)?|[0-9]{{1,2}}[./-][0-9]{{1,2}}[./-](?:[0-9]{{2}}|[0-9]{{4}})"
-    rf"|[0-9]{{1,2}}[-. ]+{_MONTHS}(?:[-. ]+[0-9]{{2,4}})?|{_MONTHS}[-. ]+[0-9]{{1,4}}|[0-9]{{1,2}}:[0-9]{{2}}(?::[0-9.]+)?",
+    rf"|[0-9]{{1,2}}[-. ]+{_MONTHS}(?:[-. ]+[0-9]{{2,4}})?|{_MONTHS}[-. ]+[0-9]{{1,4}}"
+    rf"|[0-9]{{1,2}}:[0-9]{{2}}(?::[0-9.]+)?",
     re.IGNORECASE,
 )
 """Dates and times of day, as text or as a sheet's date cells become text."""

@@ -176,7 +176,7 @@ def _covered(merged: set[str], reader: RecordReader, table: RawTable) -> Iterato
     """Yield row and position of each cell below the header that a merged cell with a value covers, and that cell."""
     places = {row: place for place, row in enumerate(table.rows.tolist())} if merged else {}
     for name in sorted(merged):
-        left, top, right, bottom = range_boundaries(name)
+        left, top, right, bottom = (number or 0 for number in range_boundaries(name))
         header = reader.header[left - 1] if left <= len(reader.header) else ""
         cells = table.column(header)
         if cells is None or top not in places or not cells[places[top]].as_py():
