@@ -11,14 +11,12 @@ import os
 import sys
 import tempfile
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, TypeVar
+from typing import TYPE_CHECKING, Any, cast
 
 import numba
 
 if TYPE_CHECKING:
     from collections.abc import Callable
-
-F = TypeVar("F", bound="Callable[..., Any]")
 
 
 def cache_folder() -> Path | None:
@@ -45,13 +43,13 @@ def _user_cache() -> Path:
 _FOLDER = cache_folder()
 
 
-def compiled(function: F) -> F:
+def compiled(function: Callable[..., Any]) -> Callable[..., Any]:
     """Return `function` compiled on its first call, without the interpreter's lock, kept in the user's cache."""
     if _FOLDER is None:
-        return numba.njit(nogil=True, error_model="numpy")(function)  # type: ignore[no-any-return]
-    before = numba.config.CACHE_DIR
-    numba.config.CACHE_DIR = str(_FOLDER)
+        return cast("Callable[..., Any]", numba.njit(nogil=True, error_model="numpy")(function))
+    before = numba.config.CACHE_DIR  # type: ignore[attr-defined] # set by numba when it starts
+    numba.config.CACHE_DIR = str(_FOLDER)  # type: ignore[attr-defined]
     try:
-        return numba.njit(nogil=True, cache=True, error_model="numpy")(function)  # type: ignore[no-any-return]
+        return cast("Callable[..., Any]", numba.njit(nogil=True, cache=True, error_model="numpy")(function))
     finally:
-        numba.config.CACHE_DIR = before
+        numba.config.CACHE_DIR = before  # type: ignore[attr-defined]

@@ -41,6 +41,10 @@ class Incumbents:
         self.cost, self.chosen = cost, chosen.copy()
         return True
 
+    def start_from(self, chosen: Positions) -> None:
+        """Take a set of open options that is known to serve everything, whatever was asked in the meantime."""
+        self.offer(self._transport.cost_of(chosen), chosen)
+
     def try_all(self) -> bool:
         """Open as much as the limit on the number of sites allows; return whether that serves everything."""
         problem = self.problem
@@ -50,7 +54,7 @@ class Incumbents:
         chosen[taken] = problem.site_option[:-1][taken]
         cost = self._transport.cost_of(chosen, halted=self._halted)
         self.offer(cost, chosen)
-        return np.isfinite(cost)
+        return cost < float("inf")
 
     def round_up(self, used: Floats) -> Positions:
         """
@@ -70,15 +74,14 @@ class Incumbents:
         use = site_use(problem, used) + problem.must_open
         order = np.lexsort((np.arange(problem.sites), -use))
         chosen = np.full(problem.sites, SHUT_SITE, dtype=np.int32)
-        left, count = problem.demand.sum(), 0
-        for site in order:
+        left = problem.demand.sum()
+        for count, site in enumerate(order):
             enough = left <= 0 and count >= problem.fewest
             if count >= problem.most or (enough and use[site] < 1 / 2):
                 break
             first, end = problem.site_option[site], problem.site_option[site + 1]
             chosen[site] = first + int(np.argmax(used[first:end]))
             left -= problem.capacity[chosen[site]]
-            count += 1
         return chosen
 
     def search(self, used: Floats, *, trials: int) -> bool:

@@ -18,6 +18,7 @@ Geoffrion (1974), Mathematical Programming Study 2: 82-114; Cornuejols, Sridhara
 Operational Research 50(3): 280-297; Barahona & Anbil (2000), Mathematical Programming 87(3): 385-399.
 """
 
+# mypy: allow-untyped-defs
 # ruff: noqa: ANN001, ANN201, ANN202, PLR0913, PLR0917, PLR0912 - compiled loops: the compiler
 # finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
@@ -43,10 +44,9 @@ LEAST_FACTOR = 1e-4
 
 
 @compiled
-def gather_margins(v, row_start, lane_site, lane_cost, demand, state, site_start, held, margin, load, row):  # type: ignore[no-untyped-def]
+def gather_margins(v, row_start, lane_site, lane_cost, demand, state, site_start, held, margin, load, row):
     """Put the lanes with a positive margin into their site's part of `margin`, `load` and `row`; it ends at `held`."""
-    for site in range(held.shape[0]):
-        held[site] = site_start[site]
+    held[:] = site_start[:-1]
     for r in range(v.shape[0]):
         worth, amount = v[r], demand[r]
         for lane in range(row_start[r], row_start[r + 1]):
@@ -66,7 +66,7 @@ def gather_margins(v, row_start, lane_site, lane_cost, demand, state, site_start
 
 
 @compiled
-def price_options(charge, capacity, site_option, state, site_start, held, margin, load, row, cost, taken, rest, edge):  # type: ignore[no-untyped-def]
+def price_options(charge, capacity, site_option, state, site_start, held, margin, load, row, cost, taken, rest, edge):
     """
     Set `cost` (options,) to charge less knapsack profit; options of a site lie by falling capacity.
 
@@ -103,7 +103,7 @@ def price_options(charge, capacity, site_option, state, site_start, held, margin
 
 
 @compiled
-def cover_rows(weight, pick, site_start, taken, rest, load, row, covered, used):  # type: ignore[no-untyped-def]
+def cover_rows(weight, pick, site_start, taken, rest, load, row, covered, used):
     """Add `weight` times what the picked options serve to `covered` (rows,) and times 1 to `used` (options,)."""
     for site in range(pick.shape[0]):
         option = pick[site]
@@ -118,7 +118,7 @@ def cover_rows(weight, pick, site_start, taken, rest, load, row, covered, used):
 
 
 @compiled
-def sift(reduced, rate, state, slack):  # type: ignore[no-untyped-def]
+def sift(reduced, rate, state, slack):
     """
     Fix sites whose other choice would lift the bound by more than `slack`; return how many were fixed.
 
@@ -138,7 +138,7 @@ def sift(reduced, rate, state, slack):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def _follow(numbers, v, way, covered, demand, target, value):  # type: ignore[no-untyped-def]
+def _follow(numbers, v, way, covered, demand, target, value):
     """Make the subgradient step: `way` is the deflected direction; return False when there is nowhere to go."""
     norm = 0.0
     for r in range(v.shape[0]):
@@ -153,7 +153,7 @@ def _follow(numbers, v, way, covered, demand, target, value):  # type: ignore[no
 
 
 @compiled
-def ascend(problem, space, state, charge, fewest, most, numbers, steps, target, cutoff, patience, fix, whole):  # type: ignore[no-untyped-def]
+def ascend(problem, space, state, charge, fewest, most, numbers, steps, target, cutoff, patience, fix, whole):
     """
     Raise the bound by at most `steps` deflected subgradient steps; return True when there is no more to gain.
 
@@ -168,7 +168,9 @@ def ascend(problem, space, state, charge, fewest, most, numbers, steps, target, 
     need = np.sum(demand) * (1.0 - 1e-12)
     for _ in range(steps):
         gather_margins(v, row_start, lane_site, lane_cost, demand, state, site_start, held, margin, load, row)
-        price_options(charge, capacity, site_option, state, site_start, held, margin, load, row, cost, taken, rest, edge)
+        price_options(
+            charge, capacity, site_option, state, site_start, held, margin, load, row, cost, taken, rest, edge
+        )
         bound, numbers[MU], rate, share = price_cover(
             cost, capacity, site_option, state, need, fewest, most, numbers[MU], reduced, pick, pick_more
         )

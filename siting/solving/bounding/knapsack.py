@@ -1,5 +1,6 @@
 """The continuous knapsack by quickselect, compiled; used for the lanes of a site and for the sites themselves."""
 
+# mypy: allow-untyped-defs
 # ruff: noqa: ANN001, ANN201, ANN202, PLR0913, PLR0917, PLR0912, PLR2004 - compiled loops: the compiler
 # finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
@@ -11,14 +12,14 @@ FREE, OPEN, SHUT = 0, 1, -1
 
 
 @compiled
-def _swap(margin, load, row, a, b):  # type: ignore[no-untyped-def]
+def _swap(margin, load, row, a, b):
     gain, amount, r = margin[a], load[a], row[a]
     margin[a], load[a], row[a] = margin[b], load[b], row[b]
     margin[b], load[b], row[b] = gain, amount, r
 
 
 @compiled
-def fill(margin, load, row, begin, end, room, guess):  # type: ignore[no-untyped-def]
+def fill(margin, load, row, begin, end, room, guess):
     """
     Fill a continuous knapsack of size `room` with the lanes in `begin:end`, whose loads exceed it.
 

@@ -7,6 +7,7 @@ The covering problem in which the sites compete once their knapsacks are priced,
 search where each site has one option.
 """
 
+# mypy: allow-untyped-defs
 # ruff: noqa: ANN001, ANN201, ANN202, PLR0913, PLR0917, PLR0912, PLR0915, PLR2004, C901 - compiled loops: the compiler
 # finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
@@ -21,7 +22,7 @@ WINDOW = 48
 
 
 @compiled
-def pick_options(cost, capacity, site_option, state, fewest, most, mu, reduced, pick):  # type: ignore[no-untyped-def]
+def pick_options(cost, capacity, site_option, state, fewest, most, mu, reduced, pick):
     """
     Pick the options that are cheapest when each unit of capacity earns `mu`.
 
@@ -70,7 +71,7 @@ def pick_options(cost, capacity, site_option, state, fewest, most, mu, reduced, 
 
 
 @compiled
-def _fill_cover(cost, capacity, site_option, state, need, fewest, most, reduced, pick, pick_more):  # type: ignore[no-untyped-def]
+def _fill_cover(cost, capacity, site_option, state, need, fewest, most, reduced, pick, pick_more):
     """
     Solve the covering problem as a continuous knapsack where each site has one option and the counts do not bind.
 
@@ -125,7 +126,7 @@ def _fill_cover(cost, capacity, site_option, state, need, fewest, most, reduced,
 
 
 @compiled
-def price_cover(cost, capacity, site_option, state, need, fewest, most, mu, reduced, pick, pick_more):  # type: ignore[no-untyped-def]
+def price_cover(cost, capacity, site_option, state, need, fewest, most, mu, reduced, pick, pick_more):
     """
     Solve the continuous covering problem of the options by its one multiplier `mu` (money per load of capacity).
 
@@ -138,7 +139,9 @@ def price_cover(cost, capacity, site_option, state, need, fewest, most, mu, redu
     value, mu, rate, share
         Minimum, the two multipliers, and the weight of `pick` in the mixture.
     """
-    plain, value, mu, share = _fill_cover(cost, capacity, site_option, state, need, fewest, most, reduced, pick, pick_more)
+    plain, value, mu, share = _fill_cover(
+        cost, capacity, site_option, state, need, fewest, most, reduced, pick, pick_more
+    )
     if plain:
         return value, mu, 0.0, share
     value, total, rate = pick_options(cost, capacity, site_option, state, fewest, most, 0.0, reduced, pick)
@@ -178,7 +181,7 @@ def price_cover(cost, capacity, site_option, state, need, fewest, most, mu, redu
 
 
 @compiled
-def _least_cost(room, first, total, spent, order, cost, capacity):  # type: ignore[no-untyped-def]
+def _least_cost(room, first, total, spent, order, cost, capacity):
     """Return the continuous minimum of covering `room` with the items from `first` on; inf where they cannot."""
     items = order.shape[0]
     goal = total[first] + room
@@ -199,7 +202,7 @@ def _least_cost(room, first, total, spent, order, cost, capacity):  # type: igno
 
 
 @compiled
-def _first_cover(room, total, order, cost, capacity, taken):  # type: ignore[no-untyped-def]
+def _first_cover(room, total, order, cost, capacity, taken):
     """Set `taken` to a good cover of `room`: cheapest items per capacity, the last ones exchanged; return its cost."""
     items = order.shape[0]
     last = np.searchsorted(total, room) - 1
@@ -232,7 +235,7 @@ def _first_cover(room, total, order, cost, capacity, taken):  # type: ignore[no-
 
 
 @compiled
-def whole_cover(cost, capacity, state, need, rate, count, slack, limit, pick):  # type: ignore[no-untyped-def]
+def whole_cover(cost, capacity, state, need, rate, count, slack, limit, pick):
     """
     Solve the 0-1 covering problem of sites with one option each to within `slack`, by depth-first search.
 
@@ -281,10 +284,14 @@ def whole_cover(cost, capacity, state, need, rate, count, slack, limit, pick):  
             tried += 1
             site = order[k]
             skip = paid + _least_cost(room, k + 1, total, spent, order, price, capacity)
-            take = paid + price[site] + (
-                _least_cost(room - capacity[site], k + 1, total, spent, order, price, capacity)
-                if room > capacity[site]
-                else 0.0
+            take = (
+                paid
+                + price[site]
+                + (
+                    _least_cost(room - capacity[site], k + 1, total, spent, order, price, capacity)
+                    if room > capacity[site]
+                    else 0.0
+                )
             )
             if min(skip, take) >= best - slack:
                 least = min(least, skip, take)

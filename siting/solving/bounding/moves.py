@@ -11,6 +11,7 @@ rows of k would pay for i. Moves are tried in the order of that promise, so the 
 move improves, or when its trials are used up.
 """
 
+# mypy: allow-untyped-defs
 # ruff: noqa: ANN001, ANN201, PLR0913, PLR0917, PLR0912, PLR0915, C901 - compiled loops: the compiler
 # finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
@@ -31,9 +32,12 @@ from siting.solving.bounding.simplex import (
     set_root_cost,
 )
 
+NO_END = 1 << 40
+"""Pivots allowed where none are counted."""
+
 
 @compiled
-def price_moves(problem, flows, chosen, fixed, space, drop, add, worth, second):  # type: ignore[no-untyped-def]
+def price_moves(problem, flows, chosen, fixed, space, drop, add, worth, second):
     """
     Set `drop` and `add` (sites,) to what shutting or opening a site saves at most; -inf where it may not.
 
@@ -41,8 +45,8 @@ def price_moves(problem, flows, chosen, fixed, space, drop, add, worth, second):
     most promising option, written as -1 - option.
     """
     row_start, lane_site, lane_cost, site_option, charge, capacity, demand = problem
-    tree, value, limits, at_top, root_cost, is_open = flows[:6]
-    site_start, held, margin, load, row, cost, taken, rest, edge = space[:9]
+    tree, value, limits, _, _, is_open, _ = flows
+    site_start, held, margin, load, row, _, _, _, _ = space
     sites = is_open.shape[0]
     for site in range(sites):
         drop[site] = -np.inf
@@ -96,10 +100,10 @@ def price_moves(problem, flows, chosen, fixed, space, drop, add, worth, second):
 
 
 @compiled
-def list_moves(problem, flows, chosen, space, drop, add, worth, second, count, fewest, most, floor):  # type: ignore[no-untyped-def]
+def list_moves(problem, flows, chosen, drop, add, worth, second, count, fewest, most, floor):
     """Return promise, site to shut (-1 = none) and site to open of every move that may save more than `floor`."""
-    row_start, lane_site, lane_cost, site_option, charge, capacity, demand = problem
-    tree, value, limits, at_top, root_cost, is_open = flows[:6]
+    row_start, lane_site, lane_cost, _, _, capacity, demand = problem
+    tree, _, limits, _, _, is_open, _ = flows
     sites = is_open.shape[0]
     total = 0.0
     for site in range(sites):
@@ -161,9 +165,9 @@ def list_moves(problem, flows, chosen, space, drop, add, worth, second, count, f
 
 
 @compiled
-def plan_cost(flows, chosen, charge):  # type: ignore[no-untyped-def]
+def plan_cost(flows, chosen, charge):
     """Return charges plus flow costs of the open sites, or inf where they cannot serve everything."""
-    tree, value, limits, at_top, root_cost, is_open = flows[:6]
+    tree, value, limits, at_top, _, is_open, _ = flows
     total, astray = flow_cost(tree, value, limits, at_top, is_open)
     carried = 0.0
     for node in range(is_open.shape[0] + 2, tree.shape[1]):
@@ -177,24 +181,23 @@ def plan_cost(flows, chosen, charge):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def descend(problem, flows, saved, chosen, fixed, space, fewest, most, far, tolerance, numbers, trials):  # type: ignore[no-untyped-def]
+def descend(problem, flows, saved, chosen, fixed, space, fewest, most, far, tolerance, numbers, trials):
     """
     Try at most `trials` moves, take each that saves; return True at a set that no single move improves.
 
     `numbers` = [cost of `flows`, moves of the present list tried so far].
     """
-    row_start, lane_site, lane_cost, site_option, charge, capacity, demand = problem
+    row_start, lane_site, lane_cost, _, charge, capacity, _ = problem
     tree, value, limits, at_top, root_cost, is_open, turn = flows
     sites = is_open.shape[0]
     drop, add = np.empty(sites), np.empty(sites)
-    worth, second = np.empty(demand.shape[0]), np.empty(demand.shape[0])
+    rows = row_start.shape[0] - 1
+    worth, second = np.empty(rows), np.empty(rows)
     floor = 1e-9 * abs(numbers[0])
     while True:
         count = np.sum(is_open)
         price_moves(problem, flows, chosen, fixed, space, drop, add, worth, second)
-        promise, out, into = list_moves(
-            problem, flows, chosen, space, drop, add, worth, second, count, fewest, most, floor
-        )
+        promise, out, into = list_moves(problem, flows, chosen, drop, add, worth, second, count, fewest, most, floor)
         moved = False
         for k in range(int(numbers[1]), promise.shape[0]):
             if trials <= 0:
@@ -214,7 +217,18 @@ def descend(problem, flows, saved, chosen, fixed, space, fewest, most, far, tole
                 is_open[site] = True
                 set_root_cost(tree, value, root_cost, site, 0.0)
             improve(
-                tree, value, limits, at_top, root_cost, is_open, row_start, lane_site, lane_cost, turn, 1 << 40, tolerance
+                tree,
+                value,
+                limits,
+                at_top,
+                root_cost,
+                is_open,
+                row_start,
+                lane_site,
+                lane_cost,
+                turn,
+                NO_END,
+                tolerance,
             )
             cost = plan_cost(flows, chosen, charge)
             if cost < numbers[0] - floor:

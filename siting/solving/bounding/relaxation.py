@@ -105,7 +105,8 @@ class Relaxation:
         ratio = problem.greatest.sum() / max(problem.demand.sum(), 1e-300)
         counts = np.diff(problem.row_start)
         depth = np.minimum(np.ceil(1.5 * ratio), counts - 1).astype(np.int64)
-        return problem.lane_cost[problem.row_start[:-1] + np.maximum(depth, 0)].copy()
+        first: Floats = problem.lane_cost[problem.row_start[:-1] + np.maximum(depth, 0)]
+        return first
 
     def ascend(  # noqa: PLR0913 - a run of steps has these settings
         self,

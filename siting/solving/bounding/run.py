@@ -1,8 +1,8 @@
 """
 One run of the bounding engine: the phases, the clock and what is known.
 
-The bound is raised and plans are looked for in turns; the numbers of sites are bounded; sites are fixed, and the tree of
-what is left is searched. Every phase is budgeted in steps.
+The bound is raised and plans are looked for in turns; the numbers of sites are bounded; sites are fixed, and the tree
+of what is left is searched. Every phase is budgeted in steps.
 """
 
 from __future__ import annotations
@@ -96,7 +96,7 @@ class Run:
         relaxation = Relaxation(problem)
         best = self._best = Incumbents(problem, relaxation, self._halted)
         if start is not None:
-            best.price(_chosen(problem, start))
+            best.start_from(_chosen(problem, start))
         serves_all = best.try_all()
         if not serves_all and not self._halted() and problem.most >= problem.sites:
             return EngineResult(decisions=None, bound=None, impossible=True)
@@ -104,7 +104,13 @@ class Run:
         root = self._climb(relaxation, best, box)
         if not self._met(best):
             counted = bound_counts(
-                problem, relaxation, box, root, target=self._target(best), cutoff=self._cutoff(best), halted=self._halted
+                problem,
+                relaxation,
+                box,
+                root,
+                target=self._target(best),
+                cutoff=self._cutoff(best),
+                halted=self._halted,
             )
             self._known.counts = counted.bounds
             box = replace(box, fewest=counted.fewest, most=counted.most)
@@ -150,15 +156,21 @@ class Run:
         if np.isfinite(best.cost):
             return best.cost
         first = relaxation.ascend(
-            box, relaxation.first_multipliers(), steps=1, target=0.0, cutoff=float("inf"), fix=False, halted=self._halted
+            box,
+            relaxation.first_multipliers(),
+            steps=1,
+            target=0.0,
+            cutoff=float("inf"),
+            fix=False,
+            halted=self._halted,
         )
         return first.bound + abs(first.bound)
 
     def _branch(self, relaxation: Relaxation, best: Incumbents, box: Box, root: Ascent) -> None:
         """Fix sites, leave out those that are shut for good, and search the tree of what is left."""
         fixed = relaxation.ascend(
-            box, root.v, steps=ROUND_STEPS, target=self._target(best), cutoff=self._cutoff(best), factor=0.1, mu=root.mu,
-            patience=20, fix=np.isfinite(best.cost), halted=self._halted,
+            box, root.v, steps=ROUND_STEPS, target=self._target(best), cutoff=self._cutoff(best), factor=0.1,
+            mu=root.mu, patience=20, fix=best.cost < float("inf"), halted=self._halted,
         )  # fmt: skip
         self._report(fixed.bound, "branching")
         if self._met(best) or self._halted():

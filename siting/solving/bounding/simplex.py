@@ -2,7 +2,7 @@
 A network simplex for the flows of a fixed set of open sites, compiled, and quick to start again after a change.
 
 Nodes: sites 0..S-1, the *overflow* S (a site of no size limit that no plan may use), the *root* S + 1, rows from S + 2.
-Arcs: root to site (flow in [0, capacity], cost 0 while the site is open), site to row (flow at least 0, the lane's cost).
+Arcs: root to site (flow in [0, capacity], cost 0 while it is open), site to row (flow at least 0, the lane's cost).
 A shut site and the overflow cost `far` per load at the root, more than any way round them can cost, so that opening and
 shutting change costs only and the last flows stay a feasible start.
 
@@ -19,6 +19,7 @@ References
 Cunningham (1976), Mathematical Programming 11: 105-116; Ahuja, Magnanti & Orlin (1993), Network Flows, chapter 11.
 """
 
+# mypy: allow-untyped-defs
 # ruff: noqa: ANN001, ANN201, ANN202, PLR0913, PLR0917, PLR0912, PLR0915, C901 - compiled loops: the compiler
 # finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
@@ -37,7 +38,7 @@ BLOCK = 12
 
 
 @compiled
-def _link(tree, node, parent):  # type: ignore[no-untyped-def]
+def _link(tree, node, parent):
     head = tree[FIRST, parent]
     tree[PARENT, node] = parent
     tree[NEXT, node] = head
@@ -48,7 +49,7 @@ def _link(tree, node, parent):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def _unlink(tree, node):  # type: ignore[no-untyped-def]
+def _unlink(tree, node):
     before, after = tree[BEFORE, node], tree[NEXT, node]
     if before == NONE:
         tree[FIRST, tree[PARENT, node]] = after
@@ -59,7 +60,7 @@ def _unlink(tree, node):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def _shift(tree, value, top, amount):  # type: ignore[no-untyped-def]
+def _shift(tree, value, top, amount):
     """Add `amount` to the prices in the subtree of `top` and set its depths."""
     node = top
     while True:
@@ -76,7 +77,7 @@ def _shift(tree, value, top, amount):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def _demote(tree, node, sites):  # type: ignore[no-untyped-def]
+def _demote(tree, node, sites):
     """Take a row off the child lists once one site serves it alone."""
     if node >= sites + 2 and tree[FIRST, node] == NONE and tree[DEPTH, node] != LEAF:
         _unlink(tree, node)
@@ -84,13 +85,13 @@ def _demote(tree, node, sites):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def _depth(tree, node):  # type: ignore[no-untyped-def]
+def _depth(tree, node):
     depth = tree[DEPTH, node]
     return tree[DEPTH, tree[PARENT, node]] + 1 if depth == LEAF else depth
 
 
 @compiled
-def _rehang(tree, value, cut, end, parent, flow, cost):  # type: ignore[no-untyped-def]
+def _rehang(tree, value, cut, end, parent, flow, cost):
     """Cut the subtree of `cut` off and hang it by its node `end` under `parent`."""
     node = end
     while True:
@@ -104,7 +105,7 @@ def _rehang(tree, value, cut, end, parent, flow, cost):  # type: ignore[no-untyp
 
 
 @compiled
-def pivot(tree, value, capacity, at_top, sites, tail, head, cost, reduced, limit):  # type: ignore[no-untyped-def]
+def pivot(tree, value, capacity, at_top, sites, tail, head, cost, reduced, limit):
     """
     Send flow over the entering arc from `tail` to `head` and back through the tree; the leaving arc makes room.
 
@@ -149,7 +150,7 @@ def pivot(tree, value, capacity, at_top, sites, tail, head, cost, reduced, limit
         up = b <= sites and tree[PARENT, b] != root
         value[FLOW, b] += moved if up else -moved
         b = tree[PARENT, b]
-    is_root_arc = tail == root or head == root
+    is_root_arc = tail == root or head == root  # noqa: PLR1714 - the compiler knows no `in` here
     if limit <= tail_limit and limit < head_limit:
         site = head if tail == root else tail
         at_top[site] = tail == root
@@ -180,13 +181,11 @@ def pivot(tree, value, capacity, at_top, sites, tail, head, cost, reduced, limit
 
 
 @compiled
-def price_row(tree, value, is_open, row_start, lane_site, lane_cost, sites, r, lowest):  # type: ignore[no-untyped-def]
+def price_row(tree, value, is_open, row_start, lane_site, lane_cost, sites, r, lowest):
     """Return the lane of row `r` with the most negative reduced cost over open sites, and that cost."""
     node = sites + 2 + r
-    if tree[DEPTH, node] == LEAF:
-        price = value[PRICE, tree[PARENT, node]] + value[COST, node]
-    else:
-        price = value[PRICE, node]
+    is_leaf = tree[DEPTH, node] == LEAF
+    price = value[PRICE, tree[PARENT, node]] + value[COST, node] if is_leaf else value[PRICE, node]
     best, found = 0.0, NONE
     for lane in range(row_start[r], row_start[r + 1]):
         gain = lane_cost[lane] - price
@@ -201,7 +200,7 @@ def price_row(tree, value, is_open, row_start, lane_site, lane_cost, sites, r, l
 
 
 @compiled
-def price_root(tree, value, at_top, root_cost, sites, tolerance):  # type: ignore[no-untyped-def]
+def price_root(tree, value, at_top, root_cost, sites, tolerance):
     """Return the site whose root arc most wants to enter, its reduced cost, and the lowest price of a site."""
     best, found, lowest = -tolerance, NONE, 0.0
     for site in range(sites):
@@ -217,7 +216,9 @@ def price_root(tree, value, at_top, root_cost, sites, tolerance):  # type: ignor
 
 
 @compiled
-def improve(tree, value, capacity, at_top, root_cost, is_open, row_start, lane_site, lane_cost, state, pivots, tolerance):  # type: ignore[no-untyped-def]
+def improve(
+    tree, value, capacity, at_top, root_cost, is_open, row_start, lane_site, lane_cost, state, pivots, tolerance
+):
     """
     Pivot until the flows are optimal or `pivots` pivots were made; return True when optimal.
 
@@ -257,7 +258,7 @@ def improve(tree, value, capacity, at_top, root_cost, is_open, row_start, lane_s
 
 
 @compiled
-def set_root_cost(tree, value, root_cost, site, cost):  # type: ignore[no-untyped-def]
+def set_root_cost(tree, value, root_cost, site, cost):
     """Change what a site's arc from the root costs and the prices that hang on it."""
     sites = root_cost.shape[0] - 1
     change = cost - root_cost[site]
@@ -268,7 +269,7 @@ def set_root_cost(tree, value, root_cost, site, cost):  # type: ignore[no-untype
 
 
 @compiled
-def begin(tree, value, capacity, at_top, root_cost, is_open, row_start, lane_site, lane_cost, demand, far):  # type: ignore[no-untyped-def]
+def begin(tree, value, capacity, at_top, root_cost, is_open, row_start, lane_site, lane_cost, demand, far):
     """Set up the first basis: each row whole at its cheapest open site with room, else at the overflow."""
     sites = is_open.shape[0]
     root = sites + 1
@@ -298,7 +299,7 @@ def begin(tree, value, capacity, at_top, root_cost, is_open, row_start, lane_sit
 
 
 @compiled
-def flow_cost(tree, value, capacity, at_top, is_open):  # type: ignore[no-untyped-def]
+def flow_cost(tree, value, capacity, at_top, is_open):
     """Return the cost of the lanes' flows, and the load that shut sites and the overflow carry."""
     sites = is_open.shape[0]
     root = sites + 1

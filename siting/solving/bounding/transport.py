@@ -94,7 +94,7 @@ class Transport:
                 return float("inf")
         return float(plan_cost(self._flows, self._chosen, problem.charge))
 
-    def descend(
+    def descend(  # noqa: PLR0913 - a descent has these limits
         self,
         cost: float,
         fixed: NDArray[np.int8],

@@ -190,8 +190,9 @@ def _without(charge: Floats, options: NDArray[np.int64]) -> Floats:
 
 
 def _allowed(problem: Problem, box: Box, site: np.integer[Any]) -> NDArray[np.int64]:
-    options = np.arange(problem.site_option[site], problem.site_option[site + 1])
-    return options[np.isfinite(box.charge[options])]
+    first, end = problem.site_option[site : site + 2]
+    options: NDArray[np.int64] = first + np.flatnonzero(np.isfinite(box.charge[first:end]))
+    return options
 
 
 def _undecided_sizes(problem: Problem, box: Box) -> NDArray[np.int64]:
@@ -257,9 +258,7 @@ def search_tree(  # noqa: PLR0913 - what a search starts from and reports to
             for worker in workers:
                 worker.incumbents.offer(best.cost, best.chosen)
             cutoff, cost = goal.cutoff(best.cost), best.cost
-            done = [
-                pool.submit(worker.work, node, cutoff, cost) for worker, node in zip(workers, batch, strict=False)
-            ]
+            done = [pool.submit(worker.work, node, cutoff, cost) for worker, node in zip(workers, batch, strict=False)]
             for bound, children in (future.result() for future in done):
                 if not children:
                     least_dropped = min(least_dropped, bound)

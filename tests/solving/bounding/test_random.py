@@ -2,17 +2,21 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 import numpy as np
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from siting.network.network import Network
 from siting.solving.bounding.engine import bounding
 from siting.solving.bounding.problem import handles
 from siting.solving.direct import direct
 from tests.solving.conftest import _make as make_network
 from tests.solving.solved import best
+
+if TYPE_CHECKING:
+    from siting.network.network import Network
 
 
 @st.composite
