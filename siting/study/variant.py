@@ -199,7 +199,7 @@ def _held(path: Path, faults: list[Fault]) -> dict[str, Any] | None:
     except tomllib.TOMLDecodeError as error:
         wrong, repair = f"the file is not TOML ({error})", 'Write it as in name = "Higher rents", one entry a line'
     except OSError as error:
-        wrong, repair = f"the file cannot be read ({error.strerror})", "Check that it is a file and that you may read it"
+        wrong, repair = f"the file cannot be read ({error.strerror})", "Check that you may read it"
     faults.append(Fault(table="variant", value=str(path), wrong=wrong, repair=repair))
     return None
 

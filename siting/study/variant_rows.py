@@ -87,7 +87,7 @@ class RowsAtWork:
             return
         filled = self._texts(new)
         for record, source in zip(self.records, self._source, strict=True):
-            record += filled[source] if source is not None else [""] * len(new)
+            record.extend(filled[source] if source is not None else [""] * len(new))
         self.header += new
 
     def _texts(self, columns: list[str]) -> list[list[str]]:
