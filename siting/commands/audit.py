@@ -6,6 +6,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from siting.commands.command import FOUND, add_json, say, say_json
+from siting.commands.kept_plan import add_plan
 from siting.commands.layout import bullets, paragraph
 
 if TYPE_CHECKING:
@@ -22,7 +23,7 @@ def add(commands: Commands) -> None:
         description="Re-price and re-check a plan from the tables written beside it, in code that shares nothing with "
         "the solvers. Exit code 0 when it passes, 5 when it fails.",
     )
-    parser.add_argument("plan", metavar="PLAN", help="folder that `siting plan --out` wrote")
+    add_plan(parser)
     add_json(parser)
     parser.set_defaults(run=run)
 
