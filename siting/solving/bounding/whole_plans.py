@@ -21,6 +21,9 @@ if TYPE_CHECKING:
     from siting.solving.bounding.whole_problem import WholeProblem
     from siting.solving.bounding.whole_program import LaneProgram, Relaxed
 
+DIVE_ROUNDS = 3
+"""Rounds of pricing and linking at each step of a dive: the way down need not be exact."""
+
 CERTAIN = 0.9
 """Binaries at or above this in a relaxation are opened together when diving."""
 
@@ -41,7 +44,7 @@ class Plans:
     def __init__(
         self, problem: WholeProblem, program: LaneProgram, levers: Levers, gap: float, tell: Callable[[], None]
     ) -> None:
-        self._problem = problem
+        self.problem = problem
         self._program = program
         self._tell = tell
         self._gap = gap
@@ -82,9 +85,9 @@ class Plans:
                 self._tried[key] = tried
             return tried
         cost, bound, values = relaxed.value, relaxed.bound, relaxed.values
-        pairs = values[held.size : self._problem.places.binaries]
+        pairs = values[held.size : self.problem.places.binaries]
         if np.any(np.abs(pairs - np.rint(pairs)) > WHOLE):
-            done = finish(self._problem, sides, relaxed, enough=enough, gap=self._gap, halt=self._program.halt)
+            done = finish(self.problem, sides, relaxed, enough=enough, gap=self._gap, halt=self._program.halt)
             cost, bound = done.cost, done.bound
             values = values if done.values is None else done.values
         tried = Tried(cost=cost, bound=bound)
@@ -92,7 +95,7 @@ class Plans:
             self._tried[key] = tried
         if cost < self.cost:
             self.cost, self.priced = cost, relaxed
-            self.best = np.concatenate([held, np.rint(values[held.size : self._problem.places.binaries])])
+            self.best = np.concatenate([held, np.rint(values[held.size : self.problem.places.binaries])])
             self._tell()
         return tried
 
@@ -102,9 +105,18 @@ class Plans:
         lower[: held.size] = upper[: held.size] = held
         return self.levers.sides(lower, upper)
 
-    def dive(self, relaxed: Relaxed, lower: Floats, upper: Floats) -> None:
-        """Open what a relaxation nearly opens, most nearly first, until the relaxation is whole; then price it."""
-        lower, upper = lower.copy(), upper.copy()
+    def dive(self, program: LaneProgram, relaxed: Relaxed) -> None:
+        """
+        Open what a relaxation nearly opens, most nearly first, until the relaxation is whole; then price it.
+
+        Parameters
+        ----------
+        program
+            Solves the relaxations on the way.
+        relaxed
+            The relaxation to begin from, with nothing split.
+        """
+        lower, upper = self.levers.whole()
         split = self.levers.split
         while relaxed.ending is Ending.SOLVED:
             value = relaxed.values[:split]
@@ -114,15 +126,14 @@ class Plans:
                 return
             sure = free[value[free] >= CERTAIN]
             if not sure.size:
-                suppliers = free[free >= self._problem.places.option.size]
+                suppliers = free[free >= self.problem.places.option.size]
                 among = suppliers if suppliers.size else free
                 sure = among[[int(np.argmax(value[among]))]]
             lower[sure] = 1.0
-            relaxed = self._program.solve(self.levers.sides(lower, upper), enough=self.cost)
+            relaxed = program.solve(self.levers.sides(lower, upper), enough=self.cost, rounds=DIVE_ROUNDS)
             if relaxed.ending is Ending.EMPTY:
-                lower[sure] = 0.0
-                upper[sure] = 0.0
-                relaxed = self._program.solve(self.levers.sides(lower, upper), enough=self.cost)
+                lower[sure] = upper[sure] = 0.0
+                relaxed = program.solve(self.levers.sides(lower, upper), enough=self.cost, rounds=DIVE_ROUNDS)
 
     def improve(self, trials: int) -> None:
         """
@@ -157,7 +168,7 @@ class Plans:
         assert self.best is not None  # noqa: S101
         assert self.priced is not None  # noqa: S101
         assert self.priced.priced is not None  # noqa: S101
-        split, options = self.levers.split, self._problem.places.option.size
+        split, options = self.levers.split, self.problem.places.option.size
         reduced = self.priced.priced.reduced[:split]
         is_open = self.best[:split] > 0
         promise = np.where(is_open, reduced, -reduced)

@@ -40,7 +40,7 @@ ROUNDS = 200
 class Ending(Enum):
     """How a solve ended."""
 
-    SOLVED = "every lane priced, no link broken"
+    SOLVED = "every lane priced, no link broken, or as near to it as the rounds allowed"
     CUT = "the bound reached what it had to"
     EMPTY = "nothing satisfies the rows"
     HALTED = "out of time, of steps, or asked to stop"
@@ -64,12 +64,29 @@ class Relaxed:
 class LaneProgram:
     """A program in HiGHS over some lanes and some links of a problem."""
 
-    def __init__(self, problem: WholeProblem, columns: NDArray[np.intp], halt: Callable[[], bool]) -> None:
-        """Load the binaries and `columns`; `halt` says when to give up."""
+    def __init__(
+        self, problem: WholeProblem, columns: NDArray[np.intp], halt: Callable[[], bool], *, linked: bool = True
+    ) -> None:
+        """
+        Load the binaries and some lanes.
+
+        Parameters
+        ----------
+        problem
+            What to relax.
+        columns
+            Lanes to begin with; more are loaded where their prices ask for it.
+        halt
+            Says when to give up.
+        linked
+            True loads the links of a lane that is priced in with it. Where all binaries are held, links hardly ever
+            bind: they are better left until they are broken.
+        """
         self.problem = problem
         self._halt_asked = halt
         self._pricer = Pricer(problem)
         self.halted = False
+        self._linked = linked
         self._place = np.full(problem.places.count, -1, dtype=np.int32)
         self.columns = np.unique(np.concatenate([np.arange(problem.places.binaries), columns]))
         self._place[self.columns] = np.arange(self.columns.size)
@@ -141,7 +158,8 @@ class LaneProgram:
         )
         self._place[columns] = self.columns.size + np.arange(columns.size)
         self.columns = np.concatenate([self.columns, columns])
-        self.load_links(self._pricer.links_of(columns))
+        if self._linked:
+            self.load_links(self._pricer.links_of(columns))
         self._refresh()
 
     def load_links(self, links: NDArray[np.int64]) -> None:
@@ -167,12 +185,15 @@ class LaneProgram:
         self._link_rows = self.problem.links.chosen(self.links)
         self._refresh()
 
-    def drop_links(self, idle: NDArray[np.bool_]) -> None:
-        """Take links out again: those where `idle` (links loaded,) is True."""
+    def forget(self, most: int) -> None:
+        """Take out the links that do not bind in the program's last solution, once more than `most` are loaded."""
+        if self.links.size <= most:
+            return
         limits = len(self.problem.limits)
-        gone = (limits + np.flatnonzero(idle)).astype(np.int32)
+        slack = np.array(self.highs.getBasis().row_status)[limits:] == highspy.HighsBasisStatus.kBasic
+        gone = (limits + np.flatnonzero(slack)).astype(np.int32)
         self.highs.deleteRows(gone.size, gone)
-        self.links = self.links[~idle]
+        self.links = self.links[~slack]
         self._link_rows = self.problem.links.chosen(self.links)
         self._refresh()
 
@@ -268,7 +289,8 @@ class LaneProgram:
                 self.load_links(broken)
             if lanes.size:
                 self.load_lanes(lanes)
-        return self._result(Ending.HALTED, -np.inf if best is None else best.bound, value, values, best)
+        ending = Ending.HALTED if self.halted else Ending.SOLVED
+        return self._result(ending, -np.inf if best is None else best.bound, value, values, best)
 
     def try_sides(self, sides: Sides, basis: object, steps: int) -> float:
         """

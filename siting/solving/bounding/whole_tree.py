@@ -26,6 +26,7 @@ from siting.solving.bounding.whole_program import Ending
 
 if TYPE_CHECKING:
     from siting.arrays import Floats
+    from siting.solving.bounding.whole_bound import Sides
     from siting.solving.bounding.whole_levers import Levers
     from siting.solving.bounding.whole_plans import Plans
     from siting.solving.bounding.whole_problem import WholeProblem
@@ -92,6 +93,10 @@ class Tree:
     def closed(self) -> bool:
         """Return whether nothing is left to search."""
         return self._here is None and (not self.open or self.bound >= self.enough)
+
+    def root_sides(self) -> Sides:
+        """Return the bounds of columns and rows before anything is split."""
+        return self.levers.sides(*self.levers.whole())
 
     def step(self) -> None:
         """Search one node: the child just made, or the open node of least bound."""
