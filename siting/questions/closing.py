@@ -96,7 +96,7 @@ def closing(  # noqa: PLR0913 - what a question is asked with, all but the first
     network = resolver.bench().network if asks else None
     lines = []
     for kind, name, verdict in tested:
-        both = {how: _without(study, network, base, found.get(asks[name][how]), name) for how in HOW}
+        both = {how: _without(study, network, base, found.get(asks[name][how]), name, how) for how in HOW}
         lines.append(ClosingLine(kind=kind, name=name, verdict=verdict, reroute=both["reroute"], replan=both["replan"]))
     resolver.end("stopped" if resolver.stop.requested else "done")
     return _test(study, resolver, base, tuple(sorted(lines, key=_rank)))
@@ -150,8 +150,8 @@ def _refusal(kind: str, name: str, verdict: str, verdicts: Mapping[Entry, str], 
     return f"the {kind} {name} is not in the plan (verdict: {verdict}), so it cannot be done without. {choose}"
 
 
-def _without(
-    study: Study, network: Network | None, base: Resolved, found: Resolved | None, name: str
+def _without(  # noqa: PLR0913, PLR0917 - a plan and one without, and what was asked
+    study: Study, network: Network | None, base: Resolved, found: Resolved | None, name: str, how: str
 ) -> Without | None:
     """Return what is different without a site or supplier."""
     before = base.plan
@@ -165,7 +165,9 @@ def _without(
             bound=proof.bound,
             unserved=found.unserved,
             unserved_load=sum(short.amount * load[short.good] for short in found.unserved),
-            why=sentences_of(study, network, before, name, found) if found.impossible else (),
+            why=sentences_of(study, network, before, name, found, rerouted=how == "reroute")
+            if found.impossible
+            else (),
             reasons=found.reasons,
             together=found.together,
             seconds=proof.seconds,

@@ -121,7 +121,7 @@ class _Search:
         self._settings = replace(bench.settings, gap=ask.gap)
         self._restricted = restrict(bench.study, bench.network, ask.restriction)
         self._floor = bench.floor if tightens(bench.study, ask.restriction) else None
-        self._engine, self._reason = pick_engine(bench.network, self._settings)
+        self._engine, self._reason = pick_engine(self._restricted.searched, self._settings)
 
     def resolve(self) -> Resolved:
         restriction, network = self._ask.restriction, self._restricted.searched
@@ -176,6 +176,8 @@ class _Search:
         in_use = moving(network, self._ask.restriction.used)
         if found.decisions is None or flows_for(in_use, found.decisions) is not None:
             return found
+        any_engine = replace(self._settings, engine="auto")  # the one named may not take least volumes
+        self._engine, self._reason = pick_engine(in_use, any_engine)
         again = self._best(in_use)
         if again.decisions is None:
             return again

@@ -19,7 +19,9 @@ NAMED = 5
 """Names listed before "and n more"."""
 
 
-def sentences_of(study: Study, network: Network, plan: Plan, name: str, found: Resolved) -> tuple[str, ...]:
+def sentences_of(  # noqa: PLR0913 - a plan, what is done without, and what was asked
+    study: Study, network: Network, plan: Plan, name: str, found: Resolved, *, rerouted: bool
+) -> tuple[str, ...]:
     """
     Return why there is no plan without a site or supplier.
 
@@ -32,15 +34,21 @@ def sentences_of(study: Study, network: Network, plan: Plan, name: str, found: R
     name
         What is done without.
     found
-        Impossible, with what stays unserved or the reasons.
+        No plan; where that is proved, with what stays unserved or the reasons.
+    rerouted
+        Whether all others keep their verdict and size.
 
     Returns
     -------
     sentences
-        At least one.
+        At least one where it is impossible; none where no plan was found in time.
     """
+    if not found.impossible:
+        return ()
     if found.unserved:
         return _short(study, network, plan, name, found)
+    if not found.reasons and rerouted:
+        return (f"With all others as they are, not everything that is asked can be met without {name}.",)
     if not found.reasons:
         return (f"No plan can meet everything that is asked without {name}: only {name} itself repairs it.",)
     said = tuple(reason.sentence for reason in found.reasons)
