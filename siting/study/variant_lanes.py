@@ -8,7 +8,7 @@ are checked as if they had been read.
 from __future__ import annotations
 
 from dataclasses import replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -21,6 +21,8 @@ from siting.study.write import header_to_write, rows_to_write
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
+
+    from numpy.typing import NDArray
 
     from siting.arrays import Flags, Positions
     from siting.study.check_lanes import Known
@@ -161,11 +163,13 @@ class LanesAtWork:
         at = lanes.names.index(name)
         inbound = lanes.leg == LaneTable.LEGS.index(Leg.INBOUND)
         outbound = lanes.leg == LaneTable.LEGS.index(Leg.OUTBOUND)
-        if table == "sites":
-            return np.where(inbound, lanes.destination == at, outbound & (lanes.origin == at))
-        if table == "suppliers":
-            return ~outbound & (lanes.origin == at)
-        return ~inbound & (lanes.destination == at) if table == "customers" else lanes.good == at
+        ends: Mapping[str, Flags] = {
+            "sites": np.where(inbound, lanes.destination == at, outbound & (lanes.origin == at)),
+            "suppliers": ~outbound & (lanes.origin == at),
+            "customers": ~inbound & (lanes.destination == at),
+            "goods": lanes.good == at,
+        }
+        return ends[table]
 
     def _record(self, at: int) -> dict[str, str]:
         """Return the cells of a row as text, from now on those that count."""
@@ -183,7 +187,7 @@ class LanesAtWork:
         self.header += [name for name in dict.fromkeys(columns) if name not in self.header]
 
 
-def _taken(lanes: LaneTable, at: Positions) -> LaneTable:
+def _taken(lanes: LaneTable, at: NDArray[np.integer]) -> LaneTable:
     """Return some rows of the lanes, in the order asked."""
     return replace(
         lanes,
@@ -205,7 +209,7 @@ def _merged(lanes: LaneTable, touched: LaneTable, place: Positions) -> LaneTable
     new = np.array([names.setdefault(name, len(names)) for name in touched.names] + [BLANK], dtype=np.int32)
     count = place.size
 
-    def joined(ours: np.ndarray, theirs: np.ndarray) -> np.ndarray:  # type: ignore[type-arg]  # any kind of column
+    def joined(ours: NDArray[Any], theirs: NDArray[Any]) -> NDArray[Any]:
         both = np.concatenate([ours, theirs[count:]])
         both[place] = theirs[:count]
         return both
