@@ -136,7 +136,6 @@ def _highs(problem: WholeProblem, sides: Sides, columns: np.ndarray, enough: flo
     program.integrality_ = kinds
     highs = QuietHighs()  # type: ignore[no-untyped-call] # highspy types only part of its methods
     options: dict[str, float | int] = {
-        "threads": 1,
         "mip_rel_gap": gap,
         "mip_abs_gap": 0.0,
         "mip_feasibility_tolerance": TOLERANCE,

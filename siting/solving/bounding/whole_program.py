@@ -105,7 +105,6 @@ class LaneProgram:
         for name, value in (
             ("presolve", "off"),
             ("solver", "simplex"),
-            ("threads", 1),
             ("primal_feasibility_tolerance", TOLERANCE),
             ("dual_feasibility_tolerance", TOLERANCE),
         ):
