@@ -7,14 +7,15 @@ import os
 import sys
 from typing import TYPE_CHECKING
 
-from siting.commands import audit, browse, check, closing, headroom, plan
+from siting.commands import audit, browse, check, closing, headroom, plan, template
+from siting.commands import map as map_command
 from siting.commands.command import BAD_INPUT, FOUND, NO_PLAN_YET
 from siting.errors import SitingError
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-COMMANDS = (check, plan, closing, headroom, audit, browse)
+COMMANDS = (check, plan, closing, headroom, audit, map_command, template, browse)
 """In the order of the help."""
 
 EXIT_CODES = (

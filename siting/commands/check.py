@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from pathlib import Path
 from typing import TYPE_CHECKING
 
 from siting.commands.command import BAD_INPUT, FOUND, add_json, add_study, say, say_json
@@ -25,6 +26,13 @@ def add(commands: Commands) -> None:
     )
     add_study(parser)
     add_json(parser)
+    parser.add_argument("--mapping", metavar="FILE", help="what the columns of the study's files are called")
+    parser.add_argument(
+        "--propose-mapping",
+        metavar="FILE",
+        help="write a proposal of what the columns are called, to be corrected and given as --mapping FILE, or kept as "
+        "mapping.toml in the folder of the study (NAME.mapping.toml beside NAME.xlsx), where it is always used",
+    )
     parser.set_defaults(run=run)
 
 
@@ -33,11 +41,15 @@ def run(arguments: argparse.Namespace) -> int:
     from siting.errors import StudyError
     from siting.plan.contract import check_to_json
     from siting.study.demo import study_path
+    from siting.study.mapping import read_mapping
     from siting.study.read import read_study
 
+    if arguments.propose_mapping:
+        return _propose(arguments)
     faults: Sequence[Fault] = ()
     try:
-        study = read_study(study_path(arguments.study))
+        mapping = read_mapping(arguments.mapping) if arguments.mapping else None
+        study = read_study(study_path(arguments.study), mapping)
     except StudyError as error:
         faults, warnings, text = error.faults, error.warnings, str(error)
     else:
@@ -47,6 +59,34 @@ def run(arguments: argparse.Namespace) -> int:
     else:
         say("\n".join([text, *_warning_lines(warnings)]))
     return BAD_INPUT if faults else FOUND
+
+
+def _propose(arguments: argparse.Namespace) -> int:
+    """Write proposals for the columns of a study and list them; return the exit code."""
+    from siting.study.demo import study_path
+    from siting.study.mapping import ColumnMapping, mapping_from, write_mapping
+    from siting.study.propose import propose_mapping
+    from siting.study.read import read_raw
+
+    file = Path(arguments.propose_mapping)
+    if file.exists():
+        say(f"{file}: the file is already there and may hold your corrections. Give another name, or delete it first.")
+        return BAD_INPUT
+    raw = read_raw(study_path(arguments.study), ColumnMapping())
+    proposals = propose_mapping(raw)
+    mapping = mapping_from(raw, proposals)
+    if not mapping.layouts:
+        say("Every column has the name of one of ours: there is nothing to propose.")
+        return FOUND
+    write_mapping(mapping, file, proposals)
+    count = "1 column" if len(proposals) == 1 else f"{len(proposals)} columns"
+    lines = [
+        f"  {each.table}, {each.typed!r} as {each.column}: {each.confidence:.0%}, {'; '.join(each.reasons)}"
+        for each in proposals
+    ]
+    head = f"{file}: a proposal for {count}. Read and correct it, then: siting check {arguments.study} --mapping {file}"
+    say("\n".join([head, *lines]))
+    return FOUND
 
 
 def _warning_lines(warnings: Sequence[Fault]) -> list[str]:

@@ -7,7 +7,7 @@ unusual is a warning.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 from siting.errors import Fault, StudyError
@@ -25,6 +25,8 @@ from siting.study.places import check_places
 from siting.study.tables import Study
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
     from siting.study.check_lanes import ParsedLanes
     from siting.study.raw import RawStudy
 
@@ -37,6 +39,10 @@ class Checked:
     """None where there is any fault."""
     faults: tuple[Fault, ...]
     warnings: tuple[Fault, ...]
+    fault_counts: Mapping[str, int] = field(default_factory=dict)
+    """Faults by table, with those beyond the cap of what is listed."""
+    warning_counts: Mapping[str, int] = field(default_factory=dict)
+    """Warnings by table, likewise."""
 
     def sound(self) -> Study:
         """
@@ -97,4 +103,10 @@ def check_raw(raw: RawStudy, lanes: ParsedLanes | None = None) -> Checked:
         **{name: table.rows for name, table in draft.tables.items()},
     )
     faults = gathering.faults()
-    return Checked(study=None if faults else study, faults=faults, warnings=study.warnings)
+    return Checked(
+        study=None if faults else study,
+        faults=faults,
+        warnings=study.warnings,
+        fault_counts=gathering.fault_counts(),
+        warning_counts=gathering.warning_counts(),
+    )

@@ -72,7 +72,7 @@ def parse_lanes(raw: RawTable | None, known: Known | None, gathering: Gathering)
     notes = _Notes(raw.rows, cells, gathering)
     origin, destination, good = (_factorised(cells[name], len(raw)) for name in ("origin", "destination", "good"))
     names, (origin_at, destination_at, good_at) = _merged([origin, destination, good])
-    _check_blank_names(names, origin_at, destination_at, notes)
+    _check_blank_names(names, origin_at, destination_at, notes, raw.header)
     if known is None:
         unknown = np.ones(len(raw), dtype=np.bool_)
         leg = np.full(len(raw), _ABSENT, dtype=np.int32)
@@ -146,11 +146,15 @@ def _is_one_of(names: Sequence[str], known: Collection[str]) -> Flags:
     return np.array([*(name in known for name in names), False], dtype=np.bool_)
 
 
-def _check_blank_names(names: Sequence[str], origin: Positions, destination: Positions, notes: _Notes) -> None:
+def _check_blank_names(
+    names: Sequence[str], origin: Positions, destination: Positions, notes: _Notes, there: Collection[str]
+) -> None:
+    """Note blank names, unless the whole column is missing, which is a fault of its own."""
     only_blanks = np.array([*(not name.strip() for name in names), True], dtype=np.bool_)
     for column, positions in (("origin", origin), ("destination", destination)):
         refusal = blank_refusal(LANES.column(column))
-        notes.fault(only_blanks[positions], column, _always(refusal))
+        if column in there:
+            notes.fault(only_blanks[positions], column, _always(refusal))
 
 
 def _check_names(  # noqa: PLR0913, PLR0917  (three columns of one table)

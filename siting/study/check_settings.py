@@ -129,7 +129,8 @@ def _checked(
 
 def _example(column: Column) -> str:
     examples = {"currency": 'currency = "EUR"', "unit": 'unit = "t"'}
-    return f"{column.meaning[0].lower()}{column.meaning[1:]}, as in {examples[column.name]}"
+    meaning = column.meaning if column.meaning[:2].isupper() else f"{column.meaning[0].lower()}{column.meaning[1:]}"
+    return f"{meaning}, as in {examples[column.name]}"
 
 
 def _value(column: Column, value: object) -> object:

@@ -71,6 +71,14 @@ class Gathering:
         """Return the warnings in the order of the tables and rows."""
         return self._warnings.listed()
 
+    def fault_counts(self) -> dict[str, int]:
+        """Return how many faults each table has, in the order they are listed, those not listed included."""
+        return self._faults.counts()
+
+    def warning_counts(self) -> dict[str, int]:
+        """Return how many warnings each table has, likewise."""
+        return self._warnings.counts()
+
 
 class _Listed:
     def __init__(self, what: str) -> None:
@@ -87,10 +95,16 @@ class _Listed:
         else:
             self.more[fault.table] += 1
 
-    def listed(self) -> tuple[Fault, ...]:
+    def counts(self) -> dict[str, int]:
+        return {table: len(self._lists[table]) + self.more[table] for table in self._tables()}
+
+    def _tables(self) -> list[str]:
         order = {name: place for place, name in enumerate(TABLES)}
+        return sorted(self._lists, key=lambda name: order.get(name, -1))
+
+    def listed(self) -> tuple[Fault, ...]:
         result: list[Fault] = []
-        for table in sorted(self._lists, key=lambda name: order.get(name, -1)):
+        for table in self._tables():
             result += sorted(self._lists[table], key=lambda fault: fault.row or 0)
             if self.more[table]:
                 result.append(

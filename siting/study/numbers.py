@@ -138,7 +138,7 @@ def _turn(name: str, table: RawTable) -> _Turned | None:
     said = list(_form_words(table))
     faults: list[Fault] = []
     for each in columns:
-        decimal = table.form.decimal or _only(each.says) or (_only(of_all) if not each.says else "")
+        decimal = _only(each.says) or table.form.decimal or (_only(of_all) if not each.says else "")
         turned = _plain(each, decimal)
         cells[each.column.name] = turned
         said += _example(each, turned, decimal, table)

@@ -38,7 +38,7 @@ class Form:
     text_cells: Mapping[str, frozenset[int]] = field(default_factory=dict)
     """In a sheet, by column: rows whose cell is a text that looks like a number. Other numbers there are certain."""
     decimal: str = ""
-    """The decimal mark as the analyst stated it, "." or ","; "" = found out from the cells."""
+    """The decimal mark, "." or ",", of columns that do not prove theirs, as the analyst stated it; "" = not stated."""
     hidden: bool = False
     """Whether the sheet, or some of its rows, are hidden."""
 

@@ -7,10 +7,11 @@ from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from siting.errors import Fault
+from siting.errors import Fault, StudyError
 from siting.study.check import check_raw
 from siting.study.columns import TABLES
 from siting.study.gathering import nearest
+from siting.study.mapping import apply_mapping, mapping_beside, read_mapping
 from siting.study.raw import RawStudy
 from siting.study.read_csv import read_csv
 from siting.study.read_workbook import read_workbook
@@ -18,6 +19,7 @@ from siting.study.read_workbook import read_workbook
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from siting.study.mapping import ColumnMapping
     from siting.study.raw import RawTable
     from siting.study.tables import Study
 
@@ -30,7 +32,7 @@ NEAR_MISS = 0.78
 """How alike, from 0 to 1, an unknown table and a known one must be for the unknown one to be a slip."""
 
 
-def read_study(path: Path | str) -> Study:
+def read_study(path: Path | str, mapping: ColumnMapping | None = None) -> Study:
     """
     Read and check a study.
 
@@ -38,6 +40,8 @@ def read_study(path: Path | str) -> Study:
     ----------
     path
         A folder with `study.toml` and CSV tables, or an .xlsx workbook.
+    mapping
+        What its columns are called; None = the mapping that lies beside it, if any.
 
     Returns
     -------
@@ -49,10 +53,10 @@ def read_study(path: Path | str) -> Study:
     StudyError
         If anything is wrong; the error lists every fault with its place and repair.
     """
-    return check_raw(read_raw(path)).sound()
+    return check_raw(read_raw(path, mapping)).sound()
 
 
-def read_raw(path: Path | str) -> RawStudy:
+def read_raw(path: Path | str, mapping: ColumnMapping | None = None) -> RawStudy:
     """
     Read a study without judging it.
 
@@ -60,13 +64,25 @@ def read_raw(path: Path | str) -> RawStudy:
     ----------
     path
         A folder with `study.toml` and CSV tables, or an .xlsx workbook.
+    mapping
+        What its columns are called; None = the mapping that lies beside it, if any.
 
     Returns
     -------
     raw
-        Tables of text; what could not be read is among its faults.
+        Tables of text, columns renamed as the mapping says; what could not be read is among its faults.
     """
     path = Path(path)
+    raw = _read_unmapped(path)
+    if mapping is None and mapping_beside(path).is_file():
+        try:
+            mapping = read_mapping(mapping_beside(path))
+        except StudyError as error:
+            return replace(raw, faults=(*raw.faults, *error.faults))
+    return raw if mapping is None else apply_mapping(raw, mapping)
+
+
+def _read_unmapped(path: Path) -> RawStudy:
     if path.is_dir():
         return _read_folder(path)
     if path.is_file() and path.suffix.lower() in WORKBOOKS:
