@@ -2,50 +2,90 @@
 
 from __future__ import annotations
 
+import copy
 import html
 from collections import Counter
 from typing import TYPE_CHECKING
 
 import streamlit as st
 
-from siting.browse.drafts import MOST_EDITED_ROWS, ROW, SETTING, SETTINGS_TABLE, VALUE, Draft, keep_draft
-from siting.browse.shell import current_draft, headline, notice, section, use_draft
+from siting.browse.drafts import (
+    MOST_EDITED_ROWS,
+    ROW,
+    SETTING,
+    SETTINGS_TABLE,
+    VALUE,
+    Draft,
+    find_draft,
+    keep_draft,
+)
+from siting.browse.parcels import tables_zip
+from siting.browse.shell import (
+    DEMO_SOURCE,
+    LOST,
+    current_draft,
+    headline,
+    notice,
+    notices,
+    section,
+    show_given_map,
+    use_draft,
+)
 from siting.browse.upload import UPLOAD_TYPES, read_upload
-from siting.sharing.map import draw_given
-from siting.study.columns import TABLES, Column
+from siting.errors import StudyError
+from siting.study.columns import SETTINGS, SOLVE_SETTINGS, TABLES, Column
 from siting.study.demo import demo_folder
 from siting.study.read import read_raw
-from siting.study.words import faults_sentence, study_sentence
+from siting.study.words import counted, faults_sentence, study_sentence
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     import pandas as pd
 
     from siting.errors import Fault
     from siting.study.check import Checked
+    from siting.study.raw import RawStudy
 
-EDITOR_HEIGHT_PX = 460
-MAP_HEIGHT_PX = 560
+EDITOR_HEIGHT_PX = 470
+MOST_LISTED = 200
+"""Faults and warnings of one table that are listed; what comes after them is counted."""
+TAKE_OUT = "take it out, with its cells"
 
 
 def show() -> None:
     """Draw the page."""
     draft = current_draft()
-    checked = draft.checked
-    if checked.study is not None:
-        headline(study_sentence(checked.study), second=f"{draft.source}. {faults_sentence((), checked.warnings)}")
-    else:
-        headline(faults_sentence(checked.faults, checked.warnings), second=draft.source)
-    _tables(draft, checked)
+    _opening(draft)
+    if st.session_state.get(LOST):
+        notice(
+            "This address led to tables that the server no longer keeps (it was started again, or they lay untouched "
+            "behind many others). The study was opened afresh.",
+            kind="stale",
+        )
+    _tables(draft, draft.checked)
     section("Where everything is", "What was given, before anything is decided.")
-    if checked.study is None:
-        notice("The map is drawn once the tables have no fault.")
+    show_given_map(draft)
+    _other_studies(draft)
+
+
+def _opening(draft: Draft) -> None:
+    checked = draft.checked
+    if not draft.raw.tables:
+        headline(
+            "Empty tables: fill in sites or suppliers, then customers and settings",
+            second="Type, or paste from a spreadsheet: click the first cell of an empty row and press Ctrl+V. "
+            "Whatever is still missing or wrong is listed beside the table.",
+        )
+    elif checked.study is not None:
+        headline(study_sentence(checked.study), second=f"{draft.source}. {faults_sentence((), checked.warnings)}.")
     else:
-        st.iframe(_given_map(draft), height=MAP_HEIGHT_PX)
-    _open_another()
+        what = faults_sentence(checked.faults, checked.warnings)
+        headline(f"To mend before a plan can be made: {what}", second=f"{draft.source}. Everything typed is kept.")
 
 
 def _tables(draft: Draft, checked: Checked) -> None:
-    counts = Counter(_place(draft, fault) for fault in checked.faults)
+    counts = Counter(_place(fault) for fault in checked.faults)
     names = [*TABLES, SETTINGS_TABLE]
     chosen = st.segmented_control(
         "Table",
@@ -54,99 +94,142 @@ def _tables(draft: Draft, checked: Checked) -> None:
         required=True,
         key="chosen_table",
         label_visibility="collapsed",
-        format_func=lambda name: f"{name} ({counts[name]})" if counts[name] else name,
+        format_func=lambda name: f"{name}: {counted(counts[name], 'fault')}" if counts[name] else name,
     )
     name = str(chosen or names[0])
-    editor, beside = st.columns([2.6, 1], gap="medium")
+    editor, beside = st.columns([2.7, 1], gap="medium")
     with editor:
-        if name == SETTINGS_TABLE:
-            _edit_settings(draft)
-        else:
-            _edit_table(draft, name)
-    with beside:
-        _faults([fault for fault in checked.faults if _place(draft, fault) == name], "fault", name)
-        _faults([warning for warning in checked.warnings if _place(draft, warning) == name], "warning", name)
+        _edit(draft, name)
+    with beside, st.container(height=EDITOR_HEIGHT_PX + 34, border=False):
+        _beside(draft, checked, name)
 
 
-def _place(draft: Draft, fault: Fault) -> str:
-    return SETTINGS_TABLE if fault.table in {draft.raw.settings_name, "study"} else fault.table
+def _place(fault: Fault) -> str:
+    return fault.table if fault.table in TABLES else SETTINGS_TABLE
 
 
-def _edit_table(draft: Draft, name: str) -> None:
-    spec = TABLES[name]
+def _edit(draft: Draft, name: str) -> None:
+    """Show the table to edit and take what was changed since this session last saw it."""
     raw = draft.raw.tables.get(name)
     if raw is not None and len(raw) > MOST_EDITED_ROWS:
-        notice(f"{len(raw):,} rows: too many to edit here. Edit them where they came from and open the study again.")
+        notice(
+            f"{len(raw):,} rows: too many to edit here. Edit them where they came from and open the study again; "
+            "they are checked and planned with all the same."
+        )
         return
-    st.caption(f"{spec.meaning}. Row numbers count the header as row 1.")
-    base = _base(draft, name)
-    edited = st.data_editor(
+    key, base, moved_on = _base(draft, name)
+    edited = _edit_settings(key, base) if name == SETTINGS_TABLE else _edit_table(key, base, name)
+    change = copy.deepcopy(st.session_state.get(key))
+    if change == st.session_state["edit_change"]:
+        return
+    st.session_state["edit_change"] = change
+    if moved_on:
+        return
+    changed = _put_settings(draft, edited) if name == SETTINGS_TABLE else draft.put_table(name, edited)
+    st.session_state["edit_version"] = draft.version
+    if changed:
+        st.rerun()
+
+
+def _edit_table(key: str, base: pd.DataFrame, name: str) -> pd.DataFrame:
+    st.caption(f"{TABLES[name].meaning}. Rows count the header as row 1; Ctrl+F in the table finds a row.")
+    ours = TABLES[name].columns
+    columns = {column.name: st.column_config.TextColumn(column.name, help=_help(column)) for column in ours}
+    number = st.column_config.NumberColumn(ROW, disabled=True, pinned=True, width=48, format="%d")
+    return st.data_editor(
         base,
-        key=_editor_key(name),
+        key=key,
         num_rows="dynamic",
         hide_index=True,
         height=EDITOR_HEIGHT_PX,
-        column_config={
-            ROW: st.column_config.NumberColumn(ROW, disabled=True, pinned=True, width=48, format="%d"),
-            **{column.name: st.column_config.TextColumn(column.name, help=_help(column)) for column in spec.columns},
-        },
+        column_config={ROW: number, **columns},
     )
-    if draft.put_table(name, edited):
-        st.rerun()
 
 
-def _edit_settings(draft: Draft) -> None:
+def _edit_settings(key: str, base: pd.DataFrame) -> pd.DataFrame:
     st.caption("An empty value is the default. `solve.` settings say how long and how hard to search.")
-    base = _base(draft, SETTINGS_TABLE)
-    edited = st.data_editor(
+    return st.data_editor(
         base,
-        key=_editor_key(SETTINGS_TABLE),
+        key=key,
         hide_index=True,
         height=EDITOR_HEIGHT_PX,
         disabled=[column for column in base.columns if column != VALUE],
-        column_config={VALUE: st.column_config.TextColumn(VALUE, pinned=True), "meaning": {"width": "large"}},
+        column_config={
+            SETTING: st.column_config.TextColumn(SETTING, pinned=True, width=150),
+            VALUE: st.column_config.TextColumn(VALUE, pinned=True, width=140),
+            "unit": st.column_config.TextColumn("unit", width=130),
+            "meaning": st.column_config.TextColumn("meaning", width="large"),
+        },
     )
-    changed = [draft.put_setting(row[SETTING], row[VALUE] or "") for row in edited.fillna("").to_dict("records")]
-    if any(changed):
-        st.rerun()
 
 
-def _editor_key(name: str) -> str:
-    return f"edit-{name}-{st.session_state['edit_visit']}"
+def _put_settings(draft: Draft, edited: pd.DataFrame) -> bool:
+    rows = edited.fillna("").to_dict("records")
+    changed = [draft.put_setting(str(row[SETTING]), str(row[VALUE])) for row in rows]
+    return any(changed)
 
 
-def _base(draft: Draft, name: str) -> pd.DataFrame:
-    """Return what the editor starts from: the draft as it was when this table came into view, kept while it stays."""
+def _base(draft: Draft, name: str) -> tuple[str, pd.DataFrame, bool]:
+    """
+    Return the editor's key, what it starts from, and whether the draft has moved on elsewhere.
+
+    The start is the draft as it was when this table came into view, kept while it stays, so that scrolling and
+    selection stay too. Where another tab has edited the draft since, the editor starts again from what is there now.
+    """
     view = (st.session_state["visit"], draft.token, name)
-    if st.session_state.get("edit_view") != view:
+    same_view = st.session_state.get("edit_view") == view
+    moved_on = same_view and st.session_state["edit_version"] != draft.version
+    if moved_on and st.session_state.get(_key()) != st.session_state["edit_change"]:
+        notice("Another tab has edited this study: what you just typed was not taken. Type it again.", kind="stale")
+    if not same_view or moved_on:
         st.session_state["edit_view"] = view
-        st.session_state["edit_visit"] = st.session_state.get("edit_visit", 0) + 1
+        st.session_state["edit_number"] = st.session_state.get("edit_number", 0) + 1
         st.session_state["edit_base"] = draft.settings_frame() if name == SETTINGS_TABLE else draft.table(name)
+        st.session_state["edit_version"] = draft.version
+        st.session_state["edit_change"] = dict(UNCHANGED)
     base: pd.DataFrame = st.session_state["edit_base"]
-    return base
+    return _key(), base, moved_on
+
+
+UNCHANGED: dict[str, object] = {"edited_rows": {}, "added_rows": [], "deleted_rows": []}
+"""State of an editor that nobody has touched."""
+
+
+def _key() -> str:
+    return f"edit-{st.session_state.get('edit_number', 0)}"
 
 
 def _help(column: Column) -> str:
-    parts = [column.meaning, f"Unit: {column.unit}" if column.unit else ""]
-    if column.choices:
-        parts.append("One of " + ", ".join(column.choices))
-    if column.required:
-        parts.append("Must be filled in")
+    parts = [column.meaning, f"Unit: {column.unit}" if column.unit else "", *_allowed(column)]
     return ". ".join(part for part in parts if part) + "."
 
 
-def _faults(faults: list[Fault], word: str, name: str) -> None:
-    if not faults:
-        if word == "fault":
-            st.html(f'<p class="second">No fault in {html.escape(name)}.</p>')
-        return
-    items = "".join(f"<li>{html.escape(_said(fault))}</li>" for fault in faults)
-    kind = "fault" if word == "fault" else "stale"
-    title = f"{len(faults)} {word}{'s' if len(faults) != 1 else ''} in {name}"
-    st.html(
-        f'<div class="faults {kind}"><p class="notice {kind}">{html.escape(title)}</p><ul>{items}</ul></div>',
-        width="stretch",
-    )
+def _allowed(column: Column) -> list[str]:
+    choices = ["One of " + ", ".join(column.choices)] if column.choices else []
+    return choices + (["Must be filled in"] if column.required else [])
+
+
+def _beside(draft: Draft, checked: Checked, name: str) -> None:
+    faults = [fault for fault in checked.faults if _place(fault) == name]
+    warnings = [warning for warning in checked.warnings if _place(warning) == name]
+    _listed(faults, "fault", name)
+    _listed(warnings, "warning", name)
+    if not faults and not warnings:
+        elsewhere = faults_sentence(checked.faults, checked.warnings)
+        said = f"No fault in {name}." + (f" Elsewhere: {elsewhere}." if checked.faults else "")
+        st.html(f'<p class="second">{html.escape(said)}</p>')
+    if name in TABLES and draft.strangers(name):
+        _rename(draft, name)
+    columns = (*SETTINGS, *SOLVE_SETTINGS) if name == SETTINGS_TABLE else TABLES[name].columns
+    if name != SETTINGS_TABLE:
+        st.html(_columns_explained(columns))
+
+
+def _listed(found: Sequence[Fault], word: str, name: str) -> None:
+    said = [_said(fault) for fault in found[:MOST_LISTED]]
+    if len(found) > MOST_LISTED:
+        said.append(f"And {len(found) - MOST_LISTED:,} more.")
+    notices(said, kind="fault" if word == "fault" else "stale", title=f"{counted(len(found), word)} in {name}")
 
 
 def _said(fault: Fault) -> str:
@@ -157,30 +240,72 @@ def _said(fault: Fault) -> str:
     return f"{start}{fault.wrong}. {fault.repair}."
 
 
-def _given_map(draft: Draft) -> str:
-    study = draft.checked.study
-    key = ("given_map", draft.token, draft.version)
-    if st.session_state.get("given_map_key") != key and study is not None:
-        st.session_state["given_map_key"] = key
-        st.session_state["given_map_html"] = draw_given(study).html
-    return str(st.session_state["given_map_html"])
+def _rename(draft: Draft, name: str) -> None:
+    """Offer to rename or take out the columns that are not ours: the editor itself cannot."""
+    with st.popover("Rename or take out a column", width="stretch"):
+        label = st.selectbox("Column as typed", draft.strangers(name))
+        absent = [column for column in TABLES[name].names if column not in draft.labels(name)]
+        new = st.selectbox("What becomes of it", [TAKE_OUT, *absent])
+        if st.button("Do it"):
+            draft.rename_column(name, label, None if new == TAKE_OUT else new)
+            st.rerun()
 
 
-def _open_another() -> None:
-    section("Open another study", "One .xlsx workbook, or study.toml together with the CSV tables. Or start afresh.")
-    files = st.file_uploader("Files of a study", type=UPLOAD_TYPES, accept_multiple_files=True, key="study_files")
-    if files and st.session_state.get("taken_files") != (taken := [file.file_id for file in files]):
-        st.session_state["taken_files"] = taken
-        raw = read_upload({file.name: file.getvalue() for file in files})
-        use_draft(keep_draft(raw, ", ".join(file.name for file in files)))
+def _columns_explained(columns: Sequence[Column]) -> str:
+    """Return what each column means, as HTML."""
+    items = []
+    for column in columns:
+        notes = ", ".join(part for part in (column.unit, "required" if column.required else "") if part)
+        unit = f" <span>{html.escape(notes)}</span>" if notes else ""
+        said = ". ".join([column.meaning, *(["One of " + ", ".join(column.choices)] if column.choices else [])])
+        items.append(f"<dt>{html.escape(column.name)}{unit}</dt><dd>{html.escape(said.replace('`', ''))}.</dd>")
+    return f'<dl class="columns">{"".join(items)}</dl>'
+
+
+def _other_studies(draft: Draft) -> None:
+    section("Keep these tables, or open others", "What you open takes the place of these; you can go back to them.")
+    number = st.session_state.get("uploads", 0)
+    files = st.file_uploader(
+        "One .xlsx workbook, or study.toml together with the CSV tables",
+        type=UPLOAD_TYPES,
+        accept_multiple_files=True,
+        key=f"study_files-{number}",
+    )
+    opening, demo, fresh, back, keep = st.columns([1, 1, 1, 1, 1.2])
+    if opening.button("Open these files", type="primary", disabled=not files, width="stretch"):
+        _open_files(draft, [(file.name, file.getvalue()) for file in files])
+    if demo.button("Open the demo study", width="stretch"):
+        _open(draft, read_raw(demo_folder()), DEMO_SOURCE)
+    if fresh.button("Start with empty tables", width="stretch"):
+        _open(draft, read_upload([]), "A new study")
+    before = find_draft(draft.before) if draft.before else None
+    if back.button("Back to the study before", disabled=before is None, width="stretch") and before is not None:
+        use_draft(before)
         st.rerun()
-    demo, fresh, _ = st.columns([1, 1, 4])
-    if demo.button("Open the demo study"):
-        use_draft(keep_draft(read_raw(demo_folder()), "demo"))
-        st.rerun()
-    if fresh.button("Start with empty tables"):
-        use_draft(keep_draft(read_upload({}), "new study"))
-        st.rerun()
+    raw = draft.raw
+    keep.download_button(
+        "Save these tables (zip)",
+        data=lambda: tables_zip(raw),
+        file_name="study.zip",
+        on_click="ignore",
+        width="stretch",
+    )
+
+
+def _open_files(draft: Draft, files: Sequence[tuple[str, bytes]]) -> None:
+    try:
+        raw = read_upload(files)
+    except StudyError as error:
+        notices((str(fault) for fault in error.faults), kind="fault", title="These files were not opened")
+        return
+    st.session_state["uploads"] = st.session_state.get("uploads", 0) + 1
+    _open(draft, raw, ", ".join(name for name, _ in files))
+
+
+def _open(draft: Draft, raw: RawStudy, source: str) -> None:
+    st.session_state[LOST] = False
+    use_draft(keep_draft(raw, source, before=draft.token))
+    st.rerun()
 
 
 show()

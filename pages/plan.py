@@ -6,17 +6,19 @@ from typing import TYPE_CHECKING
 
 import streamlit as st
 
-from siting.browse.jobs import JobState, JobView, find_job, job_key, start_job, stop_job
+from siting.browse.jobs import JobState, JobView, find_job, start_job, stop_job
 from siting.browse.kept import kept_answer
 from siting.browse.plan_view import show_answer
-from siting.browse.shell import current_draft, headline, notice, section
+from siting.browse.shell import current_draft, headline, notice, section, show_given_map
+from siting.plan.words import money, percent_up
 from siting.sharing.charts import progress_chart
-from siting.study.columns import SOLVE_SETTINGS
+from siting.study.columns import SOLVE_SETTINGS, Column
 from siting.study.words import faults_sentence, study_sentence
 
 if TYPE_CHECKING:
+    from streamlit.delta_generator import DeltaGenerator
+
     from siting.browse.drafts import Draft
-    from siting.study.tables import Study
 
 REFRESH_S = 0.5
 
@@ -24,78 +26,130 @@ REFRESH_S = 0.5
 def show() -> None:
     """Draw the page."""
     draft = current_draft()
-    study = draft.checked.study
-    if study is None:
-        headline("No plan while the tables have faults", second=faults_sentence(draft.checked.faults, ()))
+    asked = find_job(draft.asked) if draft.asked else None
+    if draft.checked.study is None:
+        headline("No plan while the tables have faults", second=faults_sentence(draft.checked.faults, ()) + ".")
         notice("Mend the faults on the page Inputs; everything you typed is kept.", kind="fault")
+        _stale(asked)
         return
-    key = job_key(study)
-    job = find_job(key)
-    top = st.container()
-    with top:
-        _controls(draft, study, job)
+    job = find_job(draft.key)
+    if job is not None:
+        draft.asked = job.key
+    top, controls = st.columns([4.4, 1.2], gap="medium")
+    _controls(controls, draft, job, asked)
     if job is not None and job.running:
-        _watch(key, study.settings.currency)
-        return
-    if job is not None and job.state is JobState.FAILED:
-        notice(job.error, kind="fault")
-    _answer(draft, study, job)
+        with top:
+            _live(job.key)
+        _live_chart(job.key)
+        section("What there is to decide on", "As given on the page Inputs, before anything is decided.")
+        show_given_map(draft)
+    elif job is not None and job.state is JobState.DONE:
+        _answer(job, top)
+    else:
+        _not_yet(draft, job, asked, top)
 
 
-def _controls(draft: Draft, study: Study, job: JobView | None) -> None:
-    run, effort, _ = st.columns([1, 1.4, 5], vertical_alignment="center")
+def _controls(place: DeltaGenerator, draft: Draft, job: JobView | None, asked: JobView | None) -> None:
+    """Show Run, or Stop while it runs, and how hard to search."""
     running = job is not None and job.running
-    if run.button("Run", type="primary", disabled=running, width="stretch"):
-        draft.asked = start_job(study).key
+    if running and job is not None:
+        stopping = job.state is JobState.STOPPING
+        if place.button("Stop and keep the best plan", type="primary", disabled=stopping, width="stretch"):
+            stop_job(job.key)
+            st.rerun()
+    elif place.button("Run", type="primary", width="stretch"):
+        if asked is not None and asked.running:
+            stop_job(asked.key)
+        draft.asked = start_job(draft.checked.sound()).key
         st.rerun()
-    with effort.popover("How hard to search", width="stretch"):
+    with place.popover("How hard to search", width="stretch", disabled=running):
         for column in SOLVE_SETTINGS:
-            name = f"solve.{column.name}"
-            typed = st.text_input(
-                column.name, value=draft.setting_text(name), help=column.meaning, key=f"{name}-{draft.token}",
-                placeholder="default",
-            )  # fmt: skip
-            if draft.put_setting(name, typed):
-                st.rerun()
+            _solve_setting(draft, column)
+
+
+def _solve_setting(draft: Draft, column: Column) -> None:
+    name = f"solve.{column.name}"
+    text = draft.setting_text(name)
+    key = f"{draft.token}-{name}-{text}"
+    unit = f", {column.unit}" if column.unit else ""
+
+    def take() -> None:
+        draft.put_setting(name, st.session_state[key])
+
+    st.text_input(
+        f"{column.name}{unit}",
+        value=text,
+        help=column.meaning,
+        key=key,
+        placeholder="default",
+        on_change=take,
+    )
 
 
 @st.fragment(run_every=REFRESH_S)
-def _watch(key: str, currency: str) -> None:
-    """Draw the running solve twice a second; when it has ended, draw the page afresh."""
+def _live(key: str) -> None:
+    """Say twice a second how far the search is; when it has ended, draw the page afresh."""
     job = find_job(key)
     if job is None or not job.running:
         st.rerun()
-    progress = job.progress
-    found = "no plan yet" if progress.cost is None else f"best plan so far {progress.cost:,.0f} {currency} a year"
+    progress, currency = job.progress, job.study.settings.currency
+    doing = "Stopping, and keeping the best plan" if job.state is JobState.STOPPING else "Searching"
+    found = "no plan yet" if progress.cost is None else f"best plan so far {money(progress.cost, currency)} a year"
     gap = progress.gap
-    sure = "" if gap is None else f", at most {100 * gap:.2f} % above the best possible"
-    doing = "Stopping: keeping the best plan" if job.state is JobState.STOPPING else "Searching"
-    headline(f"{doing}: {found}{sure}", second=f"{progress.elapsed_s:,.0f} s. {progress.phase}")
-    if st.button("Stop and keep the best plan", disabled=job.state is JobState.STOPPING):
-        stop_job(key)
-        st.rerun(scope="fragment")
-    if any(step.cost is not None or step.bound is not None for step in job.history):
-        st.altair_chart(progress_chart((*job.history, progress), currency))
+    sure = "" if gap is None else f", at most {percent_up(gap)} above the best possible" if gap else ", proved best"
+    headline(f"{doing}: {found}{sure}", second=f"{progress.elapsed_s:,.0f} s, {progress.phase or 'starting'}.")
 
 
-def _answer(draft: Draft, study: Study, job: JobView | None) -> None:
-    done = job if job is not None and job.state is JobState.DONE else None
-    if done is not None:
-        draft.asked = done.key
-        kept = kept_answer(done)
-        show_answer(kept.study, kept.answer, kept.map_html)
-        if len(done.history) > 1:
-            section("How the search went")
-            st.altair_chart(progress_chart(done.history, study.settings.currency))
+@st.fragment(run_every=2 * REFRESH_S)
+def _live_chart(key: str) -> None:
+    """Draw the best cost and the bound over time, once there are both."""
+    job = find_job(key)
+    if job is None or not any(step.cost is not None for step in job.history):
         return
-    old = find_job(draft.asked) if draft.asked else None
-    if old is not None and old.state is JobState.DONE:
-        kept = kept_answer(old)
-        notice("The tables or settings have changed since this plan. Press Run for a plan of what is there now.",
-               kind="stale")  # fmt: skip
-        show_answer(kept.study, kept.answer, kept.map_html)
+    st.altair_chart(progress_chart((*job.history, job.progress), job.study.settings.currency))
+
+
+def _answer(job: JobView, top: DeltaGenerator) -> None:
+    kept = kept_answer(job)
+    show_answer(kept, top)
+    if len(job.history) > 1 and any(step.cost is not None for step in job.history):
+        section("How the search went")
+        st.altair_chart(progress_chart(job.history, job.study.settings.currency))
+
+
+def _not_yet(draft: Draft, job: JobView | None, asked: JobView | None, top: DeltaGenerator) -> None:
+    """Say what to do next where the tables as they are have no answer; the answer they had before stays in sight."""
+    study = draft.checked.sound()
+    with top:
+        if job is not None:
+            headline("The search failed; nothing you typed is lost", second=study_sentence(study) + ".")
+            notice(job.error, kind="fault")
+            notice("Press Run to try again, or choose another engine under How hard to search.")
+        elif asked is None:
+            headline("No plan yet: press Run", second=study_sentence(study) + ".")
+        else:
+            headline("Changed since the plan below: press Run", second=study_sentence(study) + ".")
+    if asked is None or asked.state is JobState.FAILED:
+        section("What there is to decide on", "As given on the page Inputs, before anything is decided.")
+        show_given_map(draft)
+    else:
+        _stale(asked)
+
+
+def _stale(asked: JobView | None) -> None:
+    """Show, marked as such, the answer to the tables before the last edits, or that it is still being looked for."""
+    if asked is None or asked.state is JobState.FAILED:
         return
-    headline("No plan yet: press Run", second=study_sentence(study))
+    with st.container(key="stale"):
+        if asked.running:
+            notice("A search on the tables as they were before your last edits is still running.", kind="stale")
+            if st.button("Stop it", disabled=asked.state is JobState.STOPPING):
+                stop_job(asked.key)
+                st.rerun()
+            _live(asked.key)
+            return
+        notice("Out of date: this answers the tables and settings as they were before your last edits.", kind="stale")
+        show_answer(kept_answer(asked), st.container())
 
 
 show()

@@ -16,6 +16,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pandas as pd
 
+from siting.browse.jobs import job_key
 from siting.cells import number_text
 from siting.study.check import Checked, check_raw
 from siting.study.check_settings import settings_from_cells
@@ -38,6 +39,9 @@ SETTINGS_TABLE = "settings"
 
 SETTING, VALUE = "setting", "value"
 
+_SETTLED = "It was edited since it was read; see that nothing is missing"
+"""Repair of what was wrong with a table when it was read, once somebody has edited it."""
+
 ROW = "#"
 """Column of an edited table that holds the row numbers faults speak of."""
 
@@ -55,7 +59,10 @@ class Draft:
     """Raised by every edit."""
     asked: str = ""
     """Key of the solve last asked for; empty before the first."""
+    before: str = ""
+    """Token of the draft it was opened from; empty for the first of a session."""
     _checked: tuple[int, Checked] | None = None
+    _key: tuple[int, str] | None = None
     _lock: threading.RLock = field(default_factory=threading.RLock)
 
     @property
@@ -65,6 +72,15 @@ class Draft:
             if self._checked is None or self._checked[0] != self.version:
                 self._checked = (self.version, check_raw(self.raw))
             return self._checked[1]
+
+    @property
+    def key(self) -> str:
+        """Key of the solve of the draft as it is, computed once per edit; empty while it has faults."""
+        study = self.checked.study
+        with self._lock:
+            if self._key is None or self._key[0] != self.version:
+                self._key = (self.version, job_key(study) if study is not None else "")
+            return self._key[1]
 
     def table(self, name: str) -> pd.DataFrame:
         """
@@ -76,14 +92,29 @@ class Draft:
             A table of a study, there or not.
         """
         raw = self.raw.tables.get(name)
-        given = raw.header if raw else ()
         rows = raw.rows if raw else np.zeros(0, dtype=np.int32)
         frame = pd.DataFrame({ROW: pd.array(rows, dtype="Int64")})
-        for column in (*given, *(known for known in TABLES[name].names if known not in given)):
-            found = raw.column(column) if raw else None
-            cells = found.to_pylist() if found is not None else [""] * len(rows)
-            frame[column] = pd.array(cells, dtype="string")
+        for column, cells in zip(self.labels(name), raw.columns if raw else (), strict=True):
+            frame[column] = pd.array(cells.to_pylist(), dtype="string")
+        for column in TABLES[name].names:
+            if column not in frame.columns:
+                frame[column] = pd.array([""] * len(rows), dtype="string")
         return frame
+
+    def labels(self, name: str) -> list[str]:
+        """Return what the typed columns of a table are called on a page: their names, told apart where they agree."""
+        raw = self.raw.tables.get(name)
+        labels = [ROW]
+        for position, column in enumerate(raw.header if raw else (), start=1):
+            label = column
+            while not label or label in labels:
+                label = f"{label or 'no name'} (column {position})"
+            labels.append(label)
+        return labels[1:]
+
+    def strangers(self, name: str) -> list[str]:
+        """Return the labels of the columns that are not ours, or there a second time."""
+        return [label for label in self.labels(name) if label not in TABLES[name].names]
 
     def put_table(self, name: str, frame: pd.DataFrame) -> bool:
         """
@@ -99,22 +130,49 @@ class Draft:
         frame
             As `table` returned it, cells changed, rows added (blank `ROW`) or removed.
         """
-        given = self.raw.tables[name].header if name in self.raw.tables else ()
+        given = dict(zip(self.labels(name), self.raw.tables[name].header, strict=True)) if self._has(name) else {}
         text = frame.drop(columns=ROW).astype("string").fillna("")
         kept = [column for column in text.columns if column in given or (text[column] != "").any()]
         numbers, last = [], FIRST_ROW - 1
         for number in frame[ROW]:
             last = last + 1 if pd.isna(number) else max(int(number), last + 1)
             numbers.append(last)
-        table = table_from_rows(kept, text[kept].itertuples(index=False), numbers) if kept else None
+        header = [given.get(column, column) for column in kept]
+        table = table_from_rows(header, text[kept].itertuples(index=False), numbers) if kept else None
         with self._lock:
             if _same(table, self.raw.tables.get(name)):
                 return False
-            tables = {key: value for key, value in self.raw.tables.items() if key != name}
-            if table is not None:
-                tables[name] = table
-            self._replace(tables=tables, mended=name)
+            self._put(name, table)
         return True
+
+    def rename_column(self, name: str, label: str, new: str | None) -> None:
+        """
+        Give a column of a table another name, or take it out.
+
+        Parameters
+        ----------
+        name
+            A table that is there.
+        label
+            The column, as `labels` calls it.
+        new
+            Its name from now on; None takes it out with all its cells.
+        """
+        with self._lock:
+            raw = self.raw.tables[name]
+            at = self.labels(name).index(label)
+            header = [*raw.header[:at], *([] if new is None else [new]), *raw.header[at + 1 :]]
+            columns = raw.columns if new is not None else (*raw.columns[:at], *raw.columns[at + 1 :])
+            self._put(name, replace(raw, header=tuple(header), columns=columns) if header else None)
+
+    def _has(self, name: str) -> bool:
+        return name in self.raw.tables
+
+    def _put(self, name: str, table: RawTable | None) -> None:
+        tables = {key: value for key, value in self.raw.tables.items() if key != name}
+        if table is not None:
+            tables[name] = table
+        self._replace(tables=tables, mended=name)
 
     def setting_text(self, name: str) -> str:
         """Return a setting as typed; `[solve]` settings are called `solve.gap` and so on. Empty = not set."""
@@ -161,13 +219,19 @@ class Draft:
         tables: Mapping[str, RawTable] | None = None,
         settings: Mapping[str, object] | None = None,
     ) -> None:
-        """Put new tables or settings in place; what reading the old ones had found is settled by that."""
+        """
+        Put new tables or settings in place.
+
+        What reading the old ones had found wrong is settled by that, but kept as warnings: cells or rows that could not
+        be read are still not there.
+        """
+        settled = [replace(fault, repair=_SETTLED) for fault in self.raw.faults if fault.table == mended]
         self.raw = replace(
             self.raw,
             tables=self.raw.tables if tables is None else tables,
             settings=self.raw.settings if settings is None else settings,
             faults=tuple(fault for fault in self.raw.faults if fault.table != mended),
-            warnings=tuple(warning for warning in self.raw.warnings if warning.table != mended),
+            warnings=(*self.raw.warnings, *settled),
             unreadable=self.raw.unreadable - {mended},
         )
         self.version += 1
@@ -183,9 +247,9 @@ _drafts: OrderedDict[str, Draft] = OrderedDict()
 _guard = threading.Lock()
 
 
-def keep_draft(raw: RawStudy, source: str) -> Draft:
-    """Keep a study as read under a new token and return its draft."""
-    draft = Draft(token=secrets.token_urlsafe(16), source=source, raw=raw)
+def keep_draft(raw: RawStudy, source: str, *, before: str = "") -> Draft:
+    """Keep a study as read under a new token and return its draft; `before` is the token of the one it follows."""
+    draft = Draft(token=secrets.token_urlsafe(16), source=source, raw=raw, before=before)
     with _guard:
         while len(_drafts) >= MOST_DRAFTS:
             _drafts.popitem(last=False)

@@ -2,7 +2,8 @@
 Solves that run beside the pages, a process each.
 
 A job is started once per key (same study, same settings), is found again by any page that asks with that key, and dies
-with the server: the worker stops when its standard input ends. Nothing here imports Streamlit.
+with the server: the worker stops when its standard input ends. All files of a job, those of its solver too, lie in one
+folder, which the worker removes where the server cannot. Nothing here imports Streamlit.
 """
 
 from __future__ import annotations
@@ -10,7 +11,10 @@ from __future__ import annotations
 import atexit
 import itertools
 import json
+import logging
+import os
 import shutil
+import signal
 import subprocess
 import sys
 import tempfile
@@ -26,7 +30,11 @@ from siting.study.fingerprint import fingerprint
 from siting.study.write import write_study
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from siting.study.tables import Study
+
+logger = logging.getLogger(__name__)
 
 STOP_GRACE_S = 10.0
 """Seconds a worker gets to hand over its best plan after Stop, before it is killed."""
@@ -77,9 +85,10 @@ class _Job:
     number: int
     study: Study
     folder: Path
-    process: subprocess.Popen[str]
-    started: float
-    lock: threading.Lock = field(default_factory=threading.Lock)
+    started: float = field(default_factory=time.monotonic)
+    process: subprocess.Popen[str] | None = None
+    """None until it has been started."""
+    lock: threading.RLock = field(default_factory=threading.RLock)
     state: JobState = JobState.RUNNING
     progress: Progress = field(default_factory=lambda: Progress(elapsed_s=0.0))
     history: list[Progress] = field(default_factory=list)
@@ -121,7 +130,9 @@ def start_job(study: Study) -> JobView:
         if job is not None and job.view().running:
             return job.view()
         _forget_old()
-        _jobs[key] = job = _launch(key, study)
+        folder = Path(tempfile.mkdtemp(prefix="siting-job-"))
+        _jobs[key] = job = _Job(key=key, number=next(_numbers), study=study, folder=folder)
+    threading.Thread(target=_run, args=(job,), name=f"siting-job-{job.number}", daemon=True).start()
     return job.view()
 
 
@@ -142,32 +153,53 @@ def stop_job(key: str) -> None:
         if job.state is not JobState.RUNNING:
             return
         job.state = JobState.STOPPING
-    _tell(job, "stop")
-    timer = threading.Timer(STOP_GRACE_S, job.process.kill)
+        _tell(job, "stop")
+    timer = threading.Timer(STOP_GRACE_S, _kill, args=(job,))
     timer.daemon = True
     timer.start()
 
 
-def _launch(key: str, study: Study) -> _Job:
-    folder = Path(tempfile.mkdtemp(prefix="siting-job-"))
-    write_study(study, folder / "study")
+def _run(job: _Job) -> None:
+    """Start the worker and follow it to its end; runs in a thread of its own."""
+    try:
+        write_study(job.study, job.folder / "study")
+        errors = _follow(job, _launch(job))
+    except Exception as error:
+        logger.exception("a solve could not be run")
+        errors = [str(error)]
+    with job.lock:
+        _kill(job)
+        if job.answer is not None:
+            job.state = JobState.DONE
+        else:
+            job.error = job.error or _last_words(job, errors)
+            job.state = JobState.FAILED
+    shutil.rmtree(job.folder, ignore_errors=True)
+
+
+def _launch(job: _Job) -> subprocess.Popen[str]:
+    """Start the worker in a group of its own, so that its solver can be ended with it, and hand it its settings."""
     process = subprocess.Popen(  # noqa: S603 - our own interpreter and module, no text of the user's
-        [sys.executable, "-P", "-u", "-m", "siting.browse.worker", str(folder / "study")],
+        [sys.executable, "-P", "-u", "-m", "siting.browse.worker", str(job.folder)],
         stdin=subprocess.PIPE,
         stdout=subprocess.PIPE,
         stderr=subprocess.PIPE,
         text=True,
         encoding="utf-8",
+        env={**os.environ, "TMPDIR": str(job.folder), "PYTHONIOENCODING": "utf-8"},
+        start_new_session=True,
     )
-    job = _Job(key=key, number=next(_numbers), study=study, folder=folder, process=process, started=time.monotonic())
-    _tell(job, json.dumps(asdict(study.settings.solve)))
-    threading.Thread(target=_follow, args=(job,), name=f"siting-job-{key[:8]}", daemon=True).start()
-    return job
+    with job.lock:
+        job.process = process
+        _tell(job, json.dumps(asdict(job.study.settings.solve)))
+        if job.state is JobState.STOPPING:
+            _tell(job, "stop")
+    return process
 
 
 def _tell(job: _Job, line: str) -> None:
-    """Write a line to the worker; a worker that has gone is found out by `_follow`."""
-    if job.process.stdin is None:
+    """Write a line to the worker, if it has started; a worker that has gone is found out by `_follow`."""
+    if job.process is None or job.process.stdin is None:
         return
     try:
         job.process.stdin.write(line + "\n")
@@ -176,51 +208,75 @@ def _tell(job: _Job, line: str) -> None:
         return
 
 
-def _follow(job: _Job) -> None:
-    """Read the worker's lines until it ends; runs in a thread of its own."""
+def _kill(job: _Job) -> None:
+    """End the worker and all it started; nothing happens where it has ended as it should."""
+    if job.process is None or job.process.poll() == 0:
+        return
+    try:
+        os.killpg(job.process.pid, signal.SIGKILL)
+    except AttributeError:  # no process groups on this system
+        job.process.kill()
+    except (ProcessLookupError, PermissionError):
+        return
+
+
+def _follow(job: _Job, process: subprocess.Popen[str]) -> list[str]:
+    """Read the worker's lines until it ends, and return what it wrote on standard error."""
     errors: list[str] = []
-    drain = threading.Thread(target=lambda: errors.extend(job.process.stderr or ()), daemon=True)
+    drain = threading.Thread(target=lambda: errors.extend(process.stderr or ()), daemon=True)
     drain.start()
-    for line in job.process.stdout or ():
+    for line in process.stdout or ():
         try:
             event = json.loads(line)
         except ValueError:
             continue
-        _take(job, event)
-    job.process.wait()
+        if isinstance(event, dict):
+            _take(job, event)
+    process.wait()
     drain.join(timeout=1.0)
-    for pipe in (job.process.stdin, job.process.stdout, job.process.stderr):
+    for pipe in (process.stdin, process.stdout, process.stderr):
         if pipe is not None:
             try:
                 pipe.close()
             except OSError:
                 continue
-    with job.lock:
-        if job.answer is not None:
-            job.state = JobState.DONE
-        else:
-            job.state = JobState.FAILED
-            job.error = job.error or _last_words(job.process.returncode, errors)
-    shutil.rmtree(job.folder, ignore_errors=True)
+    return errors
 
 
 def _take(job: _Job, event: dict[str, Any]) -> None:
+    """Take what the worker says. Cost and bound only improve, whatever it says."""
     with job.lock:
-        if event["event"] == "progress":
-            latest = Progress(**event["progress"])
-            if (latest.cost, latest.bound) != (job.progress.cost, job.progress.bound):
-                job.history.append(latest)
-            job.progress = latest
-        elif event["event"] == "answer":
-            job.answer = event["answer"]
-            job.progress = replace(job.progress, elapsed_s=time.monotonic() - job.started)
-        elif event["event"] == "error":
-            job.error = event["message"]
+        match event.get("event"):
+            case "progress":
+                latest = Progress(**event["progress"])
+                before = job.progress
+                job.progress = replace(
+                    latest, cost=_best(min, latest.cost, before.cost), bound=_best(max, latest.bound, before.bound)
+                )
+                if (job.progress.cost, job.progress.bound) != (before.cost, before.bound):
+                    job.history.append(job.progress)
+            case "answer":
+                job.answer = event["answer"]
+                job.progress = replace(job.progress, elapsed_s=time.monotonic() - job.started)
+            case "error":
+                job.error = event["message"]
 
 
-def _last_words(code: int | None, errors: list[str]) -> str:
+def _best(better: Callable[[float, float], float], one: float | None, other: float | None) -> float | None:
+    """Return the better of two numbers, either of which may be missing."""
+    if one is None or other is None:
+        return other if one is None else one
+    return better(one, other)
+
+
+def _last_words(job: _Job, errors: list[str]) -> str:
+    """Return why there is no answer, for the user; called under the job's lock."""
+    if job.state is JobState.STOPPING:
+        return f"The search did not hand over a plan within {STOP_GRACE_S:g} s of Stop and was ended. Run it again."
     last = errors[-1].strip() if errors else ""
-    return f"The solve ended without an answer (exit code {code}). {last}".strip()
+    code = job.process.returncode if job.process else None
+    how = "could not be started" if code is None else f"ended without an answer (exit code {code})"
+    return f"The search {how}. {last}".strip()
 
 
 def _forget_old() -> None:
@@ -233,7 +289,8 @@ def _forget_old() -> None:
 @atexit.register
 def _end_all() -> None:
     """Leave no process and no folder behind when the server ends."""
-    for job in _jobs.values():
-        if job.process.poll() is None:
-            job.process.kill()
+    for job in list(_jobs.values()):
+        if job.process is not None and job.process.poll() is None:
+            _kill(job)
+            job.process.wait()
         shutil.rmtree(job.folder, ignore_errors=True)

@@ -1,9 +1,9 @@
-"""What pages derive from an ended solve, derived once per solve: the answer in our types, and its map."""
+"""What pages derive from an ended solve, derived once per solve: the answer in our types, and its maps."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import lru_cache
+from functools import cached_property, lru_cache
 from typing import TYPE_CHECKING
 
 from siting.browse.jobs import find_job
@@ -20,28 +20,42 @@ MOST_KEPT = 8
 """Answers kept with their maps; a map is up to 2 MB."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class Kept:
-    """An answer, the study it answers and its map."""
+    """An answer and the study it answers."""
 
     study: Study
     answer: Answer
-    map_html: str
-    """Empty without a plan."""
+
+    @cached_property
+    def map_html(self) -> str:
+        """The map that is shared, with its headline; empty without a plan."""
+        plan = self.answer.plan
+        return draw_map(self.study, plan, headline=headline(self.answer)).html if plan else ""
+
+    @cached_property
+    def map_on_page(self) -> str:
+        """The map on a page that opens with the headline itself; empty without a plan."""
+        plan = self.answer.plan
+        return draw_map(self.study, plan, headline="").html if plan else ""
 
 
 def kept_answer(job: JobView) -> Kept:
-    """Return the answer of a job that is done, with its map."""
+    """
+    Return the answer of a job that is done.
+
+    Raises
+    ------
+    LookupError
+        If the job has no answer, or has been forgotten.
+    """
     return _derived(job.key, job.number)
 
 
 @lru_cache(maxsize=MOST_KEPT)
-def _derived(key: str, number: int) -> Kept:  # noqa: ARG001 - the number tells two jobs of one key apart
+def _derived(key: str, number: int) -> Kept:
     job = find_job(key)
-    if job is None or job.answer is None:
-        msg = f"job {key} has no answer"
+    if job is None or job.answer is None or job.number != number:
+        msg = f"job {number} of key {key} has no answer"
         raise LookupError(msg)
-    answer = answer_from_json(job.answer)
-    plan = answer.plan
-    drawn = draw_map(job.study, plan, headline=headline(answer)).html if plan else ""
-    return Kept(study=job.study, answer=answer, map_html=drawn)
+    return Kept(study=job.study, answer=answer_from_json(job.answer))

@@ -7,67 +7,81 @@ from typing import TYPE_CHECKING
 import pandas as pd
 import streamlit as st
 
-from siting.browse.shell import headline, notice, section
+from siting.browse.shell import MAP_HEIGHT_PX, headline, notice, notices, section
 from siting.browse.tables import Heading, Line, report_table
 from siting.plan.plan import CostLine, SiteVerdict, SupplierVerdict, TodayOutcome
+from siting.plan.proof import Outcome
 from siting.plan.words import CAUTIONS, NOT_FOR_PRICING, delivery_sentence, payback, sureness
 from siting.plan.words import headline as plan_headline
 from siting.sharing.charts import LINE_NAMES, band_chart, band_names, cost_chart
-from siting.sharing.looks import SITE_SYMBOLS, SUPPLIER_SYMBOLS, Formats
+from siting.sharing.looks import NO_BREAK, SITE_SYMBOLS, SUPPLIER_SYMBOLS, Formats
 from siting.sharing.map_facts import load_unit
 from siting.sharing.symbols import symbol_svg
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from streamlit.delta_generator import DeltaGenerator
     from streamlit.elements.lib.column_types import ColumnConfig
 
-    from siting.plan.plan import Answer, Plan, SiteLine, SupplierLine
+    from siting.browse.kept import Kept
+    from siting.plan.plan import Plan, SiteLine, SupplierLine
     from siting.study.tables import Study
 
-MAP_HEIGHT_PX = 720
+MOST_NAMED = 120
+"""Names that one row of a table lists; what comes after them is counted."""
 
 SITE_ORDER = (SiteVerdict.OPEN, SiteVerdict.KEEP, SiteVerdict.CLOSE, SiteVerdict.LEAVE)
 SUPPLIER_ORDER = (SupplierVerdict.SIGN, SupplierVerdict.STAY, SupplierVerdict.DROP, SupplierVerdict.LEAVE)
 
 
-def show_answer(study: Study, answer: Answer, map_html: str) -> None:
+def show_answer(kept: Kept, top: DeltaGenerator) -> None:
     """
     Show an answer from its headline to the cautions.
 
     Parameters
     ----------
-    study
-        The study it answers.
-    answer
-        With or without a plan.
-    map_html
-        The plan's map; unused without a plan.
+    kept
+        The answer, with or without a plan, and the study it answers.
+    top
+        Where the headline goes; everything else follows where the page is.
     """
-    plan = answer.plan
-    currency = study.settings.currency
+    study, plan = kept.study, kept.answer.plan
     if plan is None:
-        headline(plan_headline(answer, currency=currency))
-        for reason in answer.reasons:
-            notice(reason.sentence, kind="fault")
+        with top:
+            _no_plan(kept)
         return
-    headline(plan_headline(answer, currency=currency), second=payback(plan))
+    with top:
+        headline(plan_headline(kept.answer, currency=plan.currency), second=payback(plan))
     formats = Formats(currency=plan.currency, unit=load_unit(study))
-    st.iframe(map_html, height=MAP_HEIGHT_PX)
+    st.iframe(kept.map_on_page, height=MAP_HEIGHT_PX, alt="Map of the plan")
+    notices(plan.warnings, kind="stale", title="Worth a second look")
     section("Verdicts one by one")
     sites, suppliers = st.columns(2, gap="medium")
     sites.html(site_table(plan, formats))
     suppliers.html(supplier_table(plan, formats))
-    for warning in plan.warnings:
-        notice(warning, kind="stale")
     _costs(study, plan, formats)
     _service(plan, formats)
     _details(plan, formats)
     section("How sure is this?")
     st.html(_proof_table(plan, formats))
     section("Before anyone acts on it")
-    for caution in CAUTIONS:
-        notice(caution)
+    notices(CAUTIONS)
+
+
+def _no_plan(kept: Kept) -> None:
+    """Say why there is no plan, and what would help."""
+    answer, currency = kept.answer, kept.study.settings.currency
+    if len(answer.reasons) > 1:
+        headline("No plan can meet everything that is asked")
+        title = "All of these together must be met" if answer.together else "Any one of these repairs it"
+        notices((reason.sentence for reason in answer.reasons), kind="fault", title=title)
+    else:
+        headline(plan_headline(answer, currency=currency))
+    if answer.proof.outcome is Outcome.IMPOSSIBLE:
+        notice("Change it on the page Inputs, then press Run here.")
+    else:
+        notice("Give the search more time under How hard to search, or ask for a wider gap; then press Run.")
 
 
 def site_table(plan: Plan, formats: Formats) -> str:
@@ -82,8 +96,21 @@ def site_table(plan: Plan, formats: Formats) -> str:
         Heading(text=f"Charge, {formats.currency} a year", number=True),
         Heading(text=f"One-off, {formats.currency}", number=True),
     )
-    ordered = sorted(plan.sites, key=lambda line: SITE_ORDER.index(line.verdict))
-    return report_table(headings, (_site_line(line, formats) for line in ordered), caption="Sites")
+    taken = [line for line in plan.sites if line.verdict is not SiteVerdict.LEAVE or line.note]
+    ordered = sorted(taken, key=lambda line: SITE_ORDER.index(line.verdict))
+    left = [line.site for line in plan.sites if line.verdict is SiteVerdict.LEAVE and not line.note]
+    lines = [_site_line(line, formats) for line in ordered]
+    lines += _left_alone(SiteVerdict.LEAVE, symbol_svg(SITE_SYMBOLS[SiteVerdict.LEAVE]), left)
+    return report_table(headings, lines, caption="Sites")
+
+
+def _left_alone(verdict: str, mark: str, names: Sequence[str]) -> list[Line]:
+    """Return one row for all that the plan leaves alone, none where there is nothing."""
+    if not names:
+        return []
+    more = f" and {len(names) - MOST_NAMED:,} more" if len(names) > MOST_NAMED else ""
+    listed = ", ".join(names[:MOST_NAMED]) + more
+    return [Line(mark=mark, kind="faint", cells=(f"{verdict} {len(names):,}", listed, "", "", "", ""), wide=True)]
 
 
 def _site_line(line: SiteLine, formats: Formats) -> Line:
@@ -116,8 +143,12 @@ def supplier_table(plan: Plan, formats: Formats) -> str:
         Heading(text=f"Charge, {formats.currency} a year", number=True),
         Heading(text=f"One-off, {formats.currency}", number=True),
     )
-    ordered = sorted(plan.suppliers, key=lambda line: SUPPLIER_ORDER.index(line.verdict))
-    return report_table(headings, (_supplier_line(line, formats) for line in ordered), caption="Suppliers")
+    taken = [line for line in plan.suppliers if line.verdict is not SupplierVerdict.LEAVE or line.note]
+    ordered = sorted(taken, key=lambda line: SUPPLIER_ORDER.index(line.verdict))
+    left = [line.supplier for line in plan.suppliers if line.verdict is SupplierVerdict.LEAVE and not line.note]
+    lines = [_supplier_line(line, formats) for line in ordered]
+    lines += _left_alone(SupplierVerdict.LEAVE, symbol_svg(SUPPLIER_SYMBOLS[SupplierVerdict.LEAVE]), left)
+    return report_table(headings, lines, caption="Suppliers")
 
 
 def _supplier_line(line: SupplierLine, formats: Formats) -> Line:
@@ -161,7 +192,7 @@ def cost_table(plan: Plan, formats: Formats) -> str:
     if before:
         headings += [
             Heading(text=f"Today, {formats.currency} a year", number=True),
-            Heading(text="Difference", number=True),
+            Heading(text=f"Difference, {formats.currency} a year", number=True),
         ]
     lines = []
     for line in CostLine:
@@ -188,7 +219,7 @@ def _service(plan: Plan, formats: Formats) -> None:
     if service.estimated_share is not None:
         parts.append(f"{formats.share(service.estimated_share)} of volume moves on estimated distances")
     if plan.tonnes_co2e is not None:
-        parts.append(f"{formats.number(plan.tonnes_co2e)} t CO2e a year")
+        parts.append(f"{formats.number(plan.tonnes_co2e)}{NO_BREAK}t{NO_BREAK}CO2e a year")
     section("How far customers are", "; ".join(parts) + ".")
     table, chart = st.columns([1, 1.25], gap="medium")
     headings = (

@@ -5,29 +5,42 @@ from __future__ import annotations
 import html
 import os
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import streamlit as st
 
 from siting.browse.drafts import Draft, find_draft, keep_draft
 from siting.browse.serve import STUDY_VARIABLE
+from siting.browse.style import STYLE
 from siting.sharing import looks
+from siting.sharing.map import draw_given
 from siting.study.demo import demo_folder
 from siting.study.read import read_raw
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable
+
+    from siting.study.raw import RawStudy
 
 PAGES = (("inputs", "Inputs"), ("plan", "Plan"), ("share", "Share"))
 """File and title of each page, in the order of the navigation."""
 
 DRAFT = "draft"
-"""Name of the draft's token in the address and in the session."""
+"""Name of the draft's token in the address, and of the draft in the session."""
 
-LARGEST_WIDTH_PX = 1760
-"""Pages are no wider than this, so that lines stay readable on wide screens."""
+LOST = "lost"
+"""Name in the session of whether the address named a draft that is gone."""
+
+DEMO_SOURCE = "The demo study"
+
+MAP_HEIGHT_PX = 700
+"""Height of a map on a page: with the navigation above it, it fills a screen of 768 pixels."""
 
 
 def run() -> None:
     """Draw the frame and run the page the address names."""
     st.set_page_config(page_title="siting", layout="wide", initial_sidebar_state="collapsed")
-    st.html(f"<style>{looks.css_colours()}{_STYLE}</style>")
+    st.html(f"<style>{looks.css_colours()}{STYLE}</style>")
     folder = pages_folder()
     pages = [
         st.Page(folder / f"{name}.py", title=title, url_path=name, default=number == 0)
@@ -47,75 +60,66 @@ def pages_folder() -> Path:
 
 
 def current_draft() -> Draft:
-    """Return the draft of this session; a reload finds it by the token in the address."""
-    for token in (st.session_state.get(DRAFT), st.query_params.get(DRAFT)):
-        draft = find_draft(token) if token else None
-        if draft is not None:
-            break
-    else:
-        draft = keep_draft(read_raw(_study_given()), _study_given().name)
+    """
+    Return the draft of this session.
+
+    The session holds on to it, however many drafts others open; a reload or a second tab finds it by the token in the
+    address. An address whose draft is gone opens the study afresh, and `LOST` in the session says so.
+    """
+    draft: Draft | None = st.session_state.get(DRAFT)
+    if draft is None:
+        token = st.query_params.get(DRAFT, "")
+        draft = find_draft(token) or keep_draft(*_study_given())
+        st.session_state[LOST] = bool(token) and draft.token != token
     use_draft(draft)
     return draft
 
 
 def use_draft(draft: Draft) -> None:
     """Make this the draft of the session and of its address."""
-    st.session_state[DRAFT] = draft.token
+    st.session_state[DRAFT] = draft
     if st.query_params.get(DRAFT) != draft.token:
         st.query_params[DRAFT] = draft.token
 
 
-def _study_given() -> Path:
+def _study_given() -> tuple[RawStudy, str]:
     given = os.environ.get(STUDY_VARIABLE)
-    return Path(given) if given else demo_folder()
+    return (read_raw(Path(given)), Path(given).name) if given else (read_raw(demo_folder()), DEMO_SOURCE)
+
+
+def show_given_map(draft: Draft) -> None:
+    """Show the map of what was given, drawn once per edit; or say why there is none."""
+    study = draft.checked.study
+    if study is None:
+        notice("The map is drawn once the tables have no fault.")
+        return
+    key = (draft.token, draft.version)
+    kept = st.session_state.get("given_map")
+    if kept is None or kept[0] != key:
+        kept = st.session_state["given_map"] = (key, draw_given(study, headline="").html)
+    st.iframe(kept[1], height=MAP_HEIGHT_PX, alt="Map of the sites, suppliers and customers as given")
 
 
 def headline(text: str, *, second: str = "") -> None:
     """Show the sentence a page opens with, and a quieter one under it."""
-    st.html(f'<h1 class="headline">{html.escape(text)}</h1>')
-    if second:
-        st.html(f'<p class="second">{html.escape(second)}</p>')
+    under = f'<p class="second">{html.escape(second)}</p>' if second else ""
+    st.html(f'<h1 class="headline">{html.escape(text)}</h1>{under}')
 
 
 def section(title: str, lead: str = "") -> None:
     """Open a section with its title and one line that says what it answers."""
-    st.html(f'<h2 class="section">{html.escape(title)}</h2>')
-    if lead:
-        st.html(f'<p class="lead">{html.escape(lead)}</p>')
+    under = f'<p class="lead">{html.escape(lead)}</p>' if lead else ""
+    st.html(f'<h2 class="section">{html.escape(title)}</h2>{under}')
 
 
 def notice(text: str, *, kind: str = "note") -> None:
     """Show a framed sentence; `kind` is `note`, `stale` or `fault`."""
-    st.html(f'<p class="notice {kind}" role="status">{html.escape(text)}</p>')
+    notices([text], kind=kind)
 
 
-_STYLE = f"""
-.stMainBlockContainer {{max-width:{LARGEST_WIDTH_PX}px; padding-top:4.2rem; padding-bottom:4rem; margin:0 auto;}}
-header[data-testid="stHeader"] {{border-bottom:1px solid var(--rule); background:var(--paper);}}
-h1.headline {{font-size:1.36rem; line-height:1.34; font-weight:650; color:var(--ink); margin:.1rem 0 .25rem;
- padding:0; max-width:72rem; letter-spacing:-.005em;}}
-p.second {{color:var(--quiet); font-size:1rem; margin:0 0 .4rem; max-width:72rem;}}
-h2.section {{font-size:1.08rem; font-weight:650; color:var(--ink); margin:1.1rem 0 .1rem; padding:.7rem 0 0;
- border-top:1px solid var(--rule);}}
-p.lead {{color:var(--quiet); font-size:.92rem; margin:0 0 .3rem; max-width:60rem;}}
-p.notice {{border-left:4px solid var(--slate); background:var(--panel); padding:.55rem .8rem; margin:.2rem 0 .5rem;
- color:var(--ink); max-width:72rem;}}
-p.notice.stale {{border-left-color:var(--ochre);}}
-p.notice.fault {{border-left-color:var(--fault);}}
-table.report {{border-collapse:collapse; width:100%; font-size:.9rem; color:var(--ink);
- font-variant-numeric:tabular-nums;}}
-table.report caption {{text-align:left; color:var(--quiet); font-size:.85rem; padding-bottom:.3rem;}}
-table.report th {{text-align:left; font-weight:600; color:var(--quiet); border-bottom:1px solid var(--ink);
- padding:.25rem .55rem .25rem 0; vertical-align:bottom; font-size:.8rem;}}
-table.report td {{padding:.26rem .55rem .26rem 0; border-bottom:1px solid var(--rule); vertical-align:top;
- overflow-wrap:anywhere;}}
-table.report .n {{text-align:right;}}
-table.report td.n {{white-space:nowrap;}}
-table.report th, table.report td.verdict {{overflow-wrap:normal;}}
-table.report td.name {{min-width:7.5rem;}}
-table.report tr.total td {{border-top:1px solid var(--ink); font-weight:650;}}
-table.report tr.faint td {{color:var(--quiet);}}
-table.report td.verdict {{white-space:nowrap; font-weight:600;}}
-table.report img {{vertical-align:-4px; margin-right:.4rem; display:inline;}}
-.stIFrame iframe, iframe {{border:1px solid var(--rule);}}
-"""
+def notices(texts: Iterable[str], *, kind: str = "note", title: str = "") -> None:
+    """Show framed sentences close together, under a title where there is one; `kind` as for `notice`."""
+    head = f'<p class="title">{html.escape(title)}</p>' if title else ""
+    body = "".join(f'<p class="notice {kind}">{html.escape(text)}</p>' for text in texts)
+    if body:
+        st.html(f'<div class="notices" role="status">{head}{body}</div>')

@@ -11,6 +11,10 @@ if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
 
 
+MOST_WHOLE = 30
+"""Rows a table shows at once; a longer one scrolls in a frame of its own."""
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Heading:
     """One column of a report table."""
@@ -33,6 +37,8 @@ class Line:
     """`total` for sums, `faint` for what matters less; empty otherwise."""
     mark: str = ""
     """SVG of ours put before the first cell."""
+    wide: bool = False
+    """The second cell takes the room of all that follow it, which are not shown."""
 
 
 def report_table(headings: Sequence[Heading], lines: Iterable[Line], *, caption: str = "") -> str:
@@ -51,13 +57,18 @@ def report_table(headings: Sequence[Heading], lines: Iterable[Line], *, caption:
     head = "".join(f'<th scope="col"{_class(heading)}>{html.escape(heading.text)}</th>' for heading in headings)
     body = "".join(_row(headings, line) for line in lines)
     caption_html = f"<caption>{html.escape(caption)}</caption>" if caption else ""
-    return f'<table class="report">{caption_html}<thead><tr>{head}</tr></thead><tbody>{body}</tbody></table>'
+    table = f'<table class="report">{caption_html}<thead><tr>{head}</tr></thead><tbody>{body}</tbody></table>'
+    return f'<div class="frame tall" tabindex="0">{table}</div>' if body.count("<tr") > MOST_WHOLE else table
 
 
 def _row(headings: Sequence[Heading], line: Line) -> str:
+    shown = list(zip(headings, line.cells, strict=True))
+    span, mark = "", _image(line.mark)
+    if line.wide:
+        span, shown = f' colspan="{len(shown) - 1}"', shown[:2]
     cells = "".join(
-        f"<td{_class(heading)}>{_image(line.mark) if position == 0 else ''}{html.escape(cell)}</td>"
-        for position, (heading, cell) in enumerate(zip(headings, line.cells, strict=True))
+        f"<td{_class(heading)}{span if position else ''}>{'' if position else mark}{html.escape(cell)}</td>"
+        for position, (heading, cell) in enumerate(shown)
     )
     kind = f' class="{line.kind}"' if line.kind else ""
     return f"<tr{kind}>{cells}</tr>"
@@ -71,5 +82,7 @@ def _image(svg: str) -> str:
 
 
 def _class(heading: Heading) -> str:
-    names = " ".join(name for name, on in (("n", heading.number), ("verdict", heading.verdict), ("name", heading.name)) if on)
+    names = " ".join(
+        name for name, on in (("n", heading.number), ("verdict", heading.verdict), ("name", heading.name)) if on
+    )
     return f' class="{names}"' if names else ""

@@ -1,14 +1,18 @@
 """
 One solve in a process of its own: `python -u -m siting.browse.worker FOLDER`.
 
-The first line on standard input holds the `[solve]` settings as JSON; a line `stop`, or the end of standard input, asks
-for the best plan so far. Standard output carries one JSON object a line: `progress`, then `answer` or `error`.
+FOLDER holds the study in a folder `study`; it is removed at the end. The first line on standard input holds the
+`[solve]` settings as JSON; a line `stop`, or the end of standard input, asks for the best plan so far. Standard output
+carries one JSON object a line: `progress`, then `answer` or `error`.
 """
 
 from __future__ import annotations
 
+import contextlib
 import json
 import os
+import shutil
+import signal
 import sys
 import threading
 import time
@@ -39,7 +43,8 @@ class _Lines:
         self._written = 0.0
 
     def write(self, event: dict[str, Any]) -> None:
-        with self._lock:
+        # No one reads any more where the server has gone: `_wait_for_stop` ends this process.
+        with self._lock, contextlib.suppress(OSError):
             self._out.write(json.dumps(event) + "\n")
             self._out.flush()
 
@@ -58,19 +63,30 @@ class _Lines:
         self.write({"event": "progress", "progress": asdict(progress)})
 
 
-def _wait_for_stop(stop: Stop) -> None:
+def _wait_for_stop(stop: Stop, folder: Path) -> None:
     """Request the stop on a line `stop` or at the end of standard input; then make sure that an orphan ends."""
     for line in sys.stdin:
         if line.strip() == "stop":
             stop.request()
     stop.request()
     time.sleep(ORPHAN_GRACE_S)
+    shutil.rmtree(folder, ignore_errors=True)
+    if hasattr(os, "killpg") and os.getpgrp() == os.getpid():
+        os.killpg(0, signal.SIGKILL)  # with the solver this process may have started
     os._exit(1)
 
 
 def main() -> int:
-    """Solve the study in the folder named on the command line and write what happens."""
-    from siting.plan.audit import audit  # noqa: PLC0415 - the heavy imports come after the first line is out
+    """Solve the study in the folder named on the command line, write what happens, and remove the folder."""
+    folder = Path(sys.argv[1])
+    try:
+        return _solve(folder)
+    finally:
+        shutil.rmtree(folder, ignore_errors=True)
+
+
+def _solve(folder: Path) -> int:
+    from siting.plan.audit import audit  # noqa: PLC0415 - the heavy imports come once the folder is looked after
     from siting.plan.contract import answer_to_json  # noqa: PLC0415
     from siting.solving.solve import solve  # noqa: PLC0415
     from siting.study.read import read_study  # noqa: PLC0415
@@ -79,9 +95,9 @@ def main() -> int:
     lines = _Lines(sys.stdout)
     stop = Stop()
     settings = SolveSettings(**json.loads(sys.stdin.readline()))
-    threading.Thread(target=_wait_for_stop, args=(stop,), daemon=True).start()
+    threading.Thread(target=_wait_for_stop, args=(stop, folder), daemon=True).start()
     try:
-        study = read_study(Path(sys.argv[1]))
+        study = read_study(folder / "study")
         answer = solve(study, settings, listener=lines, stop=stop)
     except SitingError as error:
         lines.write({"event": "error", "message": str(error)})

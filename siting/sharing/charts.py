@@ -81,13 +81,25 @@ def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart:
         alt.Chart(frame)
         .mark_line(interpolate="step-after", strokeWidth=2.5, point={"size": 26, "filled": True})
         .encode(
-            x=alt.X("seconds:Q", title="seconds", axis=alt.Axis(grid=False)),
-            y=alt.Y("money:Q", title=f"{currency} a year", scale=scale, axis=alt.Axis(format=",.0f", tickCount=5)),
-            color=alt.Color("what:N", title=None, scale=alt.Scale(domain=names, range=[looks.TEAL, looks.OCHRE])),
-            strokeDash=alt.StrokeDash("what:N", title=None, scale=alt.Scale(domain=names, range=[[1, 0], [5, 3]])),
+            x=alt.X("seconds:Q", title="seconds", scale=alt.Scale(zero=True), axis=alt.Axis(grid=False, tickCount=8)),
+            y=alt.Y(
+                "money:Q",
+                title=f"{currency} a year",
+                scale=scale,
+                axis=alt.Axis(format=",.0f", tickCount=5, tickMinStep=1),
+            ),
+            color=alt.Color(
+                "what:N",
+                title=None,
+                legend=alt.Legend(symbolType="stroke", symbolSize=400),
+                scale=alt.Scale(domain=names, range=[looks.TEAL, looks.OCHRE]),
+            ),
+            strokeDash=alt.StrokeDash(
+                "what:N", title=None, legend=None, scale=alt.Scale(domain=names, range=[[1, 0], [5, 3]])
+            ),
             tooltip=[alt.Tooltip("what:N", title=" "), alt.Tooltip("money:Q", format=",.0f"), "seconds:Q"],
         )
-        .properties(height=220)
+        .properties(height=320)
     )
 
 
@@ -97,7 +109,7 @@ def _worth_seeing(history: Sequence[Progress]) -> list[float]:
     bounds = [step.bound for step in history if step.bound is not None]
     high = max(costs[-4:] or bounds)
     low = min(max(bounds or costs), high)
-    span = max(high - low, 1e-6 * abs(high), 1e-6)
+    span = max(high - low, 1e-4 * abs(high), 1.0)
     return [low - span, high + span / 4]
 
 

@@ -38,7 +38,8 @@ def draw_map(study: Study, plan: Plan, *, headline: str, locale: str = "en") -> 
     plan
         Its verdicts, flows and numbers are drawn.
     headline
-        The answer in one sentence; it stands above the map.
+        The answer in one sentence; it stands above the map. Empty for a map inside a page that says it already: then
+        the cautions and the tables below the map are left to that page too.
     locale
         Whose separators numbers carry, such as `en` or `de`.
 
@@ -55,7 +56,7 @@ def draw_map(study: Study, plan: Plan, *, headline: str, locale: str = "en") -> 
     return MapPage(page_of(plan_json(study, plan, headline=headline, locale=locale)))
 
 
-def draw_given(study: Study, *, fingerprint: str = "", locale: str = "en") -> MapPage:
+def draw_given(study: Study, *, headline: str | None = None, fingerprint: str = "", locale: str = "en") -> MapPage:
     """
     Draw what was given, before any plan: sites and suppliers by standing, customers by demand.
 
@@ -63,6 +64,8 @@ def draw_given(study: Study, *, fingerprint: str = "", locale: str = "en") -> Ma
     ----------
     study
         A checked study.
+    headline
+        As for `draw_map`; None counts what the study holds.
     fingerprint
         Of the study; empty = not shown.
     locale
@@ -78,7 +81,7 @@ def draw_given(study: Study, *, fingerprint: str = "", locale: str = "en") -> Ma
     SettingsError
         If the locale is unknown.
     """
-    return MapPage(page_of(given_json(study, fingerprint=fingerprint, locale=locale)))
+    return MapPage(page_of(given_json(study, headline=headline, fingerprint=fingerprint, locale=locale)))
 
 
 def write_map(path: Path, study: Study, plan: Plan, *, headline: str, locale: str = "en") -> None:

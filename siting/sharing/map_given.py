@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from siting.study.tables import Study
 
 
-def given_json(study: Study, *, fingerprint: str = "", locale: str = "en") -> Json:
+def given_json(study: Study, *, headline: str | None = None, fingerprint: str = "", locale: str = "en") -> Json:
     """
     Return the map of what was given.
 
@@ -24,6 +24,8 @@ def given_json(study: Study, *, fingerprint: str = "", locale: str = "en") -> Js
     ----------
     study
         A checked study.
+    headline
+        What stands above the map; None counts what the study holds.
     fingerprint
         Of the study; empty = not shown.
     locale
@@ -37,7 +39,8 @@ def given_json(study: Study, *, fingerprint: str = "", locale: str = "en") -> Js
     where = located(study, locale)
     demand = demand_by_customer(study)
     loads = {customer: loads_of(study, goods) for customer, goods in demand.items()}
-    headline = _headline(where, sum(sum(load) for load in loads.values()))
+    if headline is None:
+        headline = _headline(where, sum(sum(load) for load in loads.values()))
     return {
         **frame_json(where, kind="given", headline=headline, fingerprint=fingerprint, notes=()),
         "warnings": [looks.shortened(str(warning), 400) for warning in study.warnings],

@@ -11,6 +11,7 @@ siting.panels = function () {
   document.title = data.title ? `${data.title}: ${data.kind === "plan" ? "plan" : "what was given"}` : "Map";
   document.getElementById("title").append(siting.name(data.title || "Untitled study"));
   document.getElementById("headline").append(siting.name(data.headline));
+  document.body.classList.toggle("embedded", !data.headline); // inside a page that says the rest
   siting.verdictList();
   siting.legend();
   siting.foot();
