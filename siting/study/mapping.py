@@ -214,19 +214,19 @@ def _layout(held: object, file: str, faults: list[Fault]) -> Layout | None:
     for key in sorted(given.keys() - {"table", "header", "decimal", "columns"}):
         fault(key, given[key], "not a part of a layout", "Delete it")
     table = given.get("table")
-    if table not in TABLES:
+    spec = TABLES.get(table) if isinstance(table, str) else None
+    if spec is None:
         fault("table", table, "not a table", did_you_mean(str(table), TABLES, f"Write one of {', '.join(TABLES)}"))
     if not isinstance(given.get("header"), str):
         fault("header", given.get("header"), "not the hash of a header", "Have the mapping proposed again")
-    if given["decimal"] not in DECIMALS:
+    if given["decimal"] not in list(DECIMALS):
         fault("decimal", given["decimal"], "not a decimal mark", 'Write "point", "comma" or ""')
     if not isinstance(given["columns"], dict):
         fault("columns", given["columns"], "not a list of columns", "Write [layout.columns]")
-    elif table in TABLES:
-        known = TABLES[str(table)].names
+    elif spec is not None:
         for typed, ours in given["columns"].items():
-            if ours != "" and ours not in known:
-                repair = did_you_mean(str(ours), known, 'Write one of its columns, or ""')
+            if ours != "" and ours not in spec.names:
+                repair = did_you_mean(str(ours), spec.names, 'Write one of its columns, or ""')
                 fault(typed, ours, f"not a column of {table}", repair)
     return Layout(**given) if len(faults) == before else None
 

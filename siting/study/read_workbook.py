@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 import warnings
 from collections import defaultdict
+from contextlib import ExitStack
 from dataclasses import dataclass, field, replace
 from itertools import islice, product
 from typing import TYPE_CHECKING, Any
@@ -95,9 +96,11 @@ def _unusable(path: Path, wrong: str, repair: str) -> RawStudy:
 
 
 def _read_sheets(path: Path, found: _Found, inspection: Inspection) -> None:
-    values = load_workbook(path, read_only=True, data_only=True)
-    typed = load_workbook(path, read_only=True) if inspection.formulas else None
-    try:
+    with ExitStack() as stack:  # openpyxl closes no file that it fails to open as a workbook
+        values = load_workbook(stack.enter_context(path.open("rb")), read_only=True, data_only=True)
+        typed = None
+        if inspection.formulas:
+            typed = load_workbook(stack.enter_context(path.open("rb")), read_only=True)
         for sheet in values.worksheets:
             sheet.reset_dimensions()
             found.names.append(sheet.title)
@@ -108,10 +111,6 @@ def _read_sheets(path: Path, found: _Found, inspection: Inspection) -> None:
             if typed is not None and (sheet.title in found.tables or sheet.title == SETTINGS_SHEET):
                 typed[sheet.title].reset_dimensions()
                 _check_formulas(sheet, typed[sheet.title], found)
-    finally:
-        values.close()
-        if typed is not None:
-            typed.close()
 
 
 @dataclass(slots=True)
