@@ -35,6 +35,7 @@ from siting.browse.upload import UPLOAD_TYPES, read_upload
 from siting.errors import StudyError
 from siting.study.columns import SETTINGS, SOLVE_SETTINGS, TABLES, Column
 from siting.study.demo import demo_folder
+from siting.study.raw import RawStudy
 from siting.study.read import read_raw
 from siting.study.words import counted, faults_sentence, study_sentence
 
@@ -45,18 +46,23 @@ if TYPE_CHECKING:
 
     from siting.errors import Fault
     from siting.study.check import Checked
-    from siting.study.raw import RawStudy
 
 EDITOR_HEIGHT_PX = 470
 MOST_LISTED = 200
 """Faults and warnings of one table that are listed; what comes after them is counted."""
+NEW_SETTINGS = {"currency": "EUR", "unit": "t"}
+"""What a new study starts with, in sight on the page, to be changed."""
 TAKE_OUT = "take it out, with its cells"
 
 
 def show() -> None:
     """Draw the page."""
     draft = current_draft()
-    _opening(draft)
+    top, controls = st.columns([4.4, 1.2], gap="medium")
+    with top:
+        _opening(draft)
+    with controls:
+        _studies(draft)
     if st.session_state.get(LOST):
         notice(
             "This address led to tables that the server no longer keeps (it was started again, or they lay untouched "
@@ -66,7 +72,6 @@ def show() -> None:
     _tables(draft, draft.checked)
     section("Where everything is", "What was given, before anything is decided.")
     show_given_map(draft)
-    _other_studies(draft)
 
 
 def _opening(draft: Draft) -> None:
@@ -147,7 +152,7 @@ def _edit_table(key: str, base: pd.DataFrame, name: str) -> pd.DataFrame:
 
 
 def _edit_settings(key: str, base: pd.DataFrame) -> pd.DataFrame:
-    st.caption("An empty value is the default. `solve.` settings say how long and how hard to search.")
+    st.caption("An empty value is the default. Those that begin with solve say how long and how hard to search.")
     return st.data_editor(
         base,
         key=key,
@@ -156,8 +161,8 @@ def _edit_settings(key: str, base: pd.DataFrame) -> pd.DataFrame:
         disabled=[column for column in base.columns if column != VALUE],
         column_config={
             SETTING: st.column_config.TextColumn(SETTING, pinned=True, width=150),
-            VALUE: st.column_config.TextColumn(VALUE, pinned=True, width=140),
-            "unit": st.column_config.TextColumn("unit", width=130),
+            VALUE: st.column_config.TextColumn(VALUE, width=140),
+            "unit": st.column_config.TextColumn("unit", width=170),
             "meaning": st.column_config.TextColumn("meaning", width="large"),
         },
     )
@@ -257,39 +262,41 @@ def _columns_explained(columns: Sequence[Column]) -> str:
     for column in columns:
         notes = ", ".join(part for part in (column.unit, "required" if column.required else "") if part)
         unit = f" <span>{html.escape(notes)}</span>" if notes else ""
-        said = ". ".join([column.meaning, *(["One of " + ", ".join(column.choices)] if column.choices else [])])
-        items.append(f"<dt>{html.escape(column.name)}{unit}</dt><dd>{html.escape(said.replace('`', ''))}.</dd>")
+        said = ". ".join(
+            [column.meaning.replace("`", ""), *(["One of " + ", ".join(column.choices)] if column.choices else [])]
+        )
+        items.append(f"<dt>{html.escape(column.name)}{unit}</dt><dd>{html.escape(said)}.</dd>")
     return f'<dl class="columns">{"".join(items)}</dl>'
 
 
-def _other_studies(draft: Draft) -> None:
-    section("Keep these tables, or open others", "What you open takes the place of these; you can go back to them.")
-    number = st.session_state.get("uploads", 0)
-    files = st.file_uploader(
-        "One .xlsx workbook, or study.toml together with the CSV tables",
-        type=UPLOAD_TYPES,
-        accept_multiple_files=True,
-        key=f"study_files-{number}",
-    )
-    opening, demo, fresh, back, keep = st.columns([1, 1, 1, 1, 1.2])
-    if opening.button("Open these files", type="primary", disabled=not files, width="stretch"):
-        _open_files(draft, [(file.name, file.getvalue()) for file in files])
-    if demo.button("Open the demo study", width="stretch"):
-        _open(draft, read_raw(demo_folder()), DEMO_SOURCE)
-    if fresh.button("Start with empty tables", width="stretch"):
-        _open(draft, read_upload([]), "A new study")
-    before = find_draft(draft.before) if draft.before else None
-    if back.button("Back to the study before", disabled=before is None, width="stretch") and before is not None:
-        use_draft(before)
-        st.rerun()
+def _studies(draft: Draft) -> None:
+    """Offer to keep the tables as typed, and to open others in their place."""
     raw = draft.raw
-    keep.download_button(
+    st.download_button(
         "Save these tables (zip)",
         data=lambda: tables_zip(raw),
         file_name="study.zip",
         on_click="ignore",
         width="stretch",
     )
+    with st.popover("Open another study", width="stretch", key=f"open-{draft.token}"):
+        st.caption("It takes the place of the tables here; you can go back to them.")
+        files = st.file_uploader(
+            "One .xlsx workbook, or study.toml together with the CSV tables",
+            type=UPLOAD_TYPES,
+            accept_multiple_files=True,
+            key=f"files-{draft.token}",
+        )
+        if st.button("Open these files", type="primary", disabled=not files, width="stretch"):
+            _open_files(draft, [(file.name, file.getvalue()) for file in files])
+        if st.button("Open the demo study", width="stretch"):
+            _open(draft, read_raw(demo_folder()), DEMO_SOURCE)
+        if st.button("Start with empty tables", width="stretch"):
+            _open(draft, RawStudy(tables={}, settings=NEW_SETTINGS), "A new study")
+        before = find_draft(draft.before) if draft.before else None
+        if st.button("Back to the study before", disabled=before is None, width="stretch") and before is not None:
+            use_draft(before)
+            st.rerun()
 
 
 def _open_files(draft: Draft, files: Sequence[tuple[str, bytes]]) -> None:
@@ -298,7 +305,6 @@ def _open_files(draft: Draft, files: Sequence[tuple[str, bytes]]) -> None:
     except StudyError as error:
         notices((str(fault) for fault in error.faults), kind="fault", title="These files were not opened")
         return
-    st.session_state["uploads"] = st.session_state.get("uploads", 0) + 1
     _open(draft, raw, ", ".join(name for name, _ in files))
 
 

@@ -192,7 +192,7 @@ class Draft:
                 SETTING: names,
                 VALUE: [self.setting_text(name) for name in names],
                 "unit": [known[name].unit if name in known else "" for name in names],
-                "meaning": [known[name].meaning if name in known else "" for name in names],
+                "meaning": [known[name].meaning.replace("`", "") if name in known else "" for name in names],
             },
             dtype="string",
         )

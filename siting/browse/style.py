@@ -39,12 +39,12 @@ p.notice.fault {{border-left-color:var(--fault);}}
 .st-key-stale {{border-left:4px solid var(--ochre); padding-left:1.1rem;}}
 .st-key-stale h1.headline {{color:var(--quiet);}}
 
-dl.columns {{margin:0; font-size:.88rem; line-height:1.35;}}
+dl.columns {{margin:0 !important; padding:0 !important; font-size:.88rem; line-height:1.35;}}
 dl.columns dt {{font-weight:600; color:var(--ink); margin-top:.45rem;}}
 dl.columns dt span {{font-weight:400; color:var(--quiet);}}
 dl.columns dd {{color:var(--quiet);}}
-dl.columns dt, dl.columns dd {{margin-left:0 !important;}}
-[data-testid="stCaptionContainer"] p {{color:var(--quiet); opacity:1;}}
+dl.columns dt, dl.columns dd {{margin-left:0 !important; padding-left:0 !important;}}
+[data-testid="stCaptionContainer"], [data-testid="stCaptionContainer"] p {{color:var(--quiet) !important; opacity:1;}}
 
 div.frame {{overflow-x:auto;}}
 div.frame.tall {{max-height:44rem; overflow-y:auto;}}

@@ -16,7 +16,7 @@ import signal
 import sys
 import threading
 import time
-from dataclasses import asdict
+from dataclasses import asdict, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -60,7 +60,7 @@ class _Lines:
         self.write({"event": "progress", "progress": asdict(progress)})
 
     def end(self, progress: Progress) -> None:
-        self.write({"event": "progress", "progress": asdict(progress)})
+        self.write({"event": "progress", "progress": asdict(replace(progress, phase="auditing the plan"))})
 
 
 def _wait_for_stop(stop: Stop, folder: Path) -> None:
