@@ -11,6 +11,7 @@ from siting.browse.shell import MAP_HEIGHT_PX, headline, notice, notices, sectio
 from siting.browse.tables import Heading, Line, report_table
 from siting.plan.plan import CostLine, SiteVerdict, SupplierVerdict, TodayOutcome
 from siting.plan.proof import Outcome
+from siting.plan.freight_words import tariff_sentence
 from siting.plan.words import CAUTIONS, NOT_FOR_PRICING, delivery_sentence, payback, sureness
 from siting.plan.words import headline as plan_headline
 from siting.sharing.charts import LINE_NAMES, band_chart, band_names, cost_chart
@@ -174,9 +175,8 @@ def _costs(study: Study, plan: Plan, formats: Formats) -> None:
     table, chart = st.columns([1, 1.25], gap="medium")
     with table:
         st.html(cost_table(plan, formats))
-        delivery = delivery_sentence(study, plan)
-        if delivery:
-            notice(delivery)
+        for sentence in filter(None, (delivery_sentence(study, plan), tariff_sentence(study, plan))):
+            notice(sentence)
     with chart:
         st.altair_chart(cost_chart(plan))
         if plan.cost_lines[CostLine.GOODS]:

@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 from siting.commands.layout import bullets, paragraph, table
 from siting.plan.plan import CostLine
+from siting.plan.freight_words import tariff_sentence
 from siting.plan.words import CAUTIONS, delivery_sentence, headline, payback, percent
 
 if TYPE_CHECKING:
@@ -129,7 +130,7 @@ def _signed(difference: float) -> str:
 
 def _said(study: Study, plan: Plan) -> list[str]:
     """Return what is worth saying about distance, service, emissions and deliveries."""
-    said = [*_distance(study, plan.service), delivery_sentence(study, plan)]
+    said = [*_distance(study, plan.service), delivery_sentence(study, plan), tariff_sentence(study, plan)]
     if plan.tonnes_co2e is None:
         said.append("Emissions are not reported: the study sets no emission_kg_per_tkm.")
     else:

@@ -1,4 +1,9 @@
-"""What moving one unit of a good over a lane costs: freight, deliveries, carbon, and what is added to them."""
+"""
+What moving one unit of a good over a lane costs: freight, deliveries, carbon, and what is added to them.
+
+Freight is what comes first of `lanes.unit_cost`, the cheapest tariff that fits, and the rates of the settings; the
+first two take in the delivery.
+"""
 
 from __future__ import annotations
 
@@ -7,6 +12,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from siting.network.tariffs import NO_TARIFF, OWN_COST, delivery_sizes, price_by_tariff
 from siting.study.tables import Leg
 
 if TYPE_CHECKING:
@@ -39,7 +45,9 @@ class LegLanes:
     freight: Floats
     """Money per unit of the good, without the delivery charge."""
     delivery: Floats
-    """Money per unit of the good for deliveries at drop_size; 0 inbound and where unit_cost is given."""
+    """Money per unit of the good for deliveries; 0 inbound and where another than the rates sets freight."""
+    tariff: Positions
+    """Position in `Network.tariffs` of the tariff that sets freight, `NO_TARIFF` (rates) or `OWN_COST` (unit_cost)."""
     kg_co2e: Floats
     """kg CO2e per unit of the good, also where it has no price; 0 where no factor is set or km is NaN."""
     cost: Floats
@@ -70,19 +78,24 @@ def price_lanes(leg: Leg, lanes: FoundLanes, study: Study, parties: Parties, add
     Returns
     -------
     priced
-        freight = load x rate x km and delivery = load x drop_charge / drop_size, or unit_cost in place of both; carbon
-        = emission_kg_per_tkm x weight_t x km / 1000 x carbon_price_per_t.
+        freight = load x rate x km and delivery = load x drop_charge / drop_size, or unit_cost or a tariff in place of
+        both; carbon = emission_kg_per_tkm x weight_t x km / 1000 x carbon_price_per_t.
     """
     settings = study.settings
     inbound = leg is Leg.INBOUND
     rate = settings.inbound_rate if inbound else settings.outbound_rate
-    per_drop = settings.drop_charge / settings.drop_size if settings.drop_size and not inbound else 0.0
+    per_drop = np.zeros(len(lanes))
+    if settings.drop_charge and not inbound:
+        per_drop = settings.drop_charge / delivery_sizes(leg, study)[lanes.destination]
     unit_load = parties.load[lanes.good]
     costed = ~np.isnan(lanes.unit_cost)
     names_good = np.append(study.lanes.good >= 0, np.False_)[lanes.row]  # lanes without a row take the last element
     row_cost = lanes.unit_cost * np.where(names_good, 1.0, unit_load)
-    freight = np.where(costed, row_cost, unit_load * rate * lanes.km)
-    delivery = np.where(costed, 0.0, unit_load * per_drop)
+    by_tariff = price_by_tariff(leg, lanes, study)
+    tariff = np.where(costed, np.int32(OWN_COST), by_tariff.tariff)
+    rated = np.where(tariff == NO_TARIFF, rate * lanes.km, by_tariff.per_load)
+    freight = np.where(costed, row_cost, unit_load * rated)
+    delivery = np.where(tariff == NO_TARIFF, unit_load * per_drop, 0.0)
     km = np.where(np.isnan(lanes.km), 0.0, lanes.km)
     kg_co2e = (settings.emission_kg_per_tkm or 0.0) * parties.weight_t[lanes.good] * km
     return LegLanes(
@@ -93,6 +106,7 @@ def price_lanes(leg: Leg, lanes: FoundLanes, study: Study, parties: Parties, add
         km_given=lanes.km_given,
         freight=freight,
         delivery=delivery,
+        tariff=tariff,
         kg_co2e=kg_co2e,
         cost=freight + delivery + kg_co2e / KG_PER_T * settings.carbon_price_per_t + added,
     )

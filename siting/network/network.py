@@ -18,6 +18,7 @@ from siting.network.annualise import factors_of
 from siting.network.freight import LegLanes
 from siting.network.legs import direct_lanes, inbound_lanes, outbound_lanes
 from siting.network.parties import Parties
+from siting.network.tariffs import tariff_names
 from siting.study.tables import SiteRuling, SiteStanding, SupplierRuling, SupplierStanding
 
 if TYPE_CHECKING:
@@ -112,6 +113,9 @@ class Network:
     outbound: LegLanes
     direct: LegLanes
 
+    tariffs: tuple[str, ...] = ()
+    """Names that `LegLanes.tariff` points to."""
+
     rules: tuple[NetworkRule, ...]
     fewest_sites: int
     """0 where not set."""
@@ -197,6 +201,7 @@ def build_network(study: Study) -> Network:
         inbound=inbound_lanes(study, parties),
         outbound=outbound_lanes(study, parties),
         direct=direct_lanes(study, parties),
+        tariffs=tariff_names(study),
         rules=_rules(study),
         fewest_sites=settings.fewest_sites or 0,
         most_sites=len(sites) if settings.most_sites is None else settings.most_sites,

@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from siting.network.distance import geodesic_km
+from siting.plan.audit_tariffs import Haul, TariffBook
 from siting.study.tables import Leg, SiteStanding, SupplierStanding
 
 if TYPE_CHECKING:
@@ -62,6 +63,8 @@ class Move:
     """Price of the goods (inbound, direct) or handling (outbound)."""
     kg_co2e: float
     carbon: float
+    tariffs: Mapping[str, float]
+    """What each tariff that fits would charge for the whole flow; empty where `lanes` or the rates set freight."""
     refusal: str
     """Why the lane may not be used; empty where it may."""
 
@@ -115,6 +118,7 @@ class Books:
             amount * self.goods[good].load for (_, good), amount in self.demand.items() if good in self.goods
         )
         """Load of all demand: the whole that amounts are part of."""
+        self._tariffs = TariffBook(study)
         self._ends: dict[Leg, tuple[Mapping[str, Place], Mapping[str, Place]]] = {
             Leg.INBOUND: (self.suppliers, self.sites),
             Leg.OUTBOUND: (self.sites, self.customers),
@@ -176,16 +180,27 @@ class Books:
         ).reshape(len(flows), 4)
         return self.study.settings.circuity * geodesic_km(*points.T)
 
+    def _charges(self, flow: Flow, lane: _Lane, load: float) -> dict[str, float]:
+        """Return what each tariff that fits charges for a flow; empty where `lanes` sets its freight."""
+        if lane.unit_cost is not None:
+            return {}
+        haul = Haul(leg=flow.leg, origin=flow.origin, destination=flow.destination, km=lane.km)
+        return {name: charge * load for name, charge in self._tariffs.charges(haul).items()}
+
     def _move(self, flow: Flow, lane: _Lane) -> Move:
         """Return one flow worked out."""
         settings, good = self.study.settings, self.goods[flow.good]
         load, tonnes, km = flow.amount * good.load, flow.amount * good.weight_t, lane.km or 0.0
         rate = settings.inbound_rate if flow.leg is Leg.INBOUND else settings.outbound_rate
-        freight, delivery = rate * km * load, 0.0
+        freight, delivery, tariffs = rate * km * load, 0.0, self._charges(flow, lane, load)
         if lane.unit_cost is not None:
             freight = lane.unit_cost * flow.amount
-        elif flow.leg is not Leg.INBOUND and settings.drop_size:
-            delivery = settings.drop_charge / settings.drop_size * load
+        elif tariffs:
+            freight = min(tariffs.values())
+        elif flow.leg is not Leg.INBOUND and settings.drop_charge:
+            delivery = (
+                settings.drop_charge / (self._tariffs.delivery_size(flow.leg, flow.destination) or math.nan) * load
+            )
         if flow.leg is Leg.OUTBOUND:
             own = self.sites[flow.origin].handling_rate * load
         else:
@@ -198,6 +213,7 @@ class Books:
             tonnes=tonnes,
             km=lane.km,
             km_given=lane.km_given,
+            tariffs=tariffs,
             freight=freight,
             delivery=delivery,
             own=own,

@@ -78,6 +78,12 @@ def _flow(move: Move, currency: str) -> Iterator[str]:
         yield f"{move.name} is stated to be {shown(flow.km)} km long, the tables give {shown(move.km)}"
     if flow.km is not None and flow.km_given is not move.km_given:
         yield f"{move.name}: its distance is {'given' if move.km_given else 'estimated'}, the plan says otherwise"
+    named = move.tariffs.get(flow.tariff)
+    if bool(flow.tariff) is not bool(move.tariffs) or (
+        flow.tariff and (named is None or differs(named, move.freight, parts))
+    ):
+        right = min(move.tariffs, key=move.tariffs.__getitem__, default="")
+        yield f"{move.name} is stated to go by tariff {flow.tariff!r}, the tables give {right!r}"
 
 
 def _customers(books: Books, scale: float) -> Iterator[str]:

@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from siting.network.tariffs import NO_TARIFF
 from siting.plan.plan import (
     LOAD_TOLERANCE,
     CustomerLine,
@@ -124,7 +125,7 @@ def draw_up(  # noqa: PLR0913  # what a search hands over; all but the four inpu
         tonnes_co2e=tonnes_co2e_of(study.settings, moves),
         one_off=sum(line.one_off for line in sites) + sum(line.one_off for line in suppliers),
         today=today,
-        warnings=_warnings(study, sites, service),
+        warnings=_warnings(study, sites, service, moves),
     )
 
 
@@ -250,6 +251,7 @@ def _ends(network: Network, leg: Leg) -> tuple[tuple[str, ...], tuple[str, ...]]
 def _flows(network: Network, moves: AllMoves) -> tuple[Flow, ...]:
     """Return what moves, by leg, origin, destination and good."""
     flows = []
+    named = (*network.tariffs, "", "")  # `OWN_COST` and `NO_TARIFF` take the last two
     for leg in moves:
         origins, destinations = _ends(network, leg.leg)
         km = leg.km.tolist()
@@ -263,6 +265,7 @@ def _flows(network: Network, moves: AllMoves) -> tuple[Flow, ...]:
                 km=None if np.isnan(km[n]) else km[n],
                 km_given=bool(leg.km_given[n]),
                 cost=float(leg.cost[n]),
+                tariff=named[leg.tariff[n]],
             )
             for n, amount in enumerate(leg.amount.tolist())
         ]
@@ -303,9 +306,14 @@ def _customer_lines(network: Network, moves: AllMoves, marginal: Floats) -> tupl
     return tuple(lines)
 
 
-def _warnings(study: Study, sites: tuple[SiteLine, ...], service: Service) -> tuple[str, ...]:
+def _warnings(study: Study, sites: tuple[SiteLine, ...], service: Service, moves: AllMoves) -> tuple[str, ...]:
     """Return what the analyst should know about this plan."""
     warnings = []
+    unpriced = _outside_tariffs(study, moves)
+    if unpriced:
+        warnings.append(
+            f"{percent(unpriced)} of all load moved fits no tariff and goes at the rates of the settings."
+        )
     if service.estimated_share:
         warnings.append(
             f"{percent(service.estimated_share)} of the load is delivered over estimated distances "
@@ -317,3 +325,11 @@ def _warnings(study: Study, sites: tuple[SiteLine, ...], service: Service) -> tu
         higher, limit = percent(GROWTH), percent(FULL_SHARE)
         warnings.append(f"With demand {higher} higher these sites would be above {limit} full: {', '.join(full)}.")
     return tuple(warnings)
+
+
+def _outside_tariffs(study: Study, moves: AllMoves) -> float:
+    """Return the share of all load moved that goes at the rates although the study has tariffs."""
+    moved = sum(float(leg.load.sum()) for leg in moves)
+    if not study.tariffs or not moved:
+        return 0.0
+    return sum(float(leg.load[leg.tariff == NO_TARIFF].sum()) for leg in moves) / moved

@@ -143,6 +143,8 @@ class Flow:
     """True where `lanes` gives the distance, False where estimated."""
     cost: float
     """Money a year of this flow: freight, delivery, carbon and handling (outbound) or price (inbound, direct)."""
+    tariff: str = ""
+    """The tariff that sets its freight; "" = `lanes` or the rates of the settings."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -46,6 +46,8 @@ class Moves:
     km: Floats
     """Road km; NaN where nothing gives it."""
     km_given: Flags
+    tariff: Positions
+    """Position in the network's tariffs of the one that sets freight, or which other it is, as on the lanes."""
     freight: Floats
     """Money a year."""
     delivery: Floats
@@ -109,6 +111,7 @@ def moves_of(study: Study, network: Network, amounts: Amounts) -> AllMoves:
             tonnes=moved * network.weight_t[good],
             km=lanes.km[at],
             km_given=lanes.km_given[at],
+            tariff=lanes.tariff[at],
             freight=lanes.freight[at] * moved,
             delivery=lanes.delivery[at] * moved,
             bought_or_handled=own,

@@ -108,7 +108,10 @@ def _verdicts(plan: Plan) -> tuple[ResultTable, ResultTable]:
 def _flows(plan: Plan) -> ResultTable:
     return ResultTable(
         name="flows",
-        header=("leg", "origin", "destination", "good", "amount_per_year", "road_km", "distance", "cost_per_year"),
+        header=(
+            *("leg", "origin", "destination", "good", "amount_per_year", "road_km", "distance", "cost_per_year"),
+            "tariff",
+        ),
         rows=tuple(
             (
                 str(flow.leg),
@@ -119,6 +122,7 @@ def _flows(plan: Plan) -> ResultTable:
                 flow.km,
                 "" if flow.km is None else "given" if flow.km_given else "estimated",
                 flow.cost,
+                flow.tariff,
             )
             for flow in plan.flows
         ),

@@ -314,15 +314,18 @@ def delivery_sentence(study: Study, plan: Plan) -> str:
     Returns
     -------
     sentence
-        Empty where no delivery is charged, or where lanes with a unit_cost of their own escape it.
+        Empty where no delivery is charged, or where lanes with a unit_cost of their own or tariffs escape it.
     """
     settings, lanes = study.settings, study.lanes
     charged = plan.cost_lines[CostLine.DELIVERY]
     to_customers = lanes.leg != lanes.LEGS.index(Leg.INBOUND)
     escapes = bool((to_customers & ~np.isnan(lanes.unit_cost)).any())
-    if charged == 0 or settings.drop_size is None or escapes:
+    if charged == 0 or settings.drop_size is None or escapes or study.tariffs:
         return ""
+    size = f"each {settings.drop_size:g} {plan.unit} is one delivery"
+    if any(row.drop_size is not None for row in study.customers):
+        size = "each customer's drop_size is one delivery"
     return (
-        f"Delivery charges ({money(charged, plan.currency)} a year) are the same in every plan: each "
-        f"{settings.drop_size:g} {plan.unit} is one delivery, wherever it comes from."
+        f"Delivery charges ({money(charged, plan.currency)} a year) are the same in every plan: {size}, "
+        "wherever it comes from."
     )

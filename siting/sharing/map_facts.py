@@ -58,7 +58,7 @@ CUSTOMER_HEADS = (
     "Cost to serve",
     "Marginal cost, not for pricing",
 )
-LANE_HEADS = ("Leg", "Road distance", "Volume", "Cost")
+LANE_HEADS = ("Leg", "Road distance", "Volume", "Cost", "Tariff")
 
 GIVEN_SITE_HEADS = (
     "Standing",
@@ -214,6 +214,7 @@ def lane_facts(study: Study, formats: Formats, flows: Sequence[Flow]) -> list[st
         distance_text(formats, flows),
         goods_text(study, formats, _by_good(flows)),
         formats.money_a_year(sum(flow.cost for flow in flows)),
+        ", ".join(name_shown(name) for name in dict.fromkeys(flow.tariff for flow in flows) if name),
     ]
 
 

@@ -17,6 +17,7 @@ from siting.study.check_links import check_links
 from siting.study.check_rows import parse_table
 from siting.study.check_rules import check_rules
 from siting.study.check_settings import check_settings
+from siting.study.check_tariffs import check_tariffs
 from siting.study.columns import TABLES
 from siting.study.draft import KEYS, Draft
 from siting.study.gathering import Gathering
@@ -91,6 +92,7 @@ def check_raw(raw: RawStudy, lanes: ParsedLanes | None = None) -> Checked:
     check_links(draft)
     check_amounts(draft)
     check_rules(draft)
+    check_tariffs(draft)
     if lanes is None:
         known = Known(**draft.names) if draft.is_sound(*KEYS) else None
         lanes = parse_lanes(raw.tables.get("lanes"), known, gathering)

@@ -53,7 +53,7 @@ def check_settings(raw: RawStudy, gathering: Gathering) -> Settings:
         if refusal:
             refuse(gathering, place, None, "currency", values["currency"], refusal)
     settings = Settings(**values, solve=SolveSettings(**solve))
-    _check_pairs(place, settings, gathering)
+    _check_pairs(place, settings, gathering, has_tariffs="tariffs" in raw.tables)
     return settings
 
 
@@ -180,8 +180,8 @@ def _shown(value: object) -> str:
     return str(value)
 
 
-def _check_pairs(place: str, settings: Settings, gathering: Gathering) -> None:
-    """Note settings that mean nothing without one another."""
+def _check_pairs(place: str, settings: Settings, gathering: Gathering, *, has_tariffs: bool) -> None:
+    """Note settings that mean nothing without one another; tariffs go by drop_size too."""
 
     def fault(name: str, value: object, wrong: str, repair: str) -> None:
         if not gathering.hurt(place, None, name):
@@ -196,7 +196,8 @@ def _check_pairs(place: str, settings: Settings, gathering: Gathering) -> None:
                 wrong = f"{name} is set without {other}"
                 fault(name, getattr(settings, name), wrong, f"Set {other} too, or delete {name}")
 
-    both("drop_charge", "drop_size")
+    if not has_tariffs or settings.drop_size is None:
+        both("drop_charge", "drop_size")
     both("service_km", "service_share")
     if settings.carbon_price_per_t and settings.emission_kg_per_tkm is None:
         fault(

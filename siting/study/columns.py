@@ -27,6 +27,8 @@ from siting.study.tables import (
     SupplierRow,
     SupplierRuling,
     SupplierStanding,
+    TariffBasis,
+    TariffRow,
 )
 
 if TYPE_CHECKING:
@@ -223,6 +225,7 @@ CUSTOMERS = TableSpec(
             kind=Kind.YES_NO,
             meaning="Whether all its goods come from one origin; blank = as the settings say",
         ),
+        _amount("drop_size", "Load of one delivery; blank = as the settings say", "load per delivery", low_open=True),
     ),
 )
 
@@ -328,6 +331,35 @@ RULES = TableSpec(
     ),
 )
 
+TARIFFS = TableSpec(
+    name="tariffs",
+    meaning="Freight as it is quoted, in place of the rates and the delivery charge of the settings",
+    key=(),
+    row_type=TariffRow,
+    columns=(
+        _name("tariff", "Name of the tariff; its rows are its zones, distance bands and weight breaks"),
+        _choice("leg", "Leg the row is for; blank = every leg", Leg),
+        Column(name="from_country", kind=Kind.TEXT, meaning="Country of the origin; blank = any"),
+        Column(name="to_country", kind=Kind.TEXT, meaning="Country of the destination; blank = any"),
+        _amount("from_km", "Road distance above which the row applies", "km"),
+        _amount("to_km", "Road distance up to which the row applies; blank = any", "km", low_open=True),
+        _amount("from_size", "Least load of one delivery the row applies to", "load per delivery"),
+        _choice("basis", "What the rate is paid for; units are units of load", TariffBasis, required=True),
+        _amount("rate", "Price of what basis says", "money", required=True),
+        _amount("minimum", "Least charge for one delivery, or for one truck", "money"),
+        _amount("truck_load", "Load of a full truck; only where basis is per truck", "load per truck", low_open=True),
+        Column(
+            name="fill",
+            kind=Kind.NUMBER,
+            meaning="Share of the truck that is used, 80 % as 0.8; blank = all of it; only where basis is per truck",
+            low=0.0,
+            low_open=True,
+            high=1.0,
+            fraction=True,
+        ),
+    ),
+)
+
 SIZED_COLUMNS = ("opening_charge", "yearly_charge", "capacity", "least_throughput", "residual_value")
 """Columns of `sites` that stay blank where a site has sizes."""
 
@@ -339,7 +371,7 @@ ONE_OFF_CHARGES: Mapping[str, tuple[str, ...]] = {
 """Columns of money paid once, by table."""
 
 TABLES: Mapping[str, TableSpec] = {
-    spec.name: spec for spec in (SITES, CUSTOMERS, SUPPLIERS, SIZES, GOODS, DEMANDS, OFFERS, LANES, RULES)
+    spec.name: spec for spec in (SITES, CUSTOMERS, SUPPLIERS, SIZES, GOODS, DEMANDS, OFFERS, LANES, RULES, TARIFFS)
 }
 """Every table by name, in the order faults are listed and files are written."""
 
@@ -358,6 +390,7 @@ SETTINGS: tuple[Column, ...] = (
     _amount("inbound_rate", "Freight from suppliers to sites", "money per load and km"),
     _amount("drop_charge", "Paid per delivery to a customer; needs drop_size", "money per delivery"),
     _amount("drop_size", "Load of one delivery; needs drop_charge", "load per delivery", low_open=True),
+    _amount("inbound_size", "Load of one shipment to a site; only tariffs use it", "load per delivery", low_open=True),
     _fraction("interest_rate", "Interest a year, 8 % as 0.08"),
     _amount("life_years", "Years over which one-off charges are spread", "years", low_open=True),
     _amount("service_km", "Road distance that counts as good service; needs service_share", "km", low_open=True),

@@ -16,7 +16,17 @@ if TYPE_CHECKING:
     from siting.study.check_rows import Parsed
     from siting.study.gathering import Gathering
     from siting.study.settings import Settings
-    from siting.study.tables import CustomerRow, DemandRow, GoodRow, OfferRow, RuleRow, SiteRow, SizeRow, SupplierRow
+    from siting.study.tables import (
+        CustomerRow,
+        DemandRow,
+        GoodRow,
+        OfferRow,
+        RuleRow,
+        SiteRow,
+        SizeRow,
+        SupplierRow,
+        TariffRow,
+    )
 
 KEYS: Mapping[str, str] = {"sites": "site", "suppliers": "supplier", "customers": "customer", "goods": "good"}
 """The column that names the rows of each table other tables refer to."""
@@ -73,6 +83,11 @@ class Draft:
     def rules(self) -> Parsed[RuleRow]:
         """The table `rules`."""
         return self.tables["rules"]
+
+    @property
+    def tariffs(self) -> Parsed[TariffRow]:
+        """The table `tariffs`."""
+        return self.tables["tariffs"]
 
     def has(self, table: str) -> bool:
         """Return whether the study has the table, readable or not."""

@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from siting.arrays import Floats, Positions
     from siting.study.tables import LaneTable, Study
 
-_FORM = b"siting study, form 1\n"
+_FORM = b"siting study, form 2\n"
 """Changes whenever the canonical form does, so that fingerprints of two forms never agree by accident."""
 
 

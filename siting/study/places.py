@@ -333,7 +333,8 @@ def _check_rates(draft: Draft, ends: _Ends) -> None:
         or bool((priced_by_km & (ends.lanes.leg == _INBOUND)).any()),
     }
     place = draft.settings_name
+    which = "on lanes that no tariff fits" if draft.has("tariffs") else "by distance"
     for name, is_needed in needs.items():
         if is_needed and name not in draft.given_settings and place not in draft.unreadable:
-            wrong = "the setting is missing: freight by distance is taken as free of charge"
+            wrong = f"the setting is missing: freight {which} is taken as free of charge"
             draft.gathering.warn(place, None, name, "", wrong, "Add it; write 0 if freight costs nothing")

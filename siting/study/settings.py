@@ -49,7 +49,10 @@ class Settings:
     """Money per delivery to a customer. At least 0; needs drop_size."""
 
     drop_size: float | None = None
-    """Load per delivery. Above 0."""
+    """Load per delivery, where `customers` says nothing else. Above 0."""
+
+    inbound_size: float | None = None
+    """Load per shipment from a supplier to a site; only tariffs use it. Above 0."""
 
     interest_rate: float | None = None
     """Interest a year as a fraction, 8 % as 0.08, in [0, 1); compulsory while any one-off charge is not 0."""

@@ -85,6 +85,21 @@ class RuleKind(StrEnum):
     """At least `number`."""
 
 
+class TariffBasis(StrEnum):
+    """What a tariff's rate is paid for; load is amount times the good's load."""
+
+    PER_UNIT_KM = "per_unit_km"
+    """Per unit of load and road km."""
+    PER_UNIT = "per_unit"
+    """Per unit of load."""
+    PER_DELIVERY = "per_delivery"
+    """Per delivery, whatever its load."""
+    PER_TRUCK = "per_truck"
+    """Per truck, of which `truck_load` times `fill` is used."""
+    PER_TRUCK_KM = "per_truck_km"
+    """Per truck and road km."""
+
+
 NO_ATTRIBUTES: Mapping[str, str] = {}
 
 
@@ -133,6 +148,8 @@ class CustomerRow:
     """Greatest road km to the customer; None = any."""
     single_source: bool | None = None
     """None = as the settings say."""
+    drop_size: float | None = None
+    """Load of one delivery; None = as the settings say."""
     attributes: Mapping[str, str] = field(default_factory=lambda: NO_ATTRIBUTES)
     row: int = 0
 
@@ -232,6 +249,40 @@ class RuleRow:
     row: int = 0
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class TariffRow:
+    """
+    One row of `tariffs`: what a tariff charges where it applies.
+
+    A row applies where the leg and the countries it names are those of the lane, the road distance is above `from_km`
+    (0 includes 0) and at most `to_km`, and one delivery is at least `from_size`.
+    """
+
+    tariff: str
+    basis: TariffBasis
+    rate: float
+    """Money per what `basis` says."""
+    leg: Leg | None = None
+    """None = every leg."""
+    from_country: str = ""
+    """Of the origin; "" = any."""
+    to_country: str = ""
+    """Of the destination; "" = any."""
+    from_km: float = 0.0
+    to_km: float | None = None
+    """None = without limit."""
+    from_size: float = 0.0
+    """Load of one delivery from which the row applies."""
+    minimum: float = 0.0
+    """Least money for one delivery, or for one truck."""
+    truck_load: float | None = None
+    """Load a full truck holds; only where the basis is per truck."""
+    fill: float | None = None
+    """Share of the truck that is used, in (0, 1]; None = 1; only where the basis is per truck."""
+    attributes: Mapping[str, str] = field(default_factory=lambda: NO_ATTRIBUTES)
+    row: int = 0
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class LaneTable:
     """
@@ -296,6 +347,8 @@ class Study:
     """Empty = the table is absent; use `all_offers`."""
     lanes: LaneTable = field(default_factory=no_lanes)
     rules: tuple[RuleRow, ...] = ()
+    tariffs: tuple[TariffRow, ...] = ()
+    """Empty = the table is absent; freight then goes at the rates of the settings."""
     columns: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
     """Header of each table as given, so that it is written back as it was read."""
     warnings: tuple[Fault, ...] = ()

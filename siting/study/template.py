@@ -33,7 +33,7 @@ from siting.study.columns import (
 from siting.study.demo import demo_folder
 from siting.study.parse import range_words
 from siting.study.read import read_study
-from siting.study.tables import no_lanes
+from siting.study.tables import Leg, TariffBasis, TariffRow, no_lanes
 from siting.study.write import SHEET_ROWS, rows_to_write, settings_to_write
 
 if TYPE_CHECKING:
@@ -45,6 +45,17 @@ EXAMPLE_CUSTOMERS = ("Budapest", "Vienna", "Munich", "Brno", "Innsbruck", "Villa
 """Rows of the demo study that are shown, with all that belongs to them in the other tables."""
 
 EXAMPLE_LANES = 3
+
+EXAMPLE_TARIFFS = (
+    TariffRow(tariff="Groupage", leg=Leg.OUTBOUND, to_km=150, basis=TariffBasis.PER_DELIVERY, rate=110, row=2),
+    TariffRow(
+        tariff="Groupage", leg=Leg.OUTBOUND, from_km=150, basis=TariffBasis.PER_UNIT_KM, rate=0.24, minimum=110, row=3
+    ),
+    TariffRow(
+        tariff="Full truck", leg=Leg.INBOUND, basis=TariffBasis.PER_TRUCK_KM, rate=1.25, truck_load=24, fill=0.85, row=4
+    ),
+)
+"""Invented, since the demo study goes by rates."""
 
 SETTINGS_HEADER = ("setting", "value", "unit", "meaning")
 
@@ -152,6 +163,7 @@ def _examples(study: Study) -> Study:
         demands=tuple(row for row in study.demands if row.customer in EXAMPLE_CUSTOMERS),
         offers=tuple(row for row in study.offers if row.supplier in EXAMPLE_SUPPLIERS),
         rules=tuple(row for row in study.rules if names.issuperset(row.members)),
+        tariffs=EXAMPLE_TARIFFS,
         lanes=replace(lanes if shown else no_lanes(), **parts, attributes={}),
     )
 

@@ -155,7 +155,16 @@ def test_a_lane_tells_distance_volume_and_cost(case: tuple[Study, Plan, Json]) -
         "Road distance": "420 km, given",
         "Volume": "pots 40 t a year",
         "Cost": f"{flow.cost:,.0f} EUR a year",
+        "Tariff": "",
     }
+
+
+def test_a_lane_tells_its_tariff(case: tuple[Study, Plan, Json]) -> None:
+    """The tariff that prices it, each once; blank where none does."""
+    study, plan, _ = case
+    formats = Formats(currency="EUR", unit="t")
+    flows = [replace(flow, tariff=name) for flow, name in zip(plan.flows, ("Road", "Road", "Truck", ""), strict=False)]
+    assert map_facts.lane_facts(study, formats, flows)[-1] == "Road, Truck"
 
 
 @pytest.mark.parametrize(

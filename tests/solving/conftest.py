@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 
 from siting.network.network import LegLanes, Network
+from siting.network.tariffs import NO_TARIFF
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -50,6 +51,7 @@ def _lanes(rows: Sequence[Lane]) -> LegLanes:
         km_given=np.ones(count, dtype=np.bool_),
         freight=cost,
         delivery=np.zeros(count),
+        tariff=np.full(count, NO_TARIFF, dtype=np.int32),
         kg_co2e=np.zeros(count),
         cost=cost,
     )
