@@ -339,7 +339,8 @@ def obeys(plan: Plan, restriction: Restriction) -> tuple[str, ...]:
     parts = parts_of(plan)
     through = {line.site: line.throughput for line in plan.sites}
     through |= {line.supplier: line.volume for line in plan.suppliers}
-    faults = [f"{name} {size} is open, which was ruled out" for name, size in sorted(parts & restriction.without)]
+    ruled_out = sorted(" ".join(part).strip() for part in parts & restriction.without)
+    faults = [f"{part} is open, which was ruled out" for part in ruled_out]
     faults += [
         f"{name} moves {through[name]:g}, which was ruled out"
         for name, _ in sorted(parts & restriction.idle)
