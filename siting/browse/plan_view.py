@@ -9,9 +9,9 @@ import streamlit as st
 
 from siting.browse.shell import MAP_HEIGHT_PX, headline, notice, notices, section
 from siting.browse.tables import Heading, Line, report_table
+from siting.plan.freight_words import tariff_sentence
 from siting.plan.plan import CostLine, SiteVerdict, SupplierVerdict, TodayOutcome
 from siting.plan.proof import Outcome
-from siting.plan.freight_words import tariff_sentence
 from siting.plan.words import CAUTIONS, NOT_FOR_PRICING, delivery_sentence, payback, sureness
 from siting.plan.words import headline as plan_headline
 from siting.sharing.charts import LINE_NAMES, band_chart, band_names, cost_chart
