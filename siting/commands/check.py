@@ -64,15 +64,20 @@ def run(arguments: argparse.Namespace) -> int:
 def _propose(arguments: argparse.Namespace) -> int:
     """Write proposals for the columns of a study and list them; return the exit code."""
     from siting.study.demo import study_path
-    from siting.study.mapping import ColumnMapping, mapping_from, write_mapping
-    from siting.study.propose import propose_mapping
+    from siting.study.mapping import ColumnMapping, Layout, mapping_from, write_mapping
+    from siting.study.propose import propose_mapping, propose_sources
     from siting.study.read import read_raw
 
     file = Path(arguments.propose_mapping)
     if file.exists():
         say(f"{file}: the file is already there and may hold your corrections. Give another name, or delete it first.")
         return BAD_INPUT
-    raw = read_raw(study_path(arguments.study), ColumnMapping())
+    path = study_path(arguments.study)
+    raw = read_raw(path, ColumnMapping())
+    sources = propose_sources(raw)
+    if sources:
+        named = [Layout(table=table, header="", source=source) for source, table in sources.items()]
+        raw = read_raw(path, ColumnMapping(layouts=tuple(named)))
     proposals = propose_mapping(raw)
     mapping = mapping_from(raw, proposals)
     if not mapping.layouts:
@@ -80,7 +85,8 @@ def _propose(arguments: argparse.Namespace) -> int:
         return FOUND
     write_mapping(mapping, file, proposals)
     count = "1 column" if len(proposals) == 1 else f"{len(proposals)} columns"
-    lines = [
+    lines = [f"  {source!r} as the table {table}: by its name" for source, table in sources.items()]
+    lines += [
         f"  {each.table}, {each.typed!r} as {each.column}: {each.confidence:.0%}, {'; '.join(each.reasons)}"
         for each in proposals
     ]

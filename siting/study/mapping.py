@@ -53,6 +53,8 @@ class Layout:
     """Column of ours by column as typed; "" = left as it is."""
     decimal: str = ""
     """One of the keys of `DECIMALS`."""
+    source: str = ""
+    """Name of the file, without its ending, or of the sheet, where it is not that of the table."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -62,6 +64,11 @@ class ColumnMapping:
     layouts: tuple[Layout, ...] = ()
     name: str = MAPPING_FILE
     """What warnings call it."""
+
+    @property
+    def sources(self) -> dict[str, str]:
+        """Tables by the name of the file or sheet that holds them, where it is not their own."""
+        return {each.source: each.table for each in self.layouts if each.source}
 
     def find(self, table: str, header: Sequence[str]) -> Layout | None:
         """Return what is confirmed about a table with this header, or None."""
@@ -100,9 +107,10 @@ def mapping_from(raw: RawStudy, proposals: Iterable[Proposal]) -> ColumnMapping:
     layouts = []
     for name, table in raw.tables.items():
         others = [typed for typed in table.header if typed.strip() and typed not in TABLES[name].names]
-        if others or table.form.separator in {";", "\t"} or table.form.text_cells:
+        if others or table.form.source or table.form.separator in {";", "\t"} or table.form.text_cells:
             columns = {typed: confirmed.get((name, typed), "") for typed in others}
-            layouts.append(Layout(table=name, header=layout_hash(table.header), columns=columns))
+            header, source = layout_hash(table.header), table.form.source
+            layouts.append(Layout(table=name, header=header, columns=columns, source=source))
     return ColumnMapping(layouts=tuple(layouts))
 
 
@@ -210,8 +218,8 @@ def _layout(held: object, file: str, faults: list[Fault]) -> Layout | None:
     if not isinstance(held, dict):
         fault("layout", held, "not a layout", "Write [[layout]]")
         return None
-    given: dict[str, Any] = {"decimal": "", "columns": {}, **held}
-    for key in sorted(given.keys() - {"table", "header", "decimal", "columns"}):
+    given: dict[str, Any] = {"decimal": "", "columns": {}, "source": "", **held}
+    for key in sorted(given.keys() - {"table", "header", "decimal", "columns", "source"}):
         fault(key, given[key], "not a part of a layout", "Delete it")
     table = given.get("table")
     spec = TABLES.get(table) if isinstance(table, str) else None
@@ -219,6 +227,8 @@ def _layout(held: object, file: str, faults: list[Fault]) -> Layout | None:
         fault("table", table, "not a table", did_you_mean(str(table), TABLES, f"Write one of {', '.join(TABLES)}"))
     if not isinstance(given.get("header"), str):
         fault("header", given.get("header"), "not the hash of a header", "Have the mapping proposed again")
+    if not isinstance(given["source"], str) or given["source"] in TABLES:
+        fault("source", given["source"], "not another name of a file or sheet", 'Write its name, or ""')
     if given["decimal"] not in list(DECIMALS):
         fault("decimal", given["decimal"], "not a decimal mark", 'Write "point", "comma" or ""')
     if not isinstance(given["columns"], dict):
@@ -248,6 +258,8 @@ def write_mapping(mapping: ColumnMapping, path: Path | str, proposals: Iterable[
     lines = [_INTRODUCTION]
     for layout in mapping.layouts:
         head = {"table": layout.table, "header": layout.header, "decimal": layout.decimal}
+        if layout.source:
+            head = {"source": layout.source, **head}
         lines += ["[[layout]]", tomli_w.dumps(head), "[layout.columns]"]
         for typed, ours in layout.columns.items():
             reason = why.get((layout.table, typed))

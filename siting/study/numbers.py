@@ -203,6 +203,8 @@ def _plain(numbers: _Numbers, decimal: str) -> pa.Array:
 def _form_words(table: RawTable) -> Iterator[str]:
     """Yield how a table was written, as far as the program would not have written it so."""
     form = table.form
+    if form.source:
+        yield f"from {form.source!r}"
     if form.encoding.startswith("utf-16"):
         yield "as UTF-16"
     elif form.encoding != "utf-8":

@@ -18,7 +18,7 @@ from rapidfuzz.fuzz import token_sort_ratio
 from siting.study.columns import TABLES, Column, Kind
 from siting.study.draft import KEYS
 from siting.study.parse import NO, UNLIMITED, YES
-from siting.study.synonyms import SYNONYMS
+from siting.study.synonyms import SYNONYMS, TABLE_SYNONYMS
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Iterable, Mapping, Sequence
@@ -34,6 +34,9 @@ LEAST_CONFIDENCE = 0.5
 
 _LEAST_ALIKE = 0.72
 """How alike two names must be to count as alike, from 0 to 1."""
+
+_LEAST_ALIKE_TABLE = 0.85
+"""Likewise of tables, whose contents are not looked at."""
 
 _FITS = 0.9
 """Share of the cells that must be of a column's kind."""
@@ -161,11 +164,35 @@ def _alone(spec: TableSpec, column: Column) -> float:
     return _BY_KEY if spec.key == (column.name,) else 0.0
 
 
-def _likeness(typed: str, ours: str) -> tuple[float, str]:
+def propose_sources(raw: RawStudy) -> dict[str, str]:
+    """
+    Propose which table a file or sheet of another name holds, by its name.
+
+    Parameters
+    ----------
+    raw
+        A study as read.
+
+    Returns
+    -------
+    sources
+        Tables that are not there, by the name of what was not read; each at most once.
+    """
+    free = [name for name in TABLES if name not in raw.tables and name not in raw.unreadable]
+    sources: dict[str, str] = {}
+    for stranger in raw.strangers:
+        likeness = {name: _likeness(stranger, name, TABLE_SYNONYMS)[0] for name in free if name not in sources.values()}
+        best = max(likeness, key=likeness.__getitem__, default="")
+        if best and likeness[best] >= _LEAST_ALIKE_TABLE:
+            sources[stranger] = best
+    return sources
+
+
+def _likeness(typed: str, ours: str, synonyms: Mapping[str, tuple[str, ...]] = SYNONYMS) -> tuple[float, str]:
     """Return how alike two names are, from 0 to 1, and the word of ours, or its synonym, that comes nearest."""
     word = fold(typed)
     best, nearest = 0.0, ours
-    for known in (ours.replace("_", " "), *SYNONYMS.get(ours, ())):
+    for known in (ours.replace("_", " "), *synonyms.get(ours, ())):
         likeness = max(Indel.normalized_similarity(word, known), token_sort_ratio(word, known) / 100)
         if len(known) <= 3 and likeness < 1.0:  # noqa: PLR2004  (such short words are alike by chance)
             continue

@@ -30,6 +30,8 @@ FIRST_ROW = 2
 class Form:
     """How a table was written where it was found. The form that the program writes is the default."""
 
+    source: str = ""
+    """Name of the file, without its ending, or of the sheet, where it is not that of the table."""
     encoding: str = "utf-8"
     separator: str = ","
     """What stands between the cells of a text file; "" in a sheet."""
@@ -78,6 +80,8 @@ class RawStudy:
     """What went wrong while reading: files that cannot be read, ragged rows."""
     warnings: tuple[Fault, ...] = ()
     """What was left unread."""
+    strangers: tuple[str, ...] = ()
+    """Names of files or sheets beside the tables, which were not read."""
     unreadable: frozenset[str] = frozenset()
     """Tables that are there but could not be read, and `settings_name` where the settings could not."""
 

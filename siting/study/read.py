@@ -11,15 +11,14 @@ from siting.errors import Fault, StudyError
 from siting.study.check import check_raw
 from siting.study.columns import TABLES
 from siting.study.gathering import nearest
-from siting.study.mapping import apply_mapping, mapping_beside, read_mapping
+from siting.study.mapping import ColumnMapping, apply_mapping, mapping_beside, read_mapping
 from siting.study.raw import RawStudy
 from siting.study.read_csv import read_csv
 from siting.study.read_workbook import read_workbook
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Mapping
 
-    from siting.study.mapping import ColumnMapping
     from siting.study.raw import RawTable
     from siting.study.tables import Study
 
@@ -73,21 +72,21 @@ def read_raw(path: Path | str, mapping: ColumnMapping | None = None) -> RawStudy
         Tables of text, columns renamed as the mapping says; what could not be read is among its faults.
     """
     path = Path(path)
-    raw = _read_unmapped(path)
-    if mapping is None and mapping_beside(path).is_file():
+    faults: tuple[Fault, ...] = ()
+    if mapping is None:
         try:
-            mapping = read_mapping(mapping_beside(path))
+            mapping = read_mapping(mapping_beside(path)) if mapping_beside(path).is_file() else ColumnMapping()
         except StudyError as error:
-            return replace(raw, faults=(*raw.faults, *error.faults))
-    return raw if mapping is None else apply_mapping(raw, mapping)
+            mapping, faults = ColumnMapping(), error.faults
+    raw = apply_mapping(_read_unmapped(path, mapping.sources), mapping)
+    return replace(raw, faults=(*raw.faults, *faults)) if faults else raw
 
 
-def _read_unmapped(path: Path) -> RawStudy:
+def _read_unmapped(path: Path, sources: Mapping[str, str]) -> RawStudy:
     if path.is_dir():
-        return _read_folder(path)
+        return _read_folder(path, sources)
     if path.is_file() and path.suffix.lower() in WORKBOOKS:
-        raw, others = read_workbook(path)
-        return _with_strangers(raw, others, "sheet")
+        return _with_strangers(read_workbook(path, sources), "sheet")
     wrong = "there is no such folder or workbook" if not path.exists() else "neither a folder nor an .xlsx workbook"
     fault = Fault(
         table="study", value=str(path), wrong=wrong, repair="Give a folder of CSV tables, or an .xlsx workbook"
@@ -95,37 +94,45 @@ def _read_unmapped(path: Path) -> RawStudy:
     return RawStudy(tables={}, faults=(fault,), unreadable=frozenset({*TABLES, SETTINGS_FILE}))
 
 
-def _read_folder(folder: Path) -> RawStudy:
+def _read_folder(folder: Path, sources: Mapping[str, str]) -> RawStudy:
     tables: dict[str, RawTable] = {}
     faults: list[Fault] = []
     unreadable: set[str] = set()
+    known: set[str] = set()
     for name in TABLES:
-        file = folder / f"{name}.csv"
-        if not file.exists():
+        named = (name, *(source for source, table in sources.items() if table == name))
+        stem = next((stem for stem in named if (folder / f"{stem}.csv").exists()), None)
+        if stem is None:
             continue
-        result = read_csv(file, name)
+        known.add(f"{stem}.csv")
+        result = read_csv(folder / f"{stem}.csv", name)
         faults += result.faults
         if result.table is None:
             unreadable.add(name)
         else:
-            tables[name] = result.table
+            tables[name] = _from(result.table, "" if stem == name else stem)
     settings, fault = _read_toml(folder / SETTINGS_FILE)
     if fault is not None:
         faults.append(fault)
         unreadable.add(SETTINGS_FILE)
-    raw = RawStudy(tables=tables, settings=settings, faults=tuple(faults), unreadable=frozenset(unreadable))
-    known = {f"{name}.csv" for name in TABLES}
-    others = tuple(
+    strangers = tuple(
         file.stem for file in sorted(folder.iterdir()) if file.suffix.lower() == ".csv" if file.name not in known
     )
-    return _with_strangers(raw, others, "file")
+    raw = RawStudy(
+        tables=tables, settings=settings, faults=tuple(faults), strangers=strangers, unreadable=frozenset(unreadable)
+    )
+    return _with_strangers(raw, "file")
 
 
-def _with_strangers(raw: RawStudy, names: Sequence[str], what: str) -> RawStudy:
+def _from(table: RawTable, source: str) -> RawTable:
+    return replace(table, form=replace(table.form, source=source))
+
+
+def _with_strangers(raw: RawStudy, what: str) -> RawStudy:
     """Add faults for files or sheets whose name is a slip of a table that is not there, warnings for all others."""
     slips: dict[str, Fault] = {}
     strangers = []
-    for name in names:
+    for name in raw.strangers:
         near = nearest(name, TABLES, NEAR_MISS)
         if near and near not in raw.tables and near not in raw.unreadable:
             wrong = f"the {what} {name!r} looks like a slip of the table {near!r}"

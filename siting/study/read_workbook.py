@@ -23,7 +23,7 @@ from siting.study.records import RecordReader
 from siting.study.workbook_guard import CORRUPT, RefusedError, inspect_workbook
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Sequence
+    from collections.abc import Iterator, Mapping, Sequence
     from pathlib import Path
 
     from siting.study.raw import RawTable
@@ -43,11 +43,11 @@ class _Found:
     settings: dict[str, object] = field(default_factory=dict)
     faults: list[Fault] = field(default_factory=list)
     names: list[str] = field(default_factory=list)
-    """Names of all sheets."""
+    """Names of all sheets, those of tables as ours."""
     unreadable: set[str] = field(default_factory=set)
 
 
-def read_workbook(path: Path) -> tuple[RawStudy, tuple[str, ...]]:
+def read_workbook(path: Path, sources: Mapping[str, str]) -> RawStudy:
     """
     Read a workbook as text.
 
@@ -55,38 +55,38 @@ def read_workbook(path: Path) -> tuple[RawStudy, tuple[str, ...]]:
     ----------
     path
         The file.
+    sources
+        Tables by the name of the sheet that holds them, where it has another name and no sheet has theirs.
 
     Returns
     -------
     raw
         Its tables and settings; where the file cannot be used, no table and one fault.
-    strangers
-        Names of sheets that are no table.
     """
     found = _Found()
     try:
         inspection = inspect_workbook(path)
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")  # openpyxl warns of looks and validations that it does not keep
-            _read_sheets(path, found, inspection)
+            _read_sheets(path, found, inspection, sources)
     except RefusedError as refused:
-        return _unusable(path, *refused.args), ()
+        return _unusable(path, *refused.args)
     except OSError as error:
-        return _unusable(path, f"the workbook cannot be read ({error.strerror})", "Check that you may read it"), ()
+        return _unusable(path, f"the workbook cannot be read ({error.strerror})", "Check that you may read it")
     except Exception as error:  # noqa: BLE001  (openpyxl lets the errors of zip, zlib, XML and its own types through)
-        return _unusable(path, f"the workbook is damaged ({type(error).__name__})", CORRUPT), ()
+        return _unusable(path, f"the workbook is damaged ({type(error).__name__})", CORRUPT)
     if SETTINGS_SHEET not in found.names:
         wrong, repair = "the sheet is missing", "Add it, with the columns setting and value, and currency and unit"
         found.faults.append(Fault(table=SETTINGS_SHEET, wrong=wrong, repair=repair))
         found.unreadable.add(SETTINGS_SHEET)
-    raw = RawStudy(
+    return RawStudy(
         tables=found.tables,
         settings=found.settings,
         settings_name=SETTINGS_SHEET,
         faults=tuple(found.faults),
+        strangers=tuple(name for name in found.names if name not in TABLES and name != SETTINGS_SHEET),
         unreadable=frozenset(found.unreadable),
     )
-    return raw, tuple(name for name in found.names if name not in TABLES and name != SETTINGS_SHEET)
 
 
 def _unusable(path: Path, wrong: str, repair: str) -> RawStudy:
@@ -95,7 +95,7 @@ def _unusable(path: Path, wrong: str, repair: str) -> RawStudy:
     return RawStudy(tables={}, settings_name=SETTINGS_SHEET, faults=(fault,), unreadable=everything)
 
 
-def _read_sheets(path: Path, found: _Found, inspection: Inspection) -> None:
+def _read_sheets(path: Path, found: _Found, inspection: Inspection, sources: Mapping[str, str]) -> None:
     with ExitStack() as stack:  # openpyxl closes no file that it fails to open as a workbook
         values = load_workbook(stack.enter_context(path.open("rb")), read_only=True, data_only=True)
         typed = None
@@ -103,14 +103,17 @@ def _read_sheets(path: Path, found: _Found, inspection: Inspection) -> None:
             typed = load_workbook(stack.enter_context(path.open("rb")), read_only=True)
         for sheet in values.worksheets:
             sheet.reset_dimensions()
-            found.names.append(sheet.title)
-            if sheet.title in TABLES:
-                _read_table(sheet, found, inspection)
-            elif sheet.title == SETTINGS_SHEET:
+            name = sources.get(sheet.title, sheet.title)
+            if name in {*values.sheetnames, *found.names}:
+                name = sheet.title
+            found.names.append(name)
+            if name in TABLES:
+                _read_table(sheet, name, found, inspection)
+            elif name == SETTINGS_SHEET:
                 _read_settings(sheet, found)
-            if typed is not None and (sheet.title in found.tables or sheet.title == SETTINGS_SHEET):
+            if typed is not None and (name in found.tables or name == SETTINGS_SHEET):
                 typed[sheet.title].reset_dimensions()
-                _check_formulas(sheet, typed[sheet.title], found)
+                _check_formulas(sheet, typed[sheet.title], name, found)
 
 
 @dataclass(slots=True)
@@ -137,8 +140,7 @@ def _rows(sheet: Any, noted: _Noted) -> Iterator[list[str]]:  # noqa: ANN401  (o
         yield texts
 
 
-def _read_table(sheet: Any, found: _Found, inspection: Inspection) -> None:  # noqa: ANN401  (as above)
-    name = sheet.title
+def _read_table(sheet: Any, name: str, found: _Found, inspection: Inspection) -> None:  # noqa: ANN401  (as above)
     reader = RecordReader(name, TABLES[name].names, separator="")
     noted = _Noted()
     table = reader.read(_rows(sheet, noted))
@@ -149,6 +151,7 @@ def _read_table(sheet: Any, found: _Found, inspection: Inspection) -> None:  # n
         return
     part = str(sheet._worksheet_path).lstrip("/")  # noqa: SLF001  (openpyxl offers no public way to a sheet's part)
     form = Form(
+        source="" if sheet.title == name else sheet.title,
         separator="",
         skipped=reader.skipped,
         hidden=sheet.sheet_state != "visible" or part in inspection.hidden_rows,
@@ -200,9 +203,8 @@ def _in_known_column(  # noqa: PLR0913, PLR0917  (the fields of a fault)
     return [Fault(table=table, row=row, column=header[at], value=text, wrong=wrong, repair=repair)]
 
 
-def _check_formulas(values: Any, typed: Any, found: _Found) -> None:  # noqa: ANN401  (as above)
+def _check_formulas(values: Any, typed: Any, name: str, found: _Found) -> None:  # noqa: ANN401  (as above)
     """Note formulas whose result is not in the file: they would read as blank."""
-    name = values.title
     header: list[str] = []
     for number, (row, formulas) in enumerate(
         zip(values.iter_rows(values_only=True), typed.iter_rows(), strict=True), 1

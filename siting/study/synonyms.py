@@ -52,3 +52,36 @@ SYNONYMS: Mapping[str, tuple[str, ...]] = {
     "number": ("count", "limit", "anzahl", "nombre"),
 }  # fmt: skip
 """Without accents and in small letters, words parted by blanks; the columns' own names are not repeated."""
+
+TABLE_SYNONYMS: Mapping[str, tuple[str, ...]] = {
+    "sites": (
+        "depots",
+        "warehouses",
+        "plants",
+        "hubs",
+        "locations",
+        "standorte",
+        "lager",
+        "werke",
+        "entrepots",
+        "almacenes",
+    ),
+    "customers": ("clients", "consignees", "recipients", "ship to", "kunden", "kundenliste", "clientes", "klanten"),
+    "suppliers": ("vendors", "sources", "lieferanten", "fournisseurs", "proveedores", "leveranciers"),
+    "sizes": ("options", "grossen", "tailles"),
+    "goods": ("products", "items", "articles", "artikel", "produkte", "produits", "productos"),
+    "demands": ("volumes", "quantities", "forecast", "mengen", "bedarf", "bedarfe", "demandes"),
+    "offers": ("prices", "quotes", "price list", "preise", "angebote", "prix"),
+    "lanes": (
+        "distances",
+        "distance matrix",
+        "freight",
+        "routes",
+        "entfernungen",
+        "frachten",
+        "strecken",
+        "distancias",
+    ),
+    "rules": ("constraints", "regeln", "regles"),
+}
+"""What people call the tables, as above."""

@@ -6,6 +6,7 @@ import re
 from typing import TYPE_CHECKING
 
 import pytest
+from openpyxl import load_workbook
 
 from siting import cli
 from siting.errors import StudyError
@@ -14,13 +15,14 @@ from siting.study.columns import TABLES
 from siting.study.fingerprint import fingerprint
 from siting.study.mapping import (
     ColumnMapping,
+    Layout,
     apply_mapping,
     layout_hash,
     mapping_from,
     read_mapping,
     write_mapping,
 )
-from siting.study.propose import fold, propose_mapping
+from siting.study.propose import fold, propose_mapping, propose_sources
 from siting.study.read import read_raw, read_study
 from siting.study.synonyms import SYNONYMS
 from siting.study.write import write_workbook
@@ -132,7 +134,8 @@ def test_a_mapping_is_remembered_beside_the_study(folder: Path, tmp_path: Path) 
     write_workbook(tiny_study(), book)
     header = tiny_study().columns["customers"]
     (tmp_path / "mine.mapping.toml").write_text(
-        f'[[layout]]\ntable = "customers"\nheader = "{layout_hash(header)}"\ncolumns = {{reach_km = "single_source"}}\n',
+        f'[[layout]]\ntable = "customers"\nheader = "{layout_hash(header)}"\n'
+        'columns = {reach_km = "single_source"}\n',
         encoding="utf-8",
     )
     with pytest.raises(
@@ -177,6 +180,10 @@ WRONG = [
         r"decimal, value ',': not a decimal mark\. Write \"p",
     ),
     ('[[layout]]\ntable = "sites"\nheader = "x"\ncolumns = 1\n', r"columns, value '1': not a list of columns\. Write"),
+    (
+        '[[layout]]\ntable = "sites"\nheader = "x"\nsource = "goods"\n',
+        r"source, value 'goods': not another name of a file",
+    ),
     (
         '[[layout]]\ntable = "sites"\nheader = "x"\n[layout.columns]\nKap = "capcity"\n',
         r"mapping\.toml, Kap, value 'capcity': not a column of sites\. Write 'capacity' if that is meant, or write one",
@@ -243,3 +250,42 @@ def test_the_command_proposes_and_checks(folder: Path, tmp_path: Path, capsys: p
     assert cli.main(["check", "demo", "--propose-mapping", str(tmp_path / "none.toml")]) == 0
     assert "there is nothing to propose" in capsys.readouterr().out
     assert not (tmp_path / "none.toml").exists()
+
+
+def test_files_and_sheets_of_other_names_are_proposed_and_read(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """A file or sheet called as people call the table is proposed for it, and read once that is confirmed."""
+    tables = dict(renamed(dict(TINY), {"customers": {"customer": "Kunde"}}))
+    others = {"Kunden": tables.pop("customers"), "Lieferanten": tables.pop("suppliers")}
+    folder = write_folder(tmp_path / "study", {**others, **tables})
+    (folder / "Notes.csv").write_text("remark\nread me\n", encoding="utf-8")
+    assert propose_sources(read_raw(folder)) == {"Kunden": "customers", "Lieferanten": "suppliers"}
+    assert cli.main(["check", str(folder), "--propose-mapping", str(folder / "mapping.toml")]) == 0
+    assert "'Kunden' as the table customers: by its name\n" in capsys.readouterr().out
+    study = read_study(folder)
+    assert fingerprint(study) == fingerprint(tiny_study())
+    assert [str(warning).partition(". ")[0] for warning in study.warnings] == [
+        "Notes: the file is not a table of a study and was not read",
+        "customers: columns were read as mapping.toml says: 'Kunde' as customer",
+        "customers: read from 'Kunden'",
+        "suppliers: read from 'Lieferanten'",
+    ]
+    book = tmp_path / "mine.xlsx"
+    write_workbook(tiny_study(), book)
+    opened = load_workbook(book)
+    opened["customers"].title = "Clients"
+    opened.save(book)
+    assert propose_sources(read_raw(book)) == {"Clients": "customers"}
+    assert cli.main(["check", str(book), "--propose-mapping", str(tmp_path / "mine.mapping.toml")]) == 0
+    study = read_study(book)
+    assert fingerprint(study) == fingerprint(tiny_study())
+    assert [str(warning).partition(". ")[0] for warning in study.warnings] == ["customers: read from 'Clients'"]
+
+
+def test_a_table_of_our_name_wins(tmp_path: Path) -> None:
+    """Where the table itself is there too, the other file is no part of the study."""
+    folder = write_folder(tmp_path, {**TINY, "Kunden": "customer\nx\n"})
+    mapping = ColumnMapping(layouts=(Layout(table="customers", header="", source="Kunden"),))
+    assert fingerprint(read_study(folder, mapping)) == fingerprint(tiny_study())
+    assert propose_sources(read_raw(folder)) == {}

@@ -26,7 +26,7 @@ def template(tmp_path: Path) -> Path:
     return tmp_path / "template.xlsx"
 
 
-def test_the_template_is_a_study_without_fault_or_warning(template: Path) -> None:
+def test_the_template_is_a_study_without_fault(template: Path) -> None:
     """Its examples hang together: sites of both standings, sizes, goods, offers, lanes of two legs and a rule."""
     study = read_study(template)
     assert study.warnings == ()
@@ -126,7 +126,7 @@ def test_the_command_writes_one_and_overwrites_nothing(tmp_path: Path, capsys: p
     file = tmp_path / "mine.xlsx"
     assert cli.main(["template", str(file)]) == 0
     assert f"Fill it in, then: siting check {file}" in capsys.readouterr().out
-    assert read_study(file).warnings == ()
+    assert study_sentence(read_study(file)).startswith("Greenhouse and orchard supplies: 4 sites (3 running)")
     assert cli.main(["template", str(file)]) == 2
     assert "the file is already there and may hold your data" in capsys.readouterr().out
     assert cli.main(["template", str(tmp_path / "mine.csv")]) == 2
