@@ -58,7 +58,7 @@ def test_closing_one_site_in_full(centres: Path, capsys: pytest.CaptureFixture[s
     text = asked(capsys, "closing", str(centres), "--site", "Kansas City", "--quiet")
     assert text.startswith("Close Kansas City: 80 XXX a year more (9.3 %), everything else decided afresh; proved.")
     assert "Cost lines (XXX a year): sites +50, outbound +30." in text
-    assert "from Kansas City to Denver" in " ".join(text.split())
+    assert "Houston 20 from Kansas City to St. Louis" in " ".join(text.split())
     assert "St. Louis:" not in text
 
 
