@@ -10,7 +10,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, BinaryIO
 
 from openpyxl import Workbook
 from openpyxl.comments import Comment
@@ -67,14 +67,14 @@ _WIDTH, _WIDE = 16, 60
 _NOTE_WIDTH_PX, _LINE_PX, _LINE_LETTERS = 300, 18, 42
 
 
-def write_template(path: Path | str, *, examples: bool = True) -> None:
+def write_template(target: Path | str | BinaryIO, *, examples: bool = True) -> None:
     """
     Write a workbook to fill in.
 
     Parameters
     ----------
-    path
-        File to write; it is replaced.
+    target
+        File to write, replaced where it is there; or an open one, such as a page's download.
     examples
         Whether to put a few rows of the demo study into it. With them it is read without a fault.
     """
@@ -88,7 +88,7 @@ def write_template(path: Path | str, *, examples: bool = True) -> None:
         if rows:
             name = f"examples_{spec.name}"
             book.defined_names[name] = DefinedName(name, attr_text=f"{spec.name}!$2:${len(rows) + 1}")
-    book.save(Path(path))
+    book.save(Path(target) if isinstance(target, str) else target)
 
 
 def column_note(column: Column, default: object, *, needed: bool | None = None) -> str:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 from typing import TYPE_CHECKING
 
 import pytest
@@ -119,6 +120,9 @@ def test_a_template_without_examples_asks_for_what_is_missing(tmp_path: Path) ->
         ("study", "currency"), ("study", "unit"), ("sites", ""), ("customers", "")
     ]  # fmt: skip
     assert not load_workbook(tmp_path / "empty.xlsx").defined_names
+    held = io.BytesIO()
+    write_template(held, examples=False)
+    assert load_workbook(held).sheetnames == ["study", *TABLES]
 
 
 def test_the_command_writes_one_and_overwrites_nothing(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
