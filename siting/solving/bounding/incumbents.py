@@ -84,7 +84,7 @@ class Incumbents:
             left -= problem.capacity[chosen[site]]
         return chosen
 
-    def search(self, used: Floats, *, trials: int) -> bool:
+    def search(self, used: Floats, *, trials: int, near: float = np.inf) -> bool:
         """
         Round an averaged solution, improve it by moves and keep it if best.
 
@@ -93,21 +93,23 @@ class Incumbents:
         used
             (O,) how far the averaged solution opens each option.
         trials
-            Greatest number of moves tried; 0 prices the set as it is.
+            Greatest number of moves tried.
+        near
+            Moves are tried only on a set that costs at most this much more than the best plan (relative).
 
         Returns
         -------
         found
             Whether the best plan got better.
         """
-        return self.improve(self.round_up(used), trials=trials)
+        return self.improve(self.round_up(used), trials=trials, near=near)
 
-    def improve(self, chosen: Positions, *, trials: int) -> bool:
-        """Improve a set of open options by moves and keep it if best; return whether it is. A set is tried once."""
+    def improve(self, chosen: Positions, *, trials: int, near: float = np.inf) -> bool:
+        """Improve a set of open options by moves, as `search` does; return whether the best plan got better."""
         mark = chosen.tobytes()
         if mark in self._seen:
             return False
-        self._seen.add(mark)
+        self._seen.add(mark)  # a set is tried once
         cost = self._transport.cost_of(chosen, halted=self._halted)
         if not np.isfinite(cost):
             cost, chosen = self._mended(chosen)
@@ -115,12 +117,14 @@ class Incumbents:
             return False
         problem = self.problem
         found = self.offer(cost, chosen)
+        if cost > self.cost + near * abs(self.cost):
+            return found
         fixed = problem.must_open.astype(np.int8)
         cost, chosen = self._transport.descend(
             cost, fixed, problem.fewest, problem.most, trials=trials, halted=self._halted
         )
         found |= self.offer(cost, chosen)
-        if not problem.one_option_each and trials > 0:
+        if not problem.one_option_each:
             found |= self._resize(cost, chosen)
         return found
 

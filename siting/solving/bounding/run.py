@@ -168,23 +168,23 @@ class Run:
 
     def _branch(self, relaxation: Relaxation, best: Incumbents, box: Box, root: Ascent) -> None:
         """Fix sites, leave out those that are shut for good, and search the tree of what is left."""
+        cutoff = self._cutoff(best)
         fixed = relaxation.ascend(
-            box, root.v, steps=ROUND_STEPS, target=self._target(best), cutoff=self._cutoff(best), factor=0.1,
-            mu=root.mu, patience=20, fix=best.cost < float("inf"), halted=self._halted,
+            box, root.v, steps=ROUND_STEPS, target=self._target(best), cutoff=cutoff, factor=0.1, mu=root.mu,
+            patience=20, fix=cutoff < float("inf"), halted=self._halted,
         )  # fmt: skip
-        self._report(fixed.bound, "branching")
-        if self._met(best) or self._halted():
+        self._report(min(fixed.bound, cutoff), "branching")
+        if fixed.bound >= cutoff or self._halted():
             return
         keep = (fixed.state != SHUT) | (best.chosen >= 0)
         problem = self._problem.restricted(keep)
-        state = fixed.state[keep]
         options = keep[self._problem.option_site]
         inner = Incumbents(problem, Relaxation(problem), self._halted)
-        if np.isfinite(best.cost):
+        if best.cost < float("inf"):
             inner.offer(best.cost, _chosen(problem, decisions_of(self._network, self._open_options(best))))
         node = Node(
-            box=replace(box, state=state, charge=box.charge[options]),
-            bound=self._known.bound,
+            box=replace(box, state=fixed.state[keep], charge=box.charge[options]),
+            bound=max(self._known.bound, fixed.bound),
             v=fixed.v.astype(np.float32),
             mu=fixed.mu,
         )
@@ -194,8 +194,7 @@ class Run:
                 best.offer(inner.cost, self._widened(problem, inner.chosen))
             self._report(min(bound, self._cutoff(best)), "branching")
 
-        bound, _ = search_tree(problem, node, inner, self._goal, halted=self._halted, report=report)
-        report(bound)
+        report(search_tree(problem, node, inner, self._goal, halted=self._halted, report=report))
 
     def _widened(self, problem: Problem, chosen: Positions) -> Positions:
         """Return a set of a restricted problem as one of the whole problem."""

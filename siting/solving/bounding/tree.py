@@ -28,6 +28,7 @@ if TYPE_CHECKING:
 
     from siting.arrays import Floats, Positions
     from siting.solving.bounding.problem import Problem
+    from siting.solving.bounding.relaxation import Ascent
 
 THREADS = 2
 """Nodes worked on at a time, also where there is one core: the answer must not depend on the machine."""
@@ -39,10 +40,16 @@ NODE_PATIENCE = 8
 """Idle steps in a node after which the step factor is halved."""
 PRICE_EVERY = 4
 """Every so many nodes of a thread, the rounded set is priced exactly."""
-SEARCH_EVERY = 48
-"""Every so many nodes of a thread, it is improved by moves as well."""
-SEARCH_TRIALS = 120
-"""Moves tried then."""
+NEAR, NEAR_TRIALS = 0.002, 60
+"""If it costs at most this much more than the best plan (relative), it is improved by so many moves."""
+DIVE_EVERY = 32
+"""Every so many nodes of a thread, sites are decided one by one down to a plan, which is then improved by moves."""
+DIVE_STEPS = 25
+"""Greatest number of steps after each decision of a dive."""
+DIVE_TRIALS = 150
+"""Moves tried at its end."""
+CLEARLY_OPEN, CLEARLY_SHUT = 0.9, 0.02
+"""Use in the averaged solution from which, and up to which, a dive decides a site without more steps."""
 REPORT_EVERY = 8
 """Pairs of nodes between two reports."""
 
@@ -130,14 +137,37 @@ class Worker:
             return bound, []
         if self._halted():
             return bound, [replace(node, bound=bound)]
-        self._look_for_plans(ascent.used)
+        self._look_for_plans(box, ascent, cutoff, goal)
         left = Node(box=replace(box, state=ascent.state), bound=bound, v=ascent.v.astype(np.float32), mu=ascent.mu)
         return bound, split(problem, left, ascent.used)
 
-    def _look_for_plans(self, used: Floats) -> None:
+    def _look_for_plans(self, box: Box, ascent: Ascent, cutoff: float, goal: float) -> None:
         self._nodes += 1
         if self._nodes % PRICE_EVERY == 1:
-            self.incumbents.search(used, trials=SEARCH_TRIALS if self._nodes % SEARCH_EVERY == 1 else 0)
+            self.incumbents.search(ascent.used, trials=NEAR_TRIALS, near=NEAR)
+        if self._nodes % DIVE_EVERY == 1:
+            self.incumbents.search(self._dive(box, ascent, cutoff, goal), trials=DIVE_TRIALS)
+
+    def _dive(self, box: Box, ascent: Ascent, cutoff: float, goal: float) -> Floats:
+        """Decide clear sites, and at least one, in turns with a few steps; return what the last solution uses."""
+        while not self._halted():
+            state = ascent.state.copy()
+            free = np.flatnonzero(state == FREE)
+            if not free.size:
+                break
+            use = site_use(self._problem, ascent.used)[free]
+            state[free[use <= CLEARLY_SHUT]] = SHUT
+            clear = use >= CLEARLY_OPEN
+            clear[np.argmax(use)] = True
+            state[free[clear]] = OPEN
+            box = replace(box, state=state)
+            if int((state == OPEN).sum()) > box.most or least_count(self._problem, box) > box.most:
+                break
+            ascent = self.relaxation.ascend(
+                box, ascent.v, steps=DIVE_STEPS, target=goal, cutoff=cutoff, factor=NODE_FACTOR, mu=ascent.mu,
+                fix=False, halted=self._halted,
+            )  # fmt: skip
+        return ascent.used
 
 
 def split(problem: Problem, node: Node, used: Floats) -> list[Node]:
@@ -223,7 +253,7 @@ def search_tree(  # noqa: PLR0913 - what a search starts from and reports to
     *,
     halted: Callable[[], bool],
     report: Callable[[float], None],
-) -> tuple[float, int]:
+) -> float:
     """
     Search until the goal is met, nothing is left or the search is halted.
 
@@ -244,14 +274,14 @@ def search_tree(  # noqa: PLR0913 - what a search starts from and reports to
 
     Returns
     -------
-    bound, nodes
-        Money a year without the problem's constant that no plan can undercut (infinite when no plan exists), and the
-        number of nodes looked at.
+    bound
+        Money a year without the problem's constant that no plan can undercut; at least the goal's cutoff when nothing
+        is left, infinite when no plan exists.
     """
     workers = [Worker(problem, halted) for _ in range(THREADS)]
     order = itertools.count()
     heap: list[tuple[float, int, Node]] = [(root.bound, next(order), root)]
-    least_dropped, nodes, turns = float("inf"), 0, 0
+    least_dropped, turns = float("inf"), 0
     with ThreadPoolExecutor(THREADS) as pool:
         while heap and heap[0][0] < goal.cutoff(best.cost) and not halted():
             batch = [heapq.heappop(heap)[2] for _ in range(min(THREADS, len(heap)))]
@@ -266,8 +296,7 @@ def search_tree(  # noqa: PLR0913 - what a search starts from and reports to
                     heapq.heappush(heap, (bound, next(order), child))
             for worker in workers:
                 best.offer(worker.incumbents.cost, worker.incumbents.chosen)
-            nodes += len(batch)
             turns += 1
             if turns % REPORT_EVERY == 0:
                 report(min(heap[0][0] if heap else least_dropped, least_dropped))
-    return min(least_dropped, heap[0][0] if heap else float("inf")), nodes
+    return min(least_dropped, heap[0][0] if heap else float("inf"))
