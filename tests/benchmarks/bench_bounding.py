@@ -13,6 +13,7 @@ import resource
 import sys
 import time
 from dataclasses import dataclass, replace
+from functools import partial
 from typing import TYPE_CHECKING
 
 from siting.listener import Silent, Stop
@@ -45,7 +46,7 @@ class Case:
 
 def _capa() -> Iterator[Case]:
     for capacity in CAPA:
-        yield Case(name=f"capa {capacity}", make=lambda capacity=capacity: capa(capacity), gap=1e-6)
+        yield Case(name=f"capa {capacity}", make=partial(capa, capacity), gap=1e-6)
 
 
 def drawn(size: tuple[int, int], ratio: float, seed: int, gap: float, *, charges: float = 1.0) -> Case:

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
-import pytest
+from typing import TYPE_CHECKING
 
 from tests.benchmarks.bench_bounding import main
+
+if TYPE_CHECKING:
+    import pytest
 
 
 def test_the_benchmark_runs(capsys: pytest.CaptureFixture[str]) -> None:
