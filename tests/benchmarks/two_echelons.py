@@ -2,10 +2,15 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 import numpy as np
 
 from siting.study.tables import CustomerRow, LaneTable, Leg, SiteRow, Study, SupplierRow
 from tests.building import settings_of
+
+if TYPE_CHECKING:
+    from siting.arrays import Floats
 
 
 def two_echelons(suppliers: int, sites: int, customers: int, seed: int, *, ratio: float = 5.0) -> Study:
@@ -27,9 +32,7 @@ def two_echelons(suppliers: int, sites: int, customers: int, seed: int, *, ratio
     brings *= 3.0 * demand.sum() / brings.sum()
     price = random.uniform(0, 2, suppliers)
     names = tuple(
-        f"{letter}{n}"
-        for letter, count in (("K", suppliers), ("S", sites), ("C", customers))
-        for n in range(count)
+        f"{letter}{n}" for letter, count in (("K", suppliers), ("S", sites), ("C", customers)) for n in range(count)
     )
     inbound = 6 * _distance(at_supplier, at_site)
     outbound = 10 * _distance(at_site, at_customer)
@@ -41,7 +44,9 @@ def two_echelons(suppliers: int, sites: int, customers: int, seed: int, *, ratio
         origin=np.concatenate([supplier, suppliers + origin]).astype(np.int32),
         destination=np.concatenate([suppliers + site, suppliers + sites + customer]).astype(np.int32),
         good=np.full(count, -1, np.int32),
-        leg=np.repeat([LaneTable.LEGS.index(Leg.INBOUND), LaneTable.LEGS.index(Leg.OUTBOUND)], [inbound.size, outbound.size]).astype(np.int32),
+        leg=np.repeat(
+            [LaneTable.LEGS.index(Leg.INBOUND), LaneTable.LEGS.index(Leg.OUTBOUND)], [inbound.size, outbound.size]
+        ).astype(np.int32),
         road_km=np.full(count, np.nan),
         unit_cost=np.concatenate([inbound.ravel(), outbound.ravel()]),
         barred=np.zeros(count, np.bool_),
@@ -70,6 +75,7 @@ def two_echelons(suppliers: int, sites: int, customers: int, seed: int, *, ratio
     )
 
 
-def _distance(a: np.ndarray, b: np.ndarray) -> np.ndarray:
+def _distance(a: Floats, b: Floats) -> Floats:
     gap = a[:, None, :] - b[None, :, :]
-    return np.hypot(gap[..., 0], gap[..., 1])
+    distance: Floats = np.hypot(gap[..., 0], gap[..., 1])
+    return distance

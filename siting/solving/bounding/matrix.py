@@ -42,13 +42,12 @@ class Rows:
 
     def times(self, values: Floats) -> Floats:
         """Return (R,) the sum of each row at the values (N,) of the columns."""
-        sums: Floats = np.bincount(self.row, self.value * values[self.column], minlength=len(self))
-        return sums
+        return np.bincount(self.row, self.value * values[self.column], minlength=len(self)).astype(np.float64)
 
     def weighted(self, weights: Floats) -> Floats:
         """Return (N,) the sum of the rows, each times its weight (R,)."""
-        sums: Floats = np.bincount(self.column, self.value * weights[self.row], minlength=self.columns)
-        return sums
+        sums = np.bincount(self.column, self.value * weights[self.row], minlength=self.columns)
+        return sums.astype(np.float64)
 
     @cached_property
     def by_column(self) -> tuple[NDArray[np.int64], NDArray[np.int32], Floats]:
@@ -72,7 +71,7 @@ class Rows:
         )
 
     def within(self, place: NDArray[np.int32], columns: int) -> Rows:
-        """Return the same rows over fewer columns: `place` (N,) is where each column goes, -1 = it is 0 and left out."""
+        """Return the same rows over fewer columns: `place` (N,) is where each goes, -1 = it is 0 and left out."""
         there = place[self.column] >= 0
         kept = np.concatenate([[0], np.cumsum(there)])
         return Rows(

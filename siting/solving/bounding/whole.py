@@ -37,7 +37,7 @@ if TYPE_CHECKING:
 GAP_MARGIN = 0.999
 """Share of the gap asked that the search aims at, so that pricing the plan anew cannot lift the gap above it."""
 
-MOVES = 2000
+MOVES = 1000
 """Moves from the first plans priced at most."""
 
 LATER_MOVES = 200

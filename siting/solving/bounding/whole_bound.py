@@ -6,10 +6,10 @@ For prices y of the limits (money per unit of the row) and l of the links, every
     sum over limits of y x (the side of the row that y presses on) + sum over columns of min over [lower, upper] of
     (cost - y A - l L) x column.
 
-So the bound is valid whatever the prices are, and whatever lanes and links the program that gave them had loaded. Prices
-of links that were not loaded are chosen here: a lane whose reduced cost is negative passes it on to what must be open
-or signed for it, which is the best price of its link with the others held. This is the Lagrangean bound with demand,
-balance and capacities relaxed; sites and suppliers then separate.
+So the bound is valid whatever the prices are, and whatever lanes and links the program that gave them had loaded.
+Prices of links that were not loaded are chosen here: a lane whose reduced cost is negative passes it on to what must be
+open or signed for it, which is the best price of its link with the others held. This is the Lagrangean bound with
+demand, balance and capacities relaxed; sites and suppliers then separate.
 
 References
 ----------
@@ -80,7 +80,7 @@ class Pricer:
         links = self._links_of[:, columns].ravel()
         return np.unique(links[links != NO_LINK])
 
-    def price(
+    def price(  # noqa: PLR0913 - prices of limits and of links, and where the bound is to hold
         self,
         prices: Floats,
         loaded: NDArray[np.intp],

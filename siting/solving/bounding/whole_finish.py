@@ -75,7 +75,7 @@ def finish(  # noqa: PLR0913 - what a run needs, each named
     EngineError
         If HiGHS gives up for a reason of its own.
     """
-    columns, left_out = _columns(problem, sides, relaxed, enough)
+    columns, left_out = _columns(sides, relaxed, enough)
     highs = _highs(problem, sides, columns, enough, gap)
     halted = False
 
@@ -104,7 +104,7 @@ def finish(  # noqa: PLR0913 - what a run needs, each named
     return Finished(values=values, cost=info.objective_function_value + problem.constant, bound=bound)
 
 
-def _columns(problem: WholeProblem, sides: Sides, relaxed: Relaxed, enough: float) -> tuple[np.ndarray, bool]:
+def _columns(sides: Sides, relaxed: Relaxed, enough: float) -> tuple[np.ndarray, bool]:
     """Return the columns that a solution below `enough` may use, and whether any was left out."""
     usable = sides.upper > 0
     if relaxed.priced is None or not math.isfinite(enough):

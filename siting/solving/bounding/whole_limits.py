@@ -79,7 +79,9 @@ def _balance(made: Gathering, network: Network, most: Tightest, places: Places) 
     into, out = network.inbound, network.outbound
     nothing = np.zeros(len(network.sites) * goods)
     made.add(
-        np.concatenate([into.destination.astype(np.int64) * goods + into.good, out.origin.astype(np.int64) * goods + out.good]),
+        np.concatenate(
+            [into.destination.astype(np.int64) * goods + into.good, out.origin.astype(np.int64) * goods + out.good]
+        ),
         np.concatenate([places.inbound, places.outbound]),
         np.concatenate([most.inbound_most, -most.outbound_demand]),
         nothing,
@@ -93,7 +95,13 @@ def _sites(made: Gathering, network: Network, most: Tightest, places: Places) ->
     row = np.concatenate([lanes.origin, network.option_site])
     column = np.concatenate([places.outbound, places.option])
     nothing, endless = np.zeros(sites), np.full(sites, math.inf)
-    made.add(network.option_site, places.option, np.ones(places.option.size), network.site_pinned_open * 1.0, np.ones(sites))
+    made.add(
+        network.option_site,
+        places.option,
+        np.ones(places.option.size),
+        network.site_pinned_open.astype(np.float64),
+        np.ones(sites),
+    )
     made.add(row, column, np.concatenate([load, -most.option_most]), -endless, nothing)
     if np.any(network.option_least > 0):
         made.add(row, column, np.concatenate([load, -network.option_least]), nothing, endless)
@@ -150,7 +158,7 @@ def _budget(made: Gathering, network: Network, places: Places) -> None:
 
 
 def _counts(made: Gathering, network: Network, places: Places) -> None:
-    """Add the number of open sites and the number of signed suppliers, also where they are free: a search splits them."""
+    """Add the numbers of open sites and of signed suppliers, also where they are free: a search splits them."""
     fewest, most = np.array([float(network.fewest_sites)]), np.array([float(network.most_sites)])
     made.add(0 * places.option, places.option, np.ones(places.option.size), fewest, most)
     all_of_them = np.array([float(places.supplier.size)])
@@ -170,7 +178,13 @@ def _rule(made: Gathering, network: Network, places: Places, rule: NetworkRule) 
     }[rule.kind]
     if rule.kind in {RuleKind.TOGETHER, RuleKind.NEEDS}:
         for member in members[1:]:
-            _one(made, np.concatenate([members[0], member]), np.repeat([1.0, -1.0], [members[0].size, member.size]), lower, upper)
+            _one(
+                made,
+                np.concatenate([members[0], member]),
+                np.repeat([1.0, -1.0], [members[0].size, member.size]),
+                lower,
+                upper,
+            )
     else:
         everyone = np.concatenate(members)
         _one(made, everyone, np.ones(everyone.size), lower, upper)
@@ -185,4 +199,5 @@ def _member(network: Network, places: Places, member: tuple[str, int]) -> Positi
     kind, place = member
     if kind == "supplier":
         return places.supplier[place : place + 1]
-    return places.option[network.option_site == place]
+    sizes: Positions = places.option[network.option_site == place]
+    return sizes

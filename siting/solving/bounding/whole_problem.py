@@ -161,7 +161,9 @@ def _places(network: Network, most: Tightest) -> Places:
         column[~own] = pair[of_pair[~own]]
         count += int(own.sum())
         lanes.append(column)
-    return Places(option=option, supplier=supplier, pair=pair, inbound=inbound, outbound=lanes[0], direct=lanes[1], count=count)
+    return Places(
+        option=option, supplier=supplier, pair=pair, inbound=inbound, outbound=lanes[0], direct=lanes[1], count=count
+    )
 
 
 def _cost(network: Network, most: Tightest, places: Places) -> Floats:
@@ -231,9 +233,7 @@ class _Links:
         fits = holds(self._network.option_capacity[option], pairs.load[by_site][row])
         self._add(self._places.pair[by_site], row[fits], self._places.option[option[fits]], np.ones(int(fits.sum())))
         by_supplier = np.flatnonzero(pairs.origin >= sites)
-        self._to_supplier(
-            self._places.pair[by_supplier], pairs.origin[by_supplier] - sites, np.ones(by_supplier.size)
-        )
+        self._to_supplier(self._places.pair[by_supplier], pairs.origin[by_supplier] - sites, np.ones(by_supplier.size))
 
     def _to_supplier(self, share: Positions, supplier: Positions, fits: Floats) -> None:
         self._add(share, np.arange(share.size), self._places.supplier[supplier], fits)

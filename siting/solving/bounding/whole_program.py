@@ -33,6 +33,9 @@ BROKEN = 1e-7
 DUAL_NOISE = 1e-9
 """Reduced costs above minus this (in the problem's money) are rounding: the lane stays out."""
 
+EMPTY = 1e-8
+"""By how much rows, scaled to coefficients of 1 to 2 and priced at most 1, must contradict each other."""
+
 ROUNDS = 200
 """Rounds of pricing and linking after which a program that still moves is given up; none of the tests came near."""
 
@@ -291,7 +294,7 @@ class LaneProgram:
         ending = Ending.HALTED if self.halted else Ending.SOLVED
         return self._result(ending, -np.inf if best is None else best.bound, value, values, best)
 
-    def try_sides(self, sides: Sides, basis: object, steps: int) -> float:
+    def try_sides(self, sides: Sides, basis: highspy.HighsBasis, steps: int) -> float:
         """
         Return how far a few steps of the simplex lift the value within bounds, over loaded lanes and links only.
 
@@ -347,11 +350,11 @@ class LaneProgram:
 
     def _is_empty(self, sides: Sides) -> bool:
         """Return whether nothing at all satisfies the rows; where lanes might help, load them and return False."""
-        _, there, ray = self.highs.getDualRay()
+        _, there, ray = self.highs.getDualRay()  # type: ignore[attr-defined] # highspy types only part of its methods
         lanes: NDArray[np.intp] = np.zeros(0, dtype=np.intp)
         if there:
             priced, lanes = self._priced(np.array(ray), sides, costless=True)
-            if priced.bound > 0 and not lanes.size:
+            if priced.bound > EMPTY and not lanes.size:
                 return True
         if not lanes.size:
             lanes = np.flatnonzero((self._place < 0) & self._open_lanes(sides))

@@ -10,7 +10,6 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from siting.arrays import Floats
-    from siting.network.network import Network
     from siting.solving.bounding.whole_problem import WholeProblem
 
 NEAREST = 8
@@ -38,7 +37,9 @@ def first_lanes(problem: WholeProblem) -> NDArray[np.intp]:
     network, places = problem.network, problem.places
     goods = max(len(network.goods), 1)
     into, out = network.inbound, network.outbound
-    inbound = into.cost + _spread(network.supplier_charge, network.supplier_capacity)[into.origin] * network.load[into.good]
+    inbound = (
+        into.cost + _spread(network.supplier_charge, network.supplier_capacity)[into.origin] * network.load[into.good]
+    )
     key = into.destination.astype(np.int64) * goods + into.good
     arriving = np.zeros(len(network.sites) * goods)
     if network.two_echelons:
@@ -46,7 +47,11 @@ def first_lanes(problem: WholeProblem) -> NDArray[np.intp]:
         np.minimum.at(arriving, key, inbound)
     charge = np.full(len(network.sites), np.inf)
     np.minimum.at(charge, network.option_site, _spread(network.option_charge, network.option_capacity))
-    outbound = out.cost + arriving[out.origin.astype(np.int64) * goods + out.good] + charge[out.origin] * network.load[out.good]
+    outbound = (
+        out.cost
+        + arriving[out.origin.astype(np.int64) * goods + out.good]
+        + charge[out.origin] * network.load[out.good]
+    )
     outbound = np.where(problem.upper[places.outbound] > 0, outbound, np.inf)
     chosen = _cheapest(out.destination.astype(np.int64) * goods + out.good, outbound, NEAREST)
     feeding = _cheapest(key, inbound, FEEDERS)

@@ -25,6 +25,8 @@ from siting.solving.bounding.whole_levers import score
 from siting.solving.bounding.whole_program import Ending
 
 if TYPE_CHECKING:
+    import highspy
+
     from siting.arrays import Floats
     from siting.solving.bounding.whole_bound import Sides
     from siting.solving.bounding.whole_levers import Levers
@@ -147,7 +149,7 @@ class Tree:
         lever = self._choose(node, relaxed, levers, value)
         if self._program.halted:
             return
-        self._split(node, lever, float(value[lever]), relaxed)
+        self._split(node, lever, float(value[lever]))
 
     def _leaf(self, node: Node, relaxed: Relaxed) -> None:
         """Price the plan of levers that are all whole; where it does not reach the bound, keep what differs from it."""
@@ -176,16 +178,14 @@ class Tree:
             self.made += 1
             heapq.heappush(self.open, other)
 
-    def _split(self, node: Node, lever: int, value: float, relaxed: Relaxed) -> None:
+    def _split(self, node: Node, lever: int, value: float) -> None:
         """Make both children; go on with the one nearer to the relaxation, leave the other open."""
         children = []
         for up in (False, True):
             lower, upper = node.lower.copy(), node.upper.copy()
             (lower if up else upper)[lever] = math.ceil(value) if up else math.floor(value)
             away = math.ceil(value) - value if up else value - math.floor(value)
-            children.append(
-                Node(node.bound, self.made + int(up), lower, upper, node.depth + 1, lever, up, away)
-            )
+            children.append(Node(node.bound, self.made + int(up), lower, upper, node.depth + 1, lever, up, away))
         self.made += 2
         first = int(value - math.floor(value) >= 0.5) if lever < self.levers.count - 2 else 1  # noqa: PLR2004
         heapq.heappush(self.open, children[1 - first])
@@ -203,7 +203,7 @@ class Tree:
     def _choose(self, node: Node, relaxed: Relaxed, levers: np.ndarray, value: Floats) -> int:
         """Return the lever to split: by record where it is known, by trial where not."""
         scores, seen = self.levers.record(levers, value)
-        order = np.lexsort((-np.abs(value[levers] - np.floor(value[levers]) - 0.5) * -1.0, -scores))
+        order = np.lexsort((np.abs(value[levers] - np.floor(value[levers]) - 0.5), -scores))
         best, best_score = int(levers[order[0]]), -1.0
         trials = 0
         basis = None
@@ -223,7 +223,7 @@ class Tree:
                 break
         return best
 
-    def _try(self, node: Node, relaxed: Relaxed, lever: int, value: float, basis: object) -> float:
+    def _try(self, node: Node, relaxed: Relaxed, lever: int, value: float, basis: highspy.HighsBasis) -> float:
         """Return the score of a split by a few steps of the simplex on either side."""
         gains = []
         for up in (False, True):

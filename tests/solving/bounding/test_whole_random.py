@@ -13,9 +13,9 @@ from hypothesis import HealthCheck, given, settings
 from siting.listener import Silent, Stop
 from siting.network.network import build_network
 from siting.solving.bounding.whole import whole
+from siting.solving.bounding.whole_levers import Levers
 from siting.solving.bounding.whole_problem import state
 from siting.solving.bounding.whole_program import Ending, LaneProgram
-from siting.solving.bounding.whole_levers import Levers
 from siting.solving.direct import direct
 from siting.solving.flows import flows_for, price
 from siting.solving.model import build_model
