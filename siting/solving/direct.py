@@ -7,6 +7,7 @@ How the run ended is read from HiGHS itself: PuLP files a run stopped by its tim
 from __future__ import annotations
 
 import math
+import threading
 import time
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
@@ -34,6 +35,15 @@ GAP_MARGIN = 0.999
 
 LEAST_SECONDS = 0.01
 """Time limit given to a solver when building the model used all of it: enough to return cleanly."""
+
+PATIENCE_S = 0.2
+"""Seconds HiGHS gets to notice a request to stop; it looks only now and then, and in some phases not for long."""
+
+LONGER_PATIENCE_S = 0.8
+"""The same where it has told of no solution or no bound yet, which are worth a moment."""
+
+POLL_S = 0.05
+"""Seconds between two looks at whether a stop is requested."""
 
 NOTES = {
     highspy.HighsModelStatus.kOptimal: "",
@@ -141,8 +151,9 @@ def search(  # noqa: PLR0913 - what a run needs, each named
         If HiGHS gives up without values for a reason of its own.
     """
     began = time.monotonic() if began is None else began
-    model.problem.solve(InProcess(model, settings, listener=listener, stop=stop, start=start, began=began))
-    return _found(model, model.problem.solverModel)
+    run = InProcess(model, settings, listener=listener, stop=stop, start=start, began=began)
+    model.problem.solve(run)
+    return run.left if run.left is not None else _found(model, model.problem.solverModel)
 
 
 def column_values(model: Model, highs: highspy.Highs) -> Floats:
@@ -161,7 +172,10 @@ def column_values(model: Model, highs: highspy.Highs) -> Floats:
     values
         Shape (columns,).
     """
-    solution = np.array(highs.getSolution().col_value)
+    return _of_columns(model, np.array(highs.getSolution().col_value))
+
+
+def _of_columns(model: Model, solution: Floats) -> Floats:
     values = np.array([variable.lowBound for variable in model.columns.all], dtype=np.float64)
     place = np.array([getattr(variable, "index", -1) for variable in model.columns.all])
     values[place >= 0] = solution[place[place >= 0]]
@@ -169,7 +183,15 @@ def column_values(model: Model, highs: highspy.Highs) -> Floats:
 
 
 class InProcess(pulp.HiGHS):  # type: ignore[misc] # PuLP ships no types
-    """PuLP's in-process HiGHS, reporting to a listener and stopping on request."""
+    """
+    PuLP's in-process HiGHS, reporting to a listener and stopping on request.
+
+    HiGHS runs in a thread of its own. Where it does not notice a stop within `PATIENCE_S`, it is left to end by itself
+    and `left` holds the best it had told of. A process that ends waits for it; one in haste calls `os._exit`.
+    """
+
+    left: Found | None = None
+    """What was known when HiGHS was left behind; None where it came to an end."""
 
     def __init__(  # noqa: PLR0913 - what a run needs, each named
         self,
@@ -188,6 +210,9 @@ class InProcess(pulp.HiGHS):  # type: ignore[misc] # PuLP ships no types
         self._stop = stop
         self._start = start
         self._began = began
+        self._best: Floats | None = None
+        self._bound: float | None = None
+        self._error: BaseException | None = None
 
     def createAndConfigureSolver(self, lp: pulp.LpProblem) -> None:  # noqa: N802 - overrides a method of PuLP
         """Make a quiet HiGHS with our limits and our listener."""
@@ -204,7 +229,7 @@ class InProcess(pulp.HiGHS):  # type: ignore[misc] # PuLP ships no types
             highs.setOptionValue(name, value)
         highs.setOptionValue("mip_allow_restart", False)  # noqa: FBT003 - a third slower with restarts on two echelons
         highs.cbMipLogging.subscribe(self._report)
-        highs.cbMipImprovingSolution.subscribe(self._report)
+        highs.cbMipImprovingSolution.subscribe(self._improve)
         highs.cbMipInterrupt.subscribe(self._interrupt)
         lp.solverModel = highs
 
@@ -215,14 +240,49 @@ class InProcess(pulp.HiGHS):  # type: ignore[misc] # PuLP ships no types
             place = np.array([getattr(self._model.columns.all[column], "index", -1) for column in columns.tolist()])
             known = place >= 0
             lp.solverModel.setSolution(int(known.sum()), place[known].astype(np.int32), values[known])
-        lp.solverModel.run()
+        thread = threading.Thread(target=self._run, args=(lp.solverModel,), name="HiGHS")
+        thread.start()
+        while thread.is_alive():
+            thread.join(POLL_S)
+            if self._stop.requested:
+                self._wait(thread)
+                break
+        if thread.is_alive():
+            best = self._best
+            found = None if best is None else _of_columns(self._model, best)
+            note = NOTES[highspy.HighsModelStatus.kInterrupt]
+            self.left = Found(values=found, bound=self._bound, impossible=False, note=note)
+        elif self._error is not None:
+            raise self._error
+
+    def _wait(self, thread: threading.Thread) -> None:
+        """Give HiGHS its time to notice the stop."""
+        told = time.monotonic()
+        while thread.is_alive():
+            known = self._best is not None and self._bound is not None
+            if time.monotonic() - told > (PATIENCE_S if known else LONGER_PATIENCE_S):
+                return
+            thread.join(POLL_S)
+
+    def _run(self, highs: highspy.Highs) -> None:
+        try:
+            highs.run()
+        except BaseException as error:  # noqa: BLE001 - raised again by the thread that waits
+            self._error = error
 
     def findSolutionValues(self, lp: pulp.LpProblem) -> tuple[int, int]:  # noqa: ARG002, N802 - overrides a method of PuLP
         """Leave the variables alone: values and outcome are read from HiGHS itself."""
         return pulp.LpStatusNotSolved, pulp.LpSolutionNoSolutionFound
 
+    def _improve(self, event: Any) -> None:  # noqa: ANN401 - highspy's event
+        self._best = np.array(event.data_out.mip_solution)
+        self._report(event)
+
     def _report(self, event: Any) -> None:  # noqa: ANN401 - highspy's event
+        if self.left is not None:
+            return
         out = event.data_out
+        self._bound = _finite(out.mip_dual_bound, self._model.money)
         self._listener.update(
             Progress(
                 elapsed_s=time.monotonic() - self._began,
@@ -233,6 +293,7 @@ class InProcess(pulp.HiGHS):  # type: ignore[misc] # PuLP ships no types
         )
 
     def _interrupt(self, event: Any) -> None:  # noqa: ANN401 - highspy's event
+        self._bound = _finite(event.data_out.mip_dual_bound, self._model.money)
         if self._stop.requested:
             event.interrupt()
 
