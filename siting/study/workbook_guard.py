@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 import zipfile
+from collections import Counter
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
@@ -26,6 +27,12 @@ MOST_PARTS = 5_000
 MOST_MERGED = 100_000
 """Merged ranges of a workbook."""
 
+MOST_ROWS = 1_048_576
+"""Rows of a sheet, as the format has it."""
+
+MOST_ROW_BYTES = 16_000_000
+"""Size of the longest row, or of all that stands below the rows: held in memory whole. 16,384 cells take 1 MB."""
+
 BOMB_BYTES, BOMB_RATIO = 50_000_000, 200.0
 """A part above this size that is packed tighter than this is no table: sheets of numbers shrink 5 to 40 times."""
 
@@ -43,6 +50,7 @@ _BINARY = re.compile(r"(^|/)workbook\.bin$", re.IGNORECASE)
 _ENTITY = re.compile(rb"<!(DOCTYPE|ENTITY)")
 _FORMULA = re.compile(rb"<(?:\w+:)?f[ />]")
 _MERGED = re.compile(rb'<(?:\w+:)?mergeCell ref="([A-Z]{1,3}[0-9]{1,7}:[A-Z]{1,3}[0-9]{1,7})"')
+_ROW = re.compile(rb"<(/?)(?:\w+:)?row[\s/>]")
 _HIDDEN_ROW = re.compile(rb'<(?:\w+:)?row [^>]{0,200}hidden="(?:1|true)"')
 _BLOCK = 1 << 20
 _OVERLAP = 256
@@ -65,6 +73,8 @@ class Inspection:
     """Merged ranges by the part that holds their sheet."""
     hidden_rows: set[str] = field(default_factory=set)
     """Parts of sheets with hidden rows."""
+    rows: Counter[str] = field(default_factory=Counter)
+    """Rows by part."""
 
 
 def inspect_workbook(path: Path) -> Inspection:
@@ -134,6 +144,7 @@ def _is_bomb(member: zipfile.ZipInfo) -> bool:
 def _inspect_member(archive: zipfile.ZipFile, member: zipfile.ZipInfo, found: Inspection) -> None:
     """Note what a part of the workbook holds; refuse one that declares entities or macros."""
     kept = b""
+    since_row = 0
     with archive.open(member) as part:
         while block := part.read(_BLOCK):
             text = kept + block
@@ -145,7 +156,21 @@ def _inspect_member(archive: zipfile.ZipFile, member: zipfile.ZipInfo, found: In
                 raise RefusedError(wrong, "Save it as .xlsx, which has none")
             if "/worksheets/" in member.filename:
                 _inspect_sheet(text, member.filename, found)
+                since_row = _count_rows(block, since_row, member.filename, found)
             kept = text[-_OVERLAP:]
+
+
+def _count_rows(block: bytes, since_row: int, part: str, found: Inspection) -> int:
+    """Count the rows that start in a block; return how many bytes have gone by since the last start or end of one."""
+    last = 0
+    for tag in _ROW.finditer(block):
+        found.rows[part] += not tag[1]
+        since_row, last = 0, tag.end()
+    since_row += len(block) - last
+    if found.rows[part] > MOST_ROWS or since_row > MOST_ROW_BYTES:
+        wrong = "a sheet has more or longer rows than a sheet can have"
+        raise RefusedError(wrong, CORRUPT)
+    return since_row
 
 
 def _inspect_sheet(text: bytes, part: str, found: Inspection) -> None:

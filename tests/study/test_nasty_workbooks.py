@@ -295,6 +295,21 @@ def test_a_part_that_is_held_whole_is_limited(book: Path, monkeypatch: pytest.Mo
     assert one_fault(book).startswith("the workbook is packed tighter than any table can be")
 
 
+def test_rows_beyond_what_a_sheet_has_are_refused(book: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """As many rows as allowed are read, one more is not; nor is a row that would have to be held in memory whole."""
+    with zipfile.ZipFile(book) as archive:
+        names = [each for each in archive.namelist() if "/worksheets/" in each]
+        most = max(archive.read(each).count(b"<row") for each in names)
+    monkeypatch.setattr(guard, "MOST_ROWS", most)
+    assert read(book).faults == ()
+    monkeypatch.setattr(guard, "MOST_ROWS", most - 1)
+    assert one_fault(book).startswith("a sheet has more or longer rows than a sheet can have. Open it in a spreadsheet")
+    monkeypatch.undo()
+    long = b"".join(b'<c r="A9"><v>%d</v></c>' % number for number in range(guard.MOST_ROW_BYTES // 20))
+    with_parts(book, xl__worksheets__sheet1_xml=b'<worksheet><sheetData><row r="9">' + long)
+    assert one_fault(book).startswith("a sheet has more or longer rows than a sheet can have")
+
+
 def test_very_many_merged_ranges_are_refused(book: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """As many as allowed are looked at, one more is refused."""
     edited(book, lambda opened: [opened["customers"].merge_cells(f"J{row}:K{row}") for row in range(2, 5)])
