@@ -94,7 +94,7 @@ def check_raw(raw: RawStudy, lanes: ParsedLanes | None = None) -> Checked:
     check_rules(draft)
     check_tariffs(draft)
     if lanes is None:
-        known = Known(**draft.names) if draft.is_sound(*KEYS) else None
+        known = Known(**draft.names) if draft.is_complete() and draft.is_sound(*KEYS) else None
         lanes = parse_lanes(raw.tables.get("lanes"), known, gathering)
     check_places(draft, lanes)
     study = Study(

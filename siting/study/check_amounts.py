@@ -49,7 +49,7 @@ def _check_standing(draft: Draft) -> None:
 def _check_yearly(draft: Draft) -> None:
     """Note blank yearly charges of proposed sites: a forgotten charge makes a site look free."""
     sites = draft.sites
-    if "yearly_charge" not in sites.texts:
+    if "yearly_charge" not in sites.texts or not draft.is_sound("sites"):
         return
     for index, site in enumerate(sites.rows):
         is_blank = not sites.typed(index, "yearly_charge")
@@ -70,13 +70,12 @@ def _check_prices(table: Parsed[Any], draft: Draft) -> None:
 
 def _check_least(table: Parsed[Any], least: str, draft: Draft) -> None:
     name = table.spec.name
-    for row in table.rows:
+    for index, row in enumerate(table.rows):
         capacity = math.inf if row.capacity is None else row.capacity
-        smallest = getattr(row, least)
-        if smallest > capacity and not draft.gathering.hurt(name, row.row, "capacity", least):
+        if getattr(row, least) > capacity and not draft.gathering.hurt(name, row.row, "capacity", least):
             wrong = f"{least} is above the capacity ({number_text(capacity)})"
             repair = f"Write at most {number_text(capacity)}, or raise the capacity"
-            draft.gathering.fault(name, row.row, least, number_text(smallest), wrong, repair)
+            draft.gathering.fault(name, row.row, least, table.typed(index, least), wrong, repair)
 
 
 def _check_unlimited(draft: Draft) -> None:

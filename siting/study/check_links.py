@@ -145,13 +145,13 @@ def _check_offers(draft: Draft) -> None:
     if not draft.offers.there:
         return
     offering = {row.supplier for row in draft.offers.rows}
-    for supplier in draft.suppliers.rows:
+    for index, supplier in enumerate(draft.suppliers.rows):
         if supplier.supplier and supplier.supplier not in offering:
             wrong = f"supplier {supplier.supplier!r} offers nothing, since offers has no row for it"
             draft.gathering.warn("suppliers", supplier.row, "supplier", "", wrong, "Add its goods to offers")
         if supplier.unit_price:
             draft.gathering.fault(
-                "suppliers", supplier.row, "unit_price", f"{supplier.unit_price:g}",
+                "suppliers", supplier.row, "unit_price", draft.suppliers.typed(index, "unit_price"),
                 "prices are said by the table offers, this one would not count", "Clear the cell, or delete offers",
             )  # fmt: skip
 

@@ -82,7 +82,7 @@ class Column:
     enum: type[StrEnum] | None = None
     """Type of the choices, where they have one of their own."""
     pair: str = ""
-    """Column that the range is judged together with, in `places`: latitude and longitude may be swapped."""
+    """Column that the range is judged together with, in `coordinates`: latitude and longitude may be swapped."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

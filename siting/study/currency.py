@@ -32,15 +32,22 @@ def check_currency(code: str, today: dt.date | None = None) -> Refusal | None:
     ISO 4217 as recorded, with the dates of use, by the Unicode Common Locale Data Repository that babel carries.
     """
     ends = _last_days()
-    if code not in ends:
-        return Refusal("not a currency code of ISO 4217", did_you_mean(code, ends, "Write a code such as EUR"))
     day = dt.datetime.now(tz=dt.UTC).date() if today is None else today
+    if code not in ends:
+        return Refusal(
+            "not a currency code of ISO 4217", did_you_mean(code, _in_force(day), "Write a code such as EUR")
+        )
     last = ends[code]
     if last is not None and last < day:
         return Refusal(
             f"a currency code that was retired on {last.isoformat()}", "Write the code of the money in use, such as EUR"
         )
     return None
+
+
+def _in_force(day: dt.date) -> list[str]:
+    """Return the codes in force on a day."""
+    return [code for code, last in _last_days().items() if last is None or last >= day]
 
 
 @lru_cache(maxsize=1)

@@ -93,6 +93,10 @@ class Draft:
         """Return whether the study has the table, readable or not."""
         return self.tables[table].there or table in self.unreadable
 
+    def is_complete(self) -> bool:
+        """Return whether the tables that no study can do without are there."""
+        return self.has("customers") and (self.has("sites") or self.has("suppliers"))
+
     def is_sound(self, *tables: str) -> bool:
         """Return whether the names of these tables can be relied upon, so that others may be held against them."""
         return not any(

@@ -7,7 +7,7 @@ import re
 import unicodedata
 from dataclasses import dataclass
 
-from siting.cells import is_plain_number
+from siting.cells import is_plain_number, number_text
 from siting.study.columns import Column, Kind
 from siting.study.gathering import nearest
 
@@ -96,9 +96,10 @@ def in_range(column: Column, value: float) -> float | Refusal:
     too_low = column.low is not None and (value <= column.low if column.low_open else value < column.low)
     too_high = column.high is not None and (value >= column.high if column.high_open else value > column.high)
     if too_high and column.fraction:
-        return Refusal(
-            f"a share is a fraction below 1, got {value:g}", f"Write 8 % as 0.08, and {value:g} % as {value / 100:g}"
-        )
+        top = "below 1" if column.high_open else "of at most 1"
+        or_all = ", or 0.9999 where nearly all is meant" if value == 1 else ""
+        repair = f"Write {number_text(value)} % as {value / 100:.6g}{or_all}"
+        return Refusal(f"a share is a fraction {top}, got {number_text(value)}", repair)
     if too_low or too_high:
         wrong = "negative" if column.low == 0 and value < 0 else f"out of range ({range_words(column)})"
         return Refusal(wrong, f"Write a number {range_words(column)}")

@@ -4,13 +4,12 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
-from siting.study.columns import TABLES, Column
+from siting.study.coordinates import PLACED, check_coordinates, rough_km
 from siting.study.gathering import MOST_LISTED
-from siting.study.parse import range_words
 from siting.study.tables import LaneTable, Leg
 
 if TYPE_CHECKING:
@@ -19,18 +18,6 @@ if TYPE_CHECKING:
     from siting.arrays import Flags, Floats
     from siting.study.check_lanes import ParsedLanes
     from siting.study.draft import Draft
-
-PLACED = {"sites": "site", "suppliers": "supplier", "customers": "customer"}
-"""Tables whose rows have a place, and what one is called."""
-
-EARTH_RADIUS_KM = 6371.0088
-"""Mean radius of the earth (IUGG); good enough to find distances that are far out."""
-
-SWAP_KM = 1000.0
-"""A place this far from the middle of all others may have latitude and longitude swapped."""
-
-SWAP_GAIN = 10.0
-"""How many times nearer the middle the swapped place must be."""
 
 LEAST_RATIO, GREATEST_RATIO = 0.3, 3.0
 """Road distance over its estimate, outside of which a lane is worth a look."""
@@ -52,101 +39,17 @@ def check_places(draft: Draft, parsed: ParsedLanes) -> None:
     parsed
         The lanes; rows at fault are passed over.
     """
-    for table in PLACED:
-        for row in draft.tables[table].rows:
-            _check_pair(draft, table, row)
-    _check_swaps(draft)
+    are_sound = check_coordinates(draft)
     if not draft.is_sound(*PLACED) or "lanes" in draft.unreadable:
         return
     ends = _Ends(draft, parsed.table, ~parsed.hurt)
     _check_missing(draft, ends)
     _check_empty_lanes(draft, ends)
     _check_distances(draft, ends)
-    _check_ratio(draft, ends)
+    if are_sound:  # else a lane may seem too long or too short for a slip that is told already
+        _check_ratio(draft, ends)
     _check_reached(draft, ends)
     _check_rates(draft, ends)
-
-
-def rough_km(latitude_a: Floats, longitude_a: Floats, latitude_b: Floats, longitude_b: Floats) -> Floats:
-    """
-    Return distances on a sphere, to screen distances that are typed, never to cost anything.
-
-    Parameters
-    ----------
-    latitude_a, longitude_a, latitude_b, longitude_b
-        Degrees, of one shape; NaN where unknown.
-
-    Returns
-    -------
-    km
-        Within 0.6 % of the geodesic on the WGS84 ellipsoid; NaN where any coordinate is.
-
-    References
-    ----------
-    Haversine formula: Sinnott, R. W. (1984), Virtues of the haversine, Sky and Telescope 68(2): 159 (from memory).
-    """
-    up, down = np.radians(latitude_a), np.radians(latitude_b)
-    half_chord = np.sin((down - up) / 2) ** 2
-    half_chord += np.cos(up) * np.cos(down) * np.sin(np.radians(longitude_b - longitude_a) / 2) ** 2
-    km: Floats = 2 * EARTH_RADIUS_KM * np.arcsin(np.sqrt(np.clip(half_chord, 0.0, 1.0)))
-    return km
-
-
-def _check_pair(draft: Draft, table: str, row: Any) -> None:  # noqa: ANN401  (a row of any of three tables)
-    gathering = draft.gathering
-    latitude, longitude = row.latitude, row.longitude
-    if gathering.hurt(table, row.row, "latitude", "longitude"):
-        return
-    if (latitude is None) != (longitude is None):
-        column, other = ("latitude", "longitude") if latitude is None else ("longitude", "latitude")
-        wrong = f"blank, although {other} is given"
-        gathering.fault(table, row.row, column, "", wrong, f"Write the {column}, or clear the {other}")
-        return
-    if latitude is None:
-        return
-    if latitude == 0 and longitude == 0:
-        wrong = "latitude and longitude are both 0, a point in the sea off Africa"
-        gathering.fault(table, row.row, "latitude", "0", wrong, "Write the true coordinates, or clear both cells")
-        return
-    spec = TABLES[table]
-    north, east = spec.column("latitude"), spec.column("longitude")
-    if not _within(north, latitude) and _within(north, longitude) and _within(east, latitude):
-        wrong = f"out of range; latitude and longitude ({longitude:g}) look swapped"
-        gathering.fault(table, row.row, "latitude", f"{latitude:g}", wrong, "Swap the two")
-        return
-    for degrees, value in ((north, latitude), (east, longitude)):
-        if not _within(degrees, value):
-            wrong = f"out of range (degrees {range_words(degrees)})"
-            repair = "Write decimal degrees such as 48.2085"
-            gathering.fault(table, row.row, degrees.name, f"{value:g}", wrong, repair)
-
-
-def _within(column: Column, value: float) -> bool:
-    return column.low is not None and column.high is not None and column.low <= value <= column.high
-
-
-def _check_swaps(draft: Draft) -> None:
-    """Warn of places that would lie among the others if latitude and longitude were swapped."""
-    placed = [
-        (table, row)
-        for table in PLACED
-        for row in draft.tables[table].rows
-        if row.latitude is not None and row.longitude is not None
-        if not draft.gathering.hurt(table, row.row, "latitude", "longitude")
-    ]
-    if not placed:
-        return
-    latitude = np.array([row.latitude for _, row in placed])
-    longitude = np.array([row.longitude for _, row in placed])
-    middle = np.full(latitude.shape, np.median(latitude)), np.full(latitude.shape, np.median(longitude))
-    as_given = rough_km(latitude, longitude, *middle)
-    swapped = rough_km(longitude, latitude, *middle)
-    for at in np.flatnonzero((as_given > SWAP_KM) & (swapped * SWAP_GAIN < as_given)).tolist():
-        table, row = placed[at]
-        wrong = f"{as_given[at]:.0f} km from the middle of the study, {swapped[at]:.0f} km if swapped with longitude"
-        draft.gathering.warn(
-            table, row.row, "latitude", f"{row.latitude:g}", wrong, "Swap the two, unless the place is right"
-        )
 
 
 @dataclass(frozen=True)

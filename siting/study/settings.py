@@ -64,7 +64,7 @@ class Settings:
     """Road km within which a customer counts as served well. Above 0; needs service_share."""
 
     service_share: float | None = None
-    """Least share of all weight delivered within service_km, 90 % as 0.9, in [0, 1]; needs service_km."""
+    """Least share of all weight delivered within service_km, 90 % as 0.9, in [0, 1); needs service_km."""
 
     fewest_sites: int | None = None
     """Least number of sites open. At least 0."""

@@ -53,8 +53,11 @@ ADDED = [
     ("drop_charge = 48\ndrop_size = 0", r"drop_size, value '0': out of range \(above 0\)"),
     ("service_km = 200", r"service_km, value '200': service_km is set without service_share"),
     ("service_share = 0.9", r"service_share, value '0.9': service_share is set without service_km"),
-    ("service_km = 200\nservice_share = 90", r"service_share, value '90': .*Write 8 % as 0\.08, and 90 % as 0\.9"),
-    ("service_km = 200\nservice_share = 1", r"service_share, value '1': a share is a fraction below 1, got 1"),
+    ("service_km = 200\nservice_share = 90", r"service_share, value '90': .*Write 90 % as 0\.9\."),
+    (
+        "service_km = 200\nservice_share = 1",
+        r"service_share, value '1': a share is a fraction below 1, got 1\. Write 1 % as 0\.01, or 0\.9999 where",
+    ),
     ("carbon_price_per_t = 80", r"carbon_price_per_t, value '80': .*without emission_kg_per_tkm\. Set emission"),
     ("single_source = 2", r"single_source, value '2': neither true nor false\. Write true or false"),
     ('single_source = "maybe"', r"single_source, value 'maybe': neither yes nor no"),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
+import re
 
 import pytest
 
@@ -32,6 +33,16 @@ def test_unknown_codes(code: str) -> None:
     refusal = check_currency(code, DAY)
     assert refusal is not None
     assert refusal.wrong == "not a currency code of ISO 4217"
+
+
+@pytest.mark.parametrize("code", ["XAA", "AFB", "DEN"])
+def test_a_slip_is_never_mended_with_a_retired_code(code: str) -> None:
+    """AFA and DEM are nearest to these, and would be refused in turn."""
+    refusal = check_currency(code, DAY)
+    assert refusal is not None
+    meant = re.match("Write '([A-Z]{3})' if that is meant", refusal.repair)
+    assert meant is not None
+    assert check_currency(meant[1], DAY) is None
 
 
 def test_a_code_is_in_force_through_its_last_day() -> None:

@@ -99,7 +99,14 @@ CELLS = [
     ),
     ("sites", 2, "latitude", "", r"sites, row 2, column latitude: blank, although longitude is given"),
     ("sites", 2, "longitude", "", r"sites, row 2, column longitude: blank, although latitude is given"),
-    ("sites", 2, "latitude", "90.1", r"sites, row 2, column latitude, value '90.1': .*look swapped\. Swap the two"),
+    ("sites", 2, "latitude", "90.1", r"sites, row 2, column latitude, value '90.1': out of range .*from -90 to 90\)"),
+    (
+        "sites",
+        2,
+        "latitude",
+        "148.30639",
+        r"column latitude, value '148.30639': out of range .*from -90 to 90\)\. Write dec",
+    ),
     (
         "sites",
         2,
@@ -166,13 +173,8 @@ def test_values_at_the_limits_are_accepted(table: str, row: int, column: str, va
     assert faults_of(with_cells(TINY, table, {row: {column: value}})) == []
 
 
-def test_swapped_and_zero_coordinates_are_faults() -> None:
-    """A pair that only fits the other way round, and the point 0, 0, are never taken for places."""
-    found = faults_of(with_cells(TINY, "sites", {2: {"latitude": "120.5", "longitude": "48"}}))
-    assert len(found) == 1
-    assert re.search(
-        r"sites, row 2, column latitude, value '120.5': .*longitude \(48\) look swapped\. Swap the t", found[0]
-    )
+def test_coordinates_out_of_range_and_zero_are_faults() -> None:
+    """A pair out of range, and the point 0, 0, are never taken for places."""
     found = faults_of(with_cells(TINY, "sites", {2: {"latitude": "-91", "longitude": "-181"}}))
     assert len(found) == 2
     assert re.search(r"column latitude, value '-91': out of range \(degrees from -90 to 90\)", found[0])
@@ -480,3 +482,31 @@ def test_faults_of_one_table_are_capped_and_counted() -> None:
     found = faults_of({**TINY, "lanes": lanes})
     assert len(found) == 201
     assert found[-1].startswith("lanes: 400 more faults of this table are not listed")
+
+
+def test_missing_tables_are_told_once() -> None:
+    """Lanes to customers that are not there are not listed one by one beside the missing table."""
+    tables = {**TINY, "lanes": "origin,destination,road_km\nLinz,Vienna,184\nLinz,Munich,200\n"}
+    without = {name: text for name, text in tables.items() if name != "customers"}
+    assert [fault.split(":")[0] for fault in faults_of(without)] == ["customers"]
+    without = {name: text for name, text in tables.items() if name in {"customers", "lanes"}}
+    assert [fault.split(":")[0] for fault in faults_of(without)] == ["sites"]
+
+
+def test_a_missing_column_of_names_is_told_once() -> None:
+    """Sites without names cannot be looked up in sizes: their blank charges are not faults of their own."""
+    tables = {**GOODS, "sites": without_column(GOODS["sites"], "site")}
+    assert [fault.split(":")[0] for fault in faults_of(tables)] == ["sites, site"]
+
+
+@pytest.mark.parametrize(
+    ("table", "row", "cells", "typed"),
+    [
+        ("sites", 2, {"least_throughput": "100.50"}, "100.50"),
+        ("suppliers", 2, {"unit_price": "10.2500001"}, "10.2500001"),
+    ],
+)
+def test_values_are_shown_as_typed(table: str, row: int, cells: dict[str, str], typed: str) -> None:
+    """Neither rounded nor rewritten, so that they can be searched for."""
+    tables = TINY if table == "sites" else GOODS
+    assert [fault.value for fault in check_tables(with_cells(tables, table, {row: cells})).faults] == [typed]

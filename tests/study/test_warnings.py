@@ -9,7 +9,6 @@ import pytest
 from tests.builders import TINY, TINY_SETTINGS, check_tables, tiny_goods, tiny_study, with_cells, without_column
 
 NOWHERE = {"latitude": "", "longitude": ""}
-SWAPPED = {"latitude": "16.37208", "longitude": "48.20849"}
 
 WARNINGS = [
     ({"sites": without_column(TINY["sites"], "standing")}, r"^sites, standing: .*every row is taken as proposed"),
@@ -22,7 +21,6 @@ WARNINGS = [
     ({"contacts": "name\nx\n"}, r"^contacts: the file is not a table of a study and was not read"),
     ({"goods": "good\n"}, r"^goods: the table has no rows and counts as absent"),
     ({"lanes": "origin,destination,road_km\nLinz,Vienna,700\n"}, r"^lanes, row 2, column road_km, value '700': .*Linz"),
-    (with_cells(TINY, "customers", {2: SWAPPED}), r"^customers, row 2, column latitude, value '16.3721': .*swapped"),
 ]  # fmt: skip
 
 
