@@ -25,6 +25,7 @@ if TYPE_CHECKING:
 
     from siting.questions.resolved import Resolved
     from siting.questions.searching import Ask, Bench
+    from siting.questions.starts import Hints
 
 TICK_S = 0.25
 """Seconds between two looks at the stop and two reports of progress."""
@@ -54,8 +55,14 @@ def cores() -> int:
     return os.cpu_count() or 1
 
 
-def in_processes(
-    bench: Bench, asks: Sequence[Ask], *, workers: int, stop: Stop, tick: Callable[[], None]
+def in_processes(  # noqa: PLR0913 - what is shared, what is asked, and how it is watched
+    bench: Bench,
+    asks: Sequence[Ask],
+    hints: Callable[[], Hints],
+    *,
+    workers: int,
+    stop: Stop,
+    tick: Callable[[], None],
 ) -> Iterator[tuple[Ask, Resolved]]:
     """
     Yield each restriction with its answer as it comes; once stopped, those under way end early and no more begin.
@@ -66,6 +73,8 @@ def in_processes(
         What every restriction of the study shares; sent to each process once.
     asks
         What to resolve, in the order in which to begin.
+    hints
+        Returns what was found so far; called when a search begins.
     workers
         Number of processes.
     stop
@@ -87,23 +96,24 @@ def in_processes(
     context = multiprocessing.get_context("spawn")
     event = context.Event()
     pool = ProcessPoolExecutor(workers, mp_context=context, initializer=_begin, initargs=(bench, event))
-    left = dict.fromkeys(asks)
+    waiting = list(asks)
+    running: dict[Future[Resolved], Ask] = {}
     try:
-        futures: dict[Future[Resolved], Ask] = {pool.submit(_work, ask): ask for ask in asks}
-        while futures:
-            done, _ = wait(futures, timeout=TICK_S, return_when=FIRST_COMPLETED)
+        while running or (waiting and not stop.requested):
+            while waiting and len(running) < workers and not stop.requested:
+                running[pool.submit(_work, waiting[0], hints())] = waiting[0]
+                del waiting[0]
+            done, _ = wait(running, timeout=TICK_S, return_when=FIRST_COMPLETED)
             tick()
-            if stop.requested and not event.is_set():
+            if stop.requested:
                 event.set()
-                futures = {future: ask for future, ask in futures.items() if not future.cancel()}
-            for future in done & futures.keys():
-                ask = futures.pop(future)
-                yield ask, future.result()
-                del left[ask]
+            for future in done:
+                yield running[future], future.result()
+                del running[future]
     except BrokenProcessPool:
-        for ask in left:
+        for ask in (*running.values(), *waiting):
             if not stop.requested:
-                yield ask, resolve_one(bench, ask, stop)
+                yield ask, resolve_one(bench, ask, stop, hints())
                 tick()
     finally:
         event.set()
@@ -125,8 +135,8 @@ def _end_with_parent() -> None:
         os._exit(1)
 
 
-def _work(ask: Ask) -> Resolved:
+def _work(ask: Ask, hints: Hints) -> Resolved:
     if _bench is None:
         msg = "a process of the pool was not given its study"
         raise RuntimeError(msg)
-    return resolve_one(_bench, ask, _stop)
+    return resolve_one(_bench, ask, _stop, hints)

@@ -7,6 +7,7 @@ resolved in this process, larger ones on all cores; Stop keeps what is done.
 
 from __future__ import annotations
 
+import math
 import time
 from dataclasses import replace
 from typing import TYPE_CHECKING
@@ -16,8 +17,9 @@ from siting.listener import Progress, Silent, Stop
 from siting.network.network import build_network
 from siting.questions.pool import cores, in_processes
 from siting.questions.resolved import Resolved
-from siting.questions.restriction import Restriction
+from siting.questions.restriction import Restriction, parts_of
 from siting.questions.searching import Ask, Bench, resolve_one
+from siting.questions.starts import Hints, regret
 from siting.questions.store import Key, MemoryStore
 from siting.solving.solve import solve
 from siting.study.fingerprint import fingerprint
@@ -81,6 +83,8 @@ class Resolver:
         self._began = time.monotonic()
         self._given = answer
         self._bench: Bench | None = None
+        self._without: dict[str, float] = {}
+        self._plans: list[tuple[float, frozenset[tuple[str, str]]]] = []
         self._refuse_another()
 
     def start(self, task: str) -> None:
@@ -155,11 +159,43 @@ class Resolver:
             if kept is None:
                 todo.append(ask)
             else:
+                self._learn(ask, kept)
                 yield ask, kept
-        for ask, resolved in self._answers(todo):
+        for ask, resolved in self._answers(self._in_order(todo)):
             self.searches += 1
+            self._learn(ask, resolved)
             self._keep(self._key(ask.restriction, ask.question, ask.gap), resolved)
             yield ask, resolved
+
+    def _in_order(self, asks: list[Ask]) -> list[Ask]:
+        """Return the asks: held verdicts first, then what is dearest to do without, which narrows the rest."""
+        if len(asks) <= 1:
+            return asks
+        network, plan = self.bench().network, self.plan().plan
+        there = {name for name, _ in parts_of(plan)} if plan else set()
+
+        def place(ask: Ask) -> tuple[int, float]:
+            out = ask.restriction.out & there
+            if ask.restriction.held is not None:
+                return 0, 0.0
+            if plan is None or len(out) != 1:
+                return 2, 0.0
+            return 1, -regret(network, plan, *out)
+
+        return sorted(asks, key=place)
+
+    def _learn(self, ask: Ask, resolved: Resolved) -> None:
+        """Take from an answer what may help the searches after it."""
+        out, cost, bound = ask.restriction.out, resolved.cost, resolved.bound
+        if len(out) == 1 and ask.restriction == Restriction(out=out):
+            proved = math.inf if resolved.impossible else bound
+            if proved is not None:
+                self._without |= dict.fromkeys(out, proved)
+        if resolved.plan is not None and cost is not None:
+            self._plans.append((cost, parts_of(resolved.plan)))
+
+    def _hints(self) -> Hints:
+        return Hints(without=dict(self._without), plans=tuple(sorted(self._plans, key=lambda plan: plan[0])))
 
     def bench(self) -> Bench:
         """Return what all restrictions of the study share, its plan as the incumbent."""
@@ -192,7 +228,7 @@ class Resolver:
             if workers > 1 and len(left) > 1 and expected * len(left) > POOL_START_S:
                 break
             ask = left.pop(0)
-            yield ask, resolve_one(bench, ask, self.stop)
+            yield ask, resolve_one(bench, ask, self.stop, self._hints())
             done = len(todo) - len(left)
             expected = (time.monotonic() - began) / done
             self._report(len(todo), done, began, 1)
@@ -205,7 +241,7 @@ class Resolver:
         def tick() -> None:
             self._report(total, before + done, began, workers, here=done)
 
-        for ask, resolved in in_processes(bench, left, workers=workers, stop=self.stop, tick=tick):
+        for ask, resolved in in_processes(bench, left, self._hints, workers=workers, stop=self.stop, tick=tick):
             done += 1
             yield ask, resolved
 

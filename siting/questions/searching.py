@@ -7,6 +7,7 @@ back is audited against the restricted study.
 
 from __future__ import annotations
 
+import math
 import time
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
@@ -22,6 +23,7 @@ from siting.plan.proof import PROVED_GAP, Outcome, Proof, gap_of
 from siting.questions.allowed import allowed
 from siting.questions.resolved import Resolved
 from siting.questions.restriction import moving, obeys, parts_of, restrict, tightens
+from siting.questions.starts import Hints, pinned_in, stand_ins
 from siting.solving.flows import flows_for, price
 from siting.solving.impossible import EXPLAIN_SECONDS, explain
 from siting.solving.settle import settled_bound
@@ -70,7 +72,10 @@ class Ask:
         return "best, explained" if self.explained else "best"
 
 
-def resolve_one(bench: Bench, ask: Ask, stop: Stop) -> Resolved:
+NO_HINTS = Hints()
+
+
+def resolve_one(bench: Bench, ask: Ask, stop: Stop, hints: Hints = NO_HINTS) -> Resolved:
     """
     Return the best plan of a study under one restriction.
 
@@ -82,6 +87,8 @@ def resolve_one(bench: Bench, ask: Ask, stop: Stop) -> Resolved:
         The restriction, the gap, and whether to explain.
     stop
         Once requested, the best plan so far is returned.
+    hints
+        What other searches of the study have found.
 
     Returns
     -------
@@ -95,7 +102,7 @@ def resolve_one(bench: Bench, ask: Ask, stop: Stop) -> Resolved:
     AuditError
         If the plan found fails its audit, or does not obey the restriction.
     """
-    return _Search(bench, ask, stop).resolve()
+    return _Search(bench, ask, stop, hints).resolve()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -115,12 +122,14 @@ NOTHING = _Found(decisions=None, amounts=None, cost=None, bound=None, impossible
 class _Search:
     """The search under one restriction."""
 
-    def __init__(self, bench: Bench, ask: Ask, stop: Stop) -> None:
+    def __init__(self, bench: Bench, ask: Ask, stop: Stop, hints: Hints) -> None:
         self._bench, self._ask, self._stop = bench, ask, stop
+        tight = tightens(bench.study, ask.restriction)
+        self._hints = hints if tight else replace(hints, without={})
         self._began = time.monotonic()
         self._settings = replace(bench.settings, gap=ask.gap)
         self._restricted = restrict(bench.study, bench.network, ask.restriction)
-        self._floor = bench.floor if tightens(bench.study, ask.restriction) else None
+        self._floor = bench.floor if tight else None
         self._engine, self._reason = pick_engine(self._restricted.searched, self._settings)
 
     def resolve(self) -> Resolved:
@@ -146,6 +155,9 @@ class _Search:
             return replace(start, bound=self._floor)
         if self._decided(network):
             return replace(start, bound=start.cost) if start is not None else NOTHING
+        needed = self._needed(start)
+        if needed:
+            network = pinned_in(network, set(needed))
         result = REGISTRY[self._engine](
             network,
             replace(self._settings, time_limit_s=max(self._left(), 0.01)),
@@ -153,18 +165,29 @@ class _Search:
             stop=self._stop,
             start=None if start is None else start.decisions,
         )
-        if result.impossible:
+        if result.impossible and start is None:
             return NOTHING
-        bound = _highest(result.bound, self._floor)
+        bound = None if result.bound is None else min(result.bound, *needed.values(), math.inf)
         found = start if result.decisions is None else self._priced(network, result.decisions)
         if found is None and result.decisions is not None:
             msg = f"the decisions of the engine `{self._engine}` cannot serve all demand. Try another engine."
             raise EngineError(msg)
         if found is None:
-            return _Found(decisions=None, amounts=None, cost=None, bound=bound)
+            return _Found(decisions=None, amounts=None, cost=None, bound=_highest(bound, self._floor))
         if start is not None and start.cost is not None and found.cost is not None and start.cost < found.cost:
             found = start
-        return replace(found, bound=bound)
+        return replace(found, bound=_highest(bound, self._floor))
+
+    def _needed(self, start: _Found | None) -> dict[str, float]:
+        """Return what every plan cheaper than the start has, as other searches have proved, with their bounds."""
+        if start is None or start.cost is None or start.decisions is None:
+            return {}
+        ceiling = start.cost - self._ask.gap * abs(start.cost)
+        network = self._bench.network
+        is_open = network.option_site[self._restricted.widen(start.decisions).option_open]
+        names = {network.sites[at] for at in is_open.tolist()}
+        names |= {network.suppliers[at] for at in np.flatnonzero(start.decisions.supplier_signed).tolist()}
+        return self._hints.needed(names - self._ask.restriction.pinned, ceiling)
 
     def _in_use(self, network: Network, found: _Found) -> _Found:
         """
@@ -190,17 +213,26 @@ class _Search:
         return replace(again, amounts=amounts, cost=cost, bound=_highest(found.bound, bound))
 
     def _start(self, network: Network) -> _Found | None:
-        """Return the incumbent with the restriction imposed on it, where that makes a plan."""
+        """Return the cheapest plan at hand that keeps the restriction: the incumbent, one found, or with a stand-in."""
         incumbent, restriction = self._bench.incumbent, self._ask.restriction
         if restriction.held is not None:
-            parts = restriction.held
-        elif incumbent is None:
+            return self._begun(network, restriction.held)
+        if incumbent is None:
             return None
-        else:
-            parts = frozenset(part for part in parts_of(incumbent) if part[0] not in restriction.out)
-            there = {name for name, _ in parts}
-            parts |= {part for name in restriction.pinned - there for part in self._cheapest_part(name)}
-        decisions = self._restricted.narrow(decisions_of(self._bench.study, self._bench.network, incumbent, parts))
+        parts = frozenset(part for part in parts_of(incumbent) if part[0] not in restriction.out)
+        there = {name for name, _ in parts}
+        parts |= {part for name in restriction.pinned - there for part in self._cheapest_part(name)}
+        fitting = self._hints.fitting(restriction)
+        begun = [self._begun(network, at_hand) for at_hand in (parts, fitting) if at_hand is not None]
+        if not any(begun) and restriction.out and not network.single_source.any():
+            tried = stand_ins(self._bench.study, self._bench.network, incumbent, restriction.out)
+            begun = [self._begun(network, at_hand) for at_hand in tried]
+        return min((found for found in begun if found is not None), key=_cost, default=None)
+
+    def _begun(self, network: Network, parts: frozenset[tuple[str, str]]) -> _Found | None:
+        """Return the plan with these parts, where it is allowed and serves everything."""
+        study, incumbent = self._bench.study, self._bench.incumbent
+        decisions = self._restricted.narrow(decisions_of(study, self._bench.network, incumbent, parts))
         return self._priced(network, decisions) if allowed(network, decisions) else None
 
     def _cheapest_part(self, name: str) -> list[tuple[str, str]]:
@@ -295,6 +327,10 @@ class _Search:
             msg = "the plan found failed its audit and is not shown: " + "; ".join(faults)
             raise AuditError(msg)
         return plan
+
+
+def _cost(found: _Found) -> float:
+    return math.inf if found.cost is None else found.cost
 
 
 def _highest(one: float | None, other: float | None) -> float | None:

@@ -7,6 +7,7 @@ import hashlib
 import json
 import math
 from typing import TYPE_CHECKING
+from weakref import WeakKeyDictionary
 
 import numpy as np
 
@@ -18,6 +19,9 @@ if TYPE_CHECKING:
 
 _FORM = b"siting study, form 2\n"
 """Changes whenever the canonical form does, so that fingerprints of two forms never agree by accident."""
+
+_known: WeakKeyDictionary[Study, str] = WeakKeyDictionary()
+"""Fingerprints of studies still in use, which never change: each is asked for several times."""
 
 
 def fingerprint(study: Study) -> str:
@@ -36,6 +40,13 @@ def fingerprint(study: Study) -> str:
         sorted, numbers as doubles, blank attributes left out. Row numbers, the order of rows and columns, warnings and
         columns that are blank throughout do not matter.
     """
+    known = _known.get(study)
+    if known is None:
+        known = _known[study] = _digest(study)
+    return known
+
+
+def _digest(study: Study) -> str:
     digest = hashlib.sha256(_FORM)
     digest.update(_text(dataclasses.asdict(study.settings)))
     for name in TABLES:
