@@ -86,3 +86,9 @@ class AuditError(SitingError):
 
 class EngineError(SitingError):
     """A solver gave up for a reason of its own (never for an impossible study)."""
+
+
+class DataFileError(SitingError):
+    """A file given to a command cannot be used, or what it should write cannot be written."""
+
+    exit_code: ClassVar[int] = 2

@@ -5,8 +5,8 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from siting.commands.layout import bullets, paragraph, table
-from siting.plan.plan import CostLine
 from siting.plan.freight_words import tariff_sentence
+from siting.plan.plan import CostLine
 from siting.plan.words import CAUTIONS, delivery_sentence, headline, payback, percent
 
 if TYPE_CHECKING:

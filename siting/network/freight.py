@@ -8,7 +8,7 @@ first two take in the delivery.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Protocol
 
 import numpy as np
 
@@ -18,7 +18,6 @@ from siting.study.tables import Leg
 if TYPE_CHECKING:
     from siting.arrays import Flags, Floats, Positions
     from siting.network.lanes import FoundLanes
-    from siting.network.parties import Parties
     from siting.study.tables import Study
 
 KG_PER_T = 1000.0
@@ -58,7 +57,19 @@ class LegLanes:
         return int(self.origin.shape[0])
 
 
-def price_lanes(leg: Leg, lanes: FoundLanes, study: Study, parties: Parties, added: Floats) -> LegLanes:
+class GoodNumbers(Protocol):
+    """What freight goes by of each good, of shape (goods,): parties and networks both have it."""
+
+    @property
+    def load(self) -> Floats:
+        """Capacity used by one unit."""
+
+    @property
+    def weight_t(self) -> Floats:
+        """Tonnes per unit."""
+
+
+def price_lanes(leg: Leg, lanes: FoundLanes, study: Study, goods: GoodNumbers, added: Floats) -> LegLanes:
     """
     Return the lanes with what one unit of the good costs on each.
 
@@ -70,7 +81,7 @@ def price_lanes(leg: Leg, lanes: FoundLanes, study: Study, parties: Parties, add
         The lanes of the leg that exist.
     study
         Its settings, and its `lanes` table, which says whether a unit_cost is per unit of the good or of load.
-    parties
+    goods
         Load and weight of the goods.
     added
         Shape (lanes,). Money per unit of the good on top: handling or price.
@@ -87,7 +98,7 @@ def price_lanes(leg: Leg, lanes: FoundLanes, study: Study, parties: Parties, add
     per_drop = np.zeros(len(lanes))
     if settings.drop_charge and not inbound:
         per_drop = settings.drop_charge / delivery_sizes(leg, study)[lanes.destination]
-    unit_load = parties.load[lanes.good]
+    unit_load = goods.load[lanes.good]
     costed = ~np.isnan(lanes.unit_cost)
     names_good = np.append(study.lanes.good >= 0, np.False_)[lanes.row]  # lanes without a row take the last element
     row_cost = lanes.unit_cost * np.where(names_good, 1.0, unit_load)
@@ -97,7 +108,7 @@ def price_lanes(leg: Leg, lanes: FoundLanes, study: Study, parties: Parties, add
     freight = np.where(costed, row_cost, unit_load * rated)
     delivery = np.where(tariff == NO_TARIFF, unit_load * per_drop, 0.0)
     km = np.where(np.isnan(lanes.km), 0.0, lanes.km)
-    kg_co2e = (settings.emission_kg_per_tkm or 0.0) * parties.weight_t[lanes.good] * km
+    kg_co2e = (settings.emission_kg_per_tkm or 0.0) * goods.weight_t[lanes.good] * km
     return LegLanes(
         origin=lanes.origin,
         destination=lanes.destination,

@@ -45,6 +45,8 @@ class Places:
     longitude: Floats
     takes: Flags
     """(places, goods) True where the good may start (or end) here."""
+    country: Positions
+    """Position of its country among those of the places at this end."""
 
     @property
     def located(self) -> Flags:
@@ -61,6 +63,8 @@ class LegEnds:
     goods: tuple[str, ...]
     origins: Places
     destinations: Places
+    circuity: Floats
+    """(origin countries, destination countries) road km per geodesic km where no row gives road_km."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -89,18 +93,16 @@ class FoundLanes:
         return int(self.origin.shape[0])
 
 
-def find_lanes(ends: LegEnds, table: LaneTable, *, circuity: float, listed_only: bool) -> FoundLanes:
+def find_lanes(ends: LegEnds, table: LaneTable, *, listed_only: bool) -> FoundLanes:
     """
     Return the lanes of one leg that coordinates or the `lanes` table give.
 
     Parameters
     ----------
     ends
-        Who may send what to whom.
+        Who may send what to whom, and how much longer roads are than straight lines.
     table
         A row with a good beats one without, as a whole; a barred row takes its lanes out.
-    circuity
-        Road km per geodesic km where no row gives road_km.
     listed_only
         True where only a row makes a lane (drop shipment).
 
@@ -120,7 +122,7 @@ def find_lanes(ends: LegEnds, table: LaneTable, *, circuity: float, listed_only:
     pair = keys // len(ends.goods)
     km = np.append(table.road_km, np.nan)[row]
     km_given = ~np.isnan(km)
-    km[~km_given] = circuity * _pair_km(pair[~km_given], ends)
+    km[~km_given] = _pair_km(pair[~km_given], ends)
     origin, destination = np.divmod(pair, max(1, len(ends.destinations.names)))
     lanes = FoundLanes(
         origin=origin.astype(np.int32),
@@ -206,7 +208,7 @@ def _positions(names: Sequence[str], places: Sequence[str]) -> Positions:
 
 
 def _pair_km(pair: Keys, ends: LegEnds) -> Floats:
-    """Return the geodesic km of ascending pairs, each distance computed once for all its goods."""
+    """Return the estimated road km of ascending pairs, each distance computed once for all its goods."""
     if not pair.size:
         return np.zeros(0)
     is_first = np.append(True, pair[1:] != pair[:-1])
@@ -217,5 +219,6 @@ def _pair_km(pair: Keys, ends: LegEnds) -> Floats:
         ends.destinations.latitude[destination],
         ends.destinations.longitude[destination],
     )
+    km *= ends.circuity[ends.origins.country[origin], ends.destinations.country[destination]]
     every: Floats = km[np.cumsum(is_first) - 1]
     return every

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import math
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
 
+from siting.network.circuity import countries_of, factors_between
 from siting.network.freight import price_lanes
 from siting.network.lanes import EDGE, LegEnds, Places, find_lanes, within_reach
 from siting.network.parties import or_unlimited
@@ -15,7 +17,7 @@ from siting.study.tables import Leg
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from siting.arrays import Flags, Floats
+    from siting.arrays import Flags, Floats, Positions
     from siting.network.freight import LegLanes
     from siting.network.lanes import FoundLanes
     from siting.network.parties import Parties
@@ -38,13 +40,10 @@ def inbound_lanes(study: Study, parties: Parties) -> LegLanes:
     lanes
         None where the study has no suppliers. Inbound has no reach and no delivery charge.
     """
-    ends = LegEnds(
-        leg=Leg.INBOUND,
-        goods=parties.goods,
-        origins=_places(parties.suppliers, study.suppliers, parties.offered),
-        destinations=_places(parties.sites, study.sites, parties.every_good(len(parties.sites))),
-    )
-    lanes = find_lanes(ends, study.lanes, circuity=study.settings.circuity, listed_only=False)
+    starts = _End(names=parties.suppliers, rows=study.suppliers, takes=parties.offered)
+    stops = _End(names=parties.sites, rows=study.sites, takes=parties.every_good(len(parties.sites)))
+    ends = _ends(Leg.INBOUND, study, parties, starts, stops)
+    lanes = find_lanes(ends, study.lanes, listed_only=False)
     return price_lanes(Leg.INBOUND, lanes, study, parties, parties.offer_price[lanes.origin, lanes.good])
 
 
@@ -64,13 +63,9 @@ def outbound_lanes(study: Study, parties: Parties) -> LegLanes:
     lanes
         Those of single-sourced customers only from sites whose largest option holds them whole.
     """
-    ends = LegEnds(
-        leg=Leg.OUTBOUND,
-        goods=parties.goods,
-        origins=_places(parties.sites, study.sites, parties.every_good(len(parties.sites))),
-        destinations=_customers(study, parties),
-    )
-    lanes = find_lanes(ends, study.lanes, circuity=study.settings.circuity, listed_only=False)
+    starts = _End(names=parties.sites, rows=study.sites, takes=parties.every_good(len(parties.sites)))
+    ends = _ends(Leg.OUTBOUND, study, parties, starts, _customers(study, parties))
+    lanes = find_lanes(ends, study.lanes, listed_only=False)
     lanes = within_reach(lanes, _reach(study))
     unlimited = np.full((len(parties.sites), len(parties.goods)), np.inf)
     lanes = _holding_whole(lanes, parties, parties.largest(), unlimited)
@@ -96,13 +91,9 @@ def direct_lanes(study: Study, parties: Parties) -> LegLanes:
         Within reach, at the outbound rate, with deliveries and price; those of single-sourced customers only from
         suppliers that can deliver them whole.
     """
-    ends = LegEnds(
-        leg=Leg.DIRECT,
-        goods=parties.goods,
-        origins=_places(parties.suppliers, study.suppliers, parties.offered),
-        destinations=_customers(study, parties),
-    )
-    lanes = find_lanes(ends, study.lanes, circuity=study.settings.circuity, listed_only=True)
+    starts = _End(names=parties.suppliers, rows=study.suppliers, takes=parties.offered)
+    ends = _ends(Leg.DIRECT, study, parties, starts, _customers(study, parties))
+    lanes = find_lanes(ends, study.lanes, listed_only=True)
     lanes = within_reach(lanes, _reach(study))
     lanes = _holding_whole(lanes, parties, parties.supplier_capacity, parties.offer_capacity)
     return price_lanes(Leg.DIRECT, lanes, study, parties, parties.offer_price[lanes.origin, lanes.good])
@@ -129,14 +120,34 @@ def _holding_whole(lanes: FoundLanes, parties: Parties, capacity: Floats, good_c
     return lanes.only(~asked | (fits & (fitting >= needed)))
 
 
-def _customers(study: Study, parties: Parties) -> Places:
-    return _places(parties.customers, study.customers, parties.demand > 0)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _End:
+    """One end of a leg: a table's names and rows, and (rows, goods) which goods each takes."""
+
+    names: tuple[str, ...]
+    rows: Sequence[SiteRow | CustomerRow | SupplierRow]
+    takes: Flags
 
 
-def _places(names: tuple[str, ...], rows: Sequence[SiteRow | CustomerRow | SupplierRow], takes: Flags) -> Places:
-    degrees = [[math.nan if at is None else at for at in (row.latitude, row.longitude)] for row in rows]
+def _customers(study: Study, parties: Parties) -> _End:
+    return _End(names=parties.customers, rows=study.customers, takes=parties.demand > 0)
+
+
+def _ends(leg: Leg, study: Study, parties: Parties, starts: _End, stops: _End) -> LegEnds:
+    (from_countries, from_at), (to_countries, to_at) = (countries_of(study, end.rows) for end in (starts, stops))
+    return LegEnds(
+        leg=leg,
+        goods=parties.goods,
+        origins=_places(starts, from_at),
+        destinations=_places(stops, to_at),
+        circuity=factors_between(study, from_countries, to_countries),
+    )
+
+
+def _places(end: _End, country: Positions) -> Places:
+    degrees = [[math.nan if at is None else at for at in (row.latitude, row.longitude)] for row in end.rows]
     latitude, longitude = np.array(degrees, dtype=np.float64).reshape(-1, 2).T
-    return Places(names=names, latitude=latitude, longitude=longitude, takes=takes)
+    return Places(names=end.names, latitude=latitude, longitude=longitude, takes=end.takes, country=country)
 
 
 def _reach(study: Study) -> Floats:

@@ -15,6 +15,7 @@ import numpy as np
 
 from siting.network.distance import geodesic_km
 from siting.plan.audit_tariffs import Haul, TariffBook
+from siting.study.countries import country_key
 from siting.study.tables import Leg, SiteStanding, SupplierStanding
 
 if TYPE_CHECKING:
@@ -178,7 +179,8 @@ class Books:
             ],
             dtype=np.float64,
         ).reshape(len(flows), 4)
-        return self.study.settings.circuity * geodesic_km(*points.T)
+        factors = np.array([circuity_between(self.study, a.country, b.country) for a, b in places], dtype=np.float64)
+        return factors * geodesic_km(*points.T)
 
     def _charges(self, flow: Flow, lane: _Lane, load: float) -> dict[str, float]:
         """Return what each tariff that fits charges for a flow; empty where `lanes` sets its freight."""
@@ -264,6 +266,34 @@ class Books:
     def deliveries(self) -> list[Move]:
         """The flows that end at customers."""
         return [move for move in self.moves if move.flow.leg is not Leg.INBOUND]
+
+
+def circuity_between(study: Study, country: str, other: str) -> float:
+    """
+    Return road km per geodesic km between places in two countries.
+
+    Parameters
+    ----------
+    study
+        Its `circuity` table and settings.
+    country, other
+        As typed; may be blank.
+
+    Returns
+    -------
+    factor
+        That of the pair's row; else the mean of both ends', of which one without a row goes by the settings.
+    """
+    if not study.circuity:
+        return study.settings.circuity
+    ends, found = (country_key(country), country_key(other)), [study.settings.circuity] * 2
+    for row in study.circuity:
+        named = country_key(row.country), country_key(row.other_country) or country_key(row.country)
+        if set(named) == set(ends):
+            return row.circuity
+        if named[0] == named[1]:
+            found = [row.circuity if end == named[0] else held for end, held in zip(ends, found, strict=True)]
+    return sum(found) / len(found)
 
 
 def overriding_rows(lanes: LaneTable, flows: Sequence[Flow]) -> list[int | None]:

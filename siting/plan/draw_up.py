@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from siting.network.tariffs import NO_TARIFF
+from siting.plan.freight_words import circuity_words, sensitivity_sentence
 from siting.plan.plan import (
     LOAD_TOLERANCE,
     CustomerLine,
@@ -23,6 +24,7 @@ from siting.plan.plan import (
 )
 from siting.plan.pricing import cost_lines, costs_to_serve, moves_of
 from siting.plan.proof import PROVED_GAP, Proof, outcome_of
+from siting.plan.road_sensitivity import road_sensitivity
 from siting.plan.service import service_of, tonnes_co2e_of
 from siting.plan.words import percent
 from siting.study.fingerprint import fingerprint
@@ -43,6 +45,9 @@ FULL_SHARE = 0.85
 
 GROWTH = 0.10
 """Growth of demand at which sites are checked for being full."""
+
+MOST_OF_THE_LOAD = 0.5
+"""Where more of the load goes over estimated distances, what they decide is told."""
 
 NO_BOUNDS: Mapping[int, float] = {}
 
@@ -125,7 +130,7 @@ def draw_up(  # noqa: PLR0913  # what a search hands over; all but the four inpu
         tonnes_co2e=tonnes_co2e_of(study.settings, moves),
         one_off=sum(line.one_off for line in sites) + sum(line.one_off for line in suppliers),
         today=today,
-        warnings=_warnings(study, sites, service, moves),
+        warnings=_warnings(study, network, sites, service, moves, cost),
     )
 
 
@@ -306,19 +311,21 @@ def _customer_lines(network: Network, moves: AllMoves, marginal: Floats) -> tupl
     return tuple(lines)
 
 
-def _warnings(study: Study, sites: tuple[SiteLine, ...], service: Service, moves: AllMoves) -> tuple[str, ...]:
+def _warnings(  # noqa: PLR0913, PLR0917  # all that may be worth a warning
+    study: Study, network: Network, sites: tuple[SiteLine, ...], service: Service, moves: AllMoves, cost: float
+) -> tuple[str, ...]:
     """Return what the analyst should know about this plan."""
     warnings = []
     unpriced = _outside_tariffs(study, moves)
     if unpriced:
-        warnings.append(
-            f"{percent(unpriced)} of all load moved fits no tariff and goes at the rates of the settings."
-        )
+        warnings.append(f"{percent(unpriced)} of all load moved fits no tariff and goes at the rates of the settings.")
     if service.estimated_share:
         warnings.append(
             f"{percent(service.estimated_share)} of the load is delivered over estimated distances "
-            f"(straight line times {study.settings.circuity:g}), which understate short trips."
+            f"(straight line times {circuity_words(study)}), which understate short trips."
         )
+        if service.estimated_share > MOST_OF_THE_LOAD:
+            warnings.append(sensitivity_sentence(study, road_sensitivity(study, network, moves), cost))
     grown = [(line.site, line.utilisation * (1 + GROWTH)) for line in sites if line.utilisation is not None]
     full = [f"{site} ({percent(share)})" for site, share in grown if share > FULL_SHARE]
     if full:

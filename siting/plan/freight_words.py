@@ -4,10 +4,12 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from siting.plan.words import percent
+from siting.plan.road_sensitivity import CIRCUITY_STEP
+from siting.plan.words import money, percent
 
 if TYPE_CHECKING:
     from siting.plan.plan import Plan
+    from siting.plan.road_sensitivity import RoadSensitivity
     from siting.study.tables import Study
 
 
@@ -40,6 +42,58 @@ def tariff_sentence(study: Study, plan: Plan) -> str:
         f"Of all load moved, by tariff: {shares or 'none'}{rest}. Each lane goes by the cheapest tariff that fits, "
         f"every delivery at one size ({_sizes(study)}) or one truck filled as its row says: part loads, shared trucks "
         "and deliveries declared larger to reach a cheaper break are left out."
+    )
+
+
+def circuity_words(study: Study) -> str:
+    """
+    Return the factors that estimated distances go by.
+
+    Parameters
+    ----------
+    study
+        For its settings and its `circuity` table.
+
+    Returns
+    -------
+    words
+        The one factor, or the range of the table and that of the settings.
+    """
+    default = f"{study.settings.circuity:g}"
+    if not study.circuity:
+        return default
+    factors = sorted({row.circuity for row in study.circuity})
+    shown = f"{factors[0]:g}" if len(factors) == 1 else f"{factors[0]:g} to {factors[-1]:g}"
+    return f"{shown} by country, {default} elsewhere"
+
+
+def sensitivity_sentence(study: Study, sensitivity: RoadSensitivity, cost: float) -> str:
+    """
+    Return what longer and shorter roads would do to the plan's freight.
+
+    Parameters
+    ----------
+    study
+        For its currency.
+    sensitivity
+        Of the plan.
+    cost
+        Of the plan, money a year.
+
+    Returns
+    -------
+    sentence
+        The flows are those of the plan: a plan made anew could be cheaper.
+    """
+    step = f"{CIRCUITY_STEP * 100:g} %"
+
+    def change(amount: float) -> str:
+        shown = money(abs(amount), study.settings.currency, like=cost)
+        return f"{shown} a year {'less' if amount < 0 else 'more'} ({percent(abs(amount) / abs(cost)) if cost else ''})"
+
+    return (
+        f"If roads were {step} longer than estimated, the same flows would cost {change(sensitivity.longer)} in "
+        f"freight; {step} shorter, {change(sensitivity.shorter)}."
     )
 
 

@@ -13,6 +13,7 @@ from bisect import bisect_left
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
+from siting.plan.freight_words import circuity_words
 from siting.plan.plan import SiteVerdict, SupplierVerdict
 from siting.plan.service import BAND_EDGES_KM
 from siting.plan.words import CAUTIONS
@@ -398,6 +399,6 @@ def _distance_notes(where: Located, plan: Plan) -> list[str]:
         notes.append(f"Customers are {average} by road from what serves them, on average by load.")
     if plan.service.estimated_share:
         share = where.formats.share(plan.service.estimated_share)
-        circuity = where.formats.number(where.study.settings.circuity)
+        circuity = circuity_words(where.study)
         notes.append(f"Distances of {share} of the load are estimated: straight line times {circuity}.")
     return notes

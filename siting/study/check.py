@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING
 
 from siting.errors import Fault, StudyError
 from siting.study.check_amounts import check_amounts
+from siting.study.check_circuity import check_circuity
 from siting.study.check_lanes import Known, parse_lanes
 from siting.study.check_links import check_links
 from siting.study.check_rows import parse_table
@@ -93,6 +94,7 @@ def check_raw(raw: RawStudy, lanes: ParsedLanes | None = None) -> Checked:
     check_amounts(draft)
     check_rules(draft)
     check_tariffs(draft)
+    check_circuity(draft)
     if lanes is None:
         known = Known(**draft.names) if draft.is_complete() and draft.is_sound(*KEYS) else None
         lanes = parse_lanes(raw.tables.get("lanes"), known, gathering)

@@ -120,17 +120,30 @@ def _check_overlaps(draft: Draft) -> None:
 
 def _check_countries(draft: Draft) -> None:
     """Warn of countries that no place of the study is in: a slip of the pen leaves a zone without lanes."""
-    there = {
-        country_key(row.country)
-        for table in (draft.sites, draft.suppliers, draft.customers)
-        for row in table.rows
-        if row.country.strip()
-    }
+    there = countries_of(draft)
     for row, column, country in _countries(draft):
         if country_key(country) not in there:
             wrong = "no place of the study has this country, so that no lane fits the row"
             repair = "Write it as in sites, suppliers or customers; codes such as AT and names both do"
             draft.gathering.warn("tariffs", row.row, column, country, wrong, repair)
+
+
+def countries_of(draft: Draft) -> set[str]:
+    """
+    Return the countries that places of a study are in.
+
+    Parameters
+    ----------
+    draft
+        The study while it is checked.
+
+    Returns
+    -------
+    keys
+        As `country_key` gives them.
+    """
+    tables = (draft.sites, draft.suppliers, draft.customers)
+    return {country_key(row.country) for table in tables for row in table.rows if row.country.strip()}
 
 
 def _countries(draft: Draft) -> Iterator[tuple[TariffRow, str, str]]:

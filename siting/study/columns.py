@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 
 from siting.study.settings import ENGINES, Settings, SolveSettings
 from siting.study.tables import (
+    CircuityRow,
     CustomerRow,
     DemandRow,
     GoodRow,
@@ -360,6 +361,26 @@ TARIFFS = TableSpec(
     ),
 )
 
+CIRCUITY = TableSpec(
+    name="circuity",
+    meaning="Road distance over straight-line distance by country, in place of that of the settings",
+    key=(),
+    row_type=CircuityRow,
+    columns=(
+        _name("country", "A country, as a code such as AT or by name"),
+        Column(name="other_country", kind=Kind.TEXT, meaning="Country at the other end; blank = within the country"),
+        Column(
+            name="circuity",
+            kind=Kind.NUMBER,
+            meaning="Road distance over straight-line distance where `lanes` gives none",
+            low=1.0,
+            high=5.0,
+            required=True,
+        ),
+        Column(name="source", kind=Kind.TEXT, meaning="Where the factor comes from"),
+    ),
+)
+
 SIZED_COLUMNS = ("opening_charge", "yearly_charge", "capacity", "least_throughput", "residual_value")
 """Columns of `sites` that stay blank where a site has sizes."""
 
@@ -371,7 +392,8 @@ ONE_OFF_CHARGES: Mapping[str, tuple[str, ...]] = {
 """Columns of money paid once, by table."""
 
 TABLES: Mapping[str, TableSpec] = {
-    spec.name: spec for spec in (SITES, CUSTOMERS, SUPPLIERS, SIZES, GOODS, DEMANDS, OFFERS, LANES, RULES, TARIFFS)
+    spec.name: spec
+    for spec in (SITES, CUSTOMERS, SUPPLIERS, SIZES, GOODS, DEMANDS, OFFERS, LANES, RULES, TARIFFS, CIRCUITY)
 }
 """Every table by name, in the order faults are listed and files are written."""
 

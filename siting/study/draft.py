@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from siting.study.gathering import Gathering
     from siting.study.settings import Settings
     from siting.study.tables import (
+        CircuityRow,
         CustomerRow,
         DemandRow,
         GoodRow,
@@ -88,6 +89,11 @@ class Draft:
     def tariffs(self) -> Parsed[TariffRow]:
         """The table `tariffs`."""
         return self.tables["tariffs"]
+
+    @property
+    def circuity(self) -> Parsed[CircuityRow]:
+        """The table `circuity`."""
+        return self.tables["circuity"]
 
     def has(self, table: str) -> bool:
         """Return whether the study has the table, readable or not."""

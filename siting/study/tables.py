@@ -283,6 +283,20 @@ class TariffRow:
     row: int = 0
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class CircuityRow:
+    """One row of `circuity`: road distance over straight-line distance within a country, or between two."""
+
+    country: str
+    circuity: float
+    other_country: str = ""
+    """"" = within the country."""
+    source: str = ""
+    """Where the factor comes from."""
+    attributes: Mapping[str, str] = field(default_factory=lambda: NO_ATTRIBUTES)
+    row: int = 0
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class LaneTable:
     """
@@ -349,6 +363,8 @@ class Study:
     rules: tuple[RuleRow, ...] = ()
     tariffs: tuple[TariffRow, ...] = ()
     """Empty = the table is absent; freight then goes at the rates of the settings."""
+    circuity: tuple[CircuityRow, ...] = ()
+    """Empty = the table is absent; the factor of the settings then holds everywhere."""
     columns: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
     """Header of each table as given, so that it is written back as it was read."""
     warnings: tuple[Fault, ...] = ()

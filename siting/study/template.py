@@ -32,8 +32,9 @@ from siting.study.columns import (
 )
 from siting.study.demo import demo_folder
 from siting.study.parse import range_words
+from siting.study.published_circuity import FACTORS, SOURCE
 from siting.study.read import read_study
-from siting.study.tables import Leg, TariffBasis, TariffRow, no_lanes
+from siting.study.tables import CircuityRow, Leg, TariffBasis, TariffRow, no_lanes
 from siting.study.write import SHEET_ROWS, rows_to_write, settings_to_write
 
 if TYPE_CHECKING:
@@ -56,6 +57,11 @@ EXAMPLE_TARIFFS = (
     ),
 )
 """Invented, since the demo study goes by rates."""
+
+EXAMPLE_CIRCUITY = tuple(
+    CircuityRow(country=code, circuity=FACTORS[code], source=SOURCE, row=row)
+    for row, code in enumerate(("DE", "HU"), start=2)
+)
 
 SETTINGS_HEADER = ("setting", "value", "unit", "meaning")
 
@@ -164,6 +170,7 @@ def _examples(study: Study) -> Study:
         offers=tuple(row for row in study.offers if row.supplier in EXAMPLE_SUPPLIERS),
         rules=tuple(row for row in study.rules if names.issuperset(row.members)),
         tariffs=EXAMPLE_TARIFFS,
+        circuity=EXAMPLE_CIRCUITY,
         lanes=replace(lanes if shown else no_lanes(), **parts, attributes={}),
     )
 
