@@ -21,11 +21,13 @@ from siting.cells import number_text
 from siting.study.check import Checked, check_raw
 from siting.study.check_settings import settings_from_cells
 from siting.study.columns import SETTINGS, SOLVE_SETTINGS, TABLES
+from siting.study.mapping import apply_mapping, mapping_from
 from siting.study.raw import FIRST_ROW, table_from_rows
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
+    from siting.study.propose import Proposal
     from siting.study.raw import RawStudy, RawTable
 
 MOST_DRAFTS = 64
@@ -38,6 +40,9 @@ SETTINGS_TABLE = "settings"
 """What the pages call the settings beside the tables."""
 
 SETTING, VALUE = "setting", "value"
+
+CONFIRMED = "your confirmation"
+"""What warnings call the names of columns that were confirmed on a page."""
 
 _SETTLED = "It was edited since it was read; see that nothing is missing"
 """Repair of what was wrong with a table when it was read, once somebody has edited it."""
@@ -140,8 +145,11 @@ class Draft:
         header = [given.get(column, column) for column in kept]
         table = table_from_rows(header, text[kept].itertuples(index=False), numbers) if kept else None
         with self._lock:
-            if _same(table, self.raw.tables.get(name)):
+            before = self.raw.tables.get(name)
+            if _same(table, before):
                 return False
+            if table is not None and before is not None:
+                table = replace(table, form=before.form)
             self._put(name, table)
         return True
 
@@ -163,7 +171,24 @@ class Draft:
             at = self.labels(name).index(label)
             header = [*raw.header[:at], *([] if new is None else [new]), *raw.header[at + 1 :]]
             columns = raw.columns if new is not None else (*raw.columns[:at], *raw.columns[at + 1 :])
-            self._put(name, replace(raw, header=tuple(header), columns=columns) if header else None)
+            old, texts = raw.header[at], dict(raw.form.text_cells)
+            if old in texts and raw.header.count(old) == 1:
+                texts[new or ""] = texts.pop(old)
+            form = replace(raw.form, text_cells=texts)
+            self._put(name, replace(raw, header=tuple(header), columns=columns, form=form) if header else None)
+
+    def confirm(self, proposals: Sequence[Proposal]) -> None:
+        """
+        Give columns the names that were proposed for them and confirmed.
+
+        Parameters
+        ----------
+        proposals
+            Those of `siting.study.propose.propose_mapping` that the analyst confirmed, corrected or not.
+        """
+        with self._lock:
+            self.raw = apply_mapping(self.raw, replace(mapping_from(self.raw, proposals), name=CONFIRMED))
+            self.version += 1
 
     def _has(self, name: str) -> bool:
         return name in self.raw.tables

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import threading
+from collections import OrderedDict
 from dataclasses import dataclass
-from functools import cached_property, lru_cache
+from functools import cached_property
 from typing import TYPE_CHECKING
 
-from siting.browse.jobs import find_job
 from siting.plan.contract import answer_from_json
 from siting.plan.words import headline
 from siting.sharing.map import draw_map
@@ -40,6 +41,10 @@ class Kept:
         return draw_map(self.study, plan, headline="").html if plan else ""
 
 
+_kept: OrderedDict[int, Kept] = OrderedDict()
+_guard = threading.Lock()
+
+
 def kept_answer(job: JobView) -> Kept:
     """
     Return the answer of a job that is done.
@@ -47,15 +52,16 @@ def kept_answer(job: JobView) -> Kept:
     Raises
     ------
     LookupError
-        If the job has no answer, or has been forgotten.
+        If the job has no answer.
     """
-    return _derived(job.key, job.number)
-
-
-@lru_cache(maxsize=MOST_KEPT)
-def _derived(key: str, number: int) -> Kept:
-    job = find_job(key)
-    if job is None or job.answer is None or job.number != number:
-        msg = f"job {number} of key {key} has no answer"
+    if job.answer is None:
+        msg = f"job {job.number} has no answer"
         raise LookupError(msg)
-    return Kept(study=job.study, answer=answer_from_json(job.answer))
+    with _guard:
+        kept = _kept.get(job.number)
+        if kept is None:
+            kept = _kept[job.number] = Kept(study=job.study, answer=answer_from_json(job.answer))
+        _kept.move_to_end(job.number)
+        while len(_kept) > MOST_KEPT:
+            _kept.popitem(last=False)
+    return kept
