@@ -4,9 +4,12 @@ from __future__ import annotations
 
 import copy
 import html
+import io
 from collections import Counter
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
+import pandas as pd
 import streamlit as st
 
 from siting.browse.drafts import (
@@ -32,17 +35,19 @@ from siting.browse.shell import (
     use_draft,
 )
 from siting.browse.upload import UPLOAD_TYPES, read_upload
+from siting.browse.work_view import work_list_html
 from siting.errors import StudyError
 from siting.study.columns import SETTINGS, SOLVE_SETTINGS, TABLES, Column
 from siting.study.demo import demo_folder
+from siting.study.propose import propose_mapping
 from siting.study.raw import RawStudy
 from siting.study.read import read_raw
+from siting.study.template import write_template
 from siting.study.words import counted, faults_sentence, study_sentence
+from siting.study.work_list import work_list, work_sentence
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
-
-    import pandas as pd
 
     from siting.errors import Fault
     from siting.study.check import Checked
@@ -52,6 +57,8 @@ MOST_LISTED = 200
 """Faults and warnings of one table that are listed; what comes after them is counted."""
 NEW_SETTINGS = {"currency": "EUR", "unit": "t"}
 """What a new study starts with, in sight on the page, to be changed."""
+LEAST_TICKED = 0.75
+"""Confidence from which a proposed name of a column is ticked at first."""
 TAKE_OUT = "take it out, with its cells"
 
 
@@ -69,6 +76,8 @@ def show() -> None:
             "behind many others). The study was opened afresh.",
             kind="stale",
         )
+    _proposals(draft)
+    _work(draft.checked)
     _tables(draft, draft.checked)
     section("Where everything is", "What was given, before anything is decided.")
     show_given_map(draft)
@@ -83,10 +92,60 @@ def _opening(draft: Draft) -> None:
             "Whatever is still missing or wrong is listed beside the table.",
         )
     elif checked.study is not None:
-        headline(study_sentence(checked.study), second=f"{draft.source}. {faults_sentence((), checked.warnings)}.")
+        headline(study_sentence(checked.study), second=f"{draft.source}. {work_sentence(checked)}.")
     else:
-        what = faults_sentence(checked.faults, checked.warnings)
+        what = work_sentence(checked)
         headline(f"To mend before a plan can be made: {what}", second=f"{draft.source}. Everything typed is kept.")
+
+
+def _proposals(draft: Draft) -> None:
+    """Propose what columns of other names are; nothing is renamed before it is confirmed."""
+    proposals = propose_mapping(draft.raw)
+    if not proposals:
+        return
+    with st.expander(f"{counted(len(proposals), 'column')} may be ours under other names", expanded=True):
+        st.caption("Correct what is wrong, untick what should stay as it is, then confirm.")
+        table = pd.DataFrame(
+            {
+                "use": [each.confidence >= LEAST_TICKED for each in proposals],
+                "table": [each.table for each in proposals],
+                "as typed": [each.typed for each in proposals],
+                "our column": [each.column for each in proposals],
+                "why": [f"{each.confidence:.0%}: {'; '.join(each.reasons)}" for each in proposals],
+            }
+        )
+        ours = sorted({column for each in proposals for column in TABLES[each.table].names})
+        edited = st.data_editor(
+            table,
+            key=f"proposals-{draft.token}-{draft.version}",
+            hide_index=True,
+            disabled=["table", "as typed", "why"],
+            column_config={
+                "our column": st.column_config.SelectboxColumn(options=ours, required=True),
+                "why": st.column_config.TextColumn(width="large"),
+            },
+        )
+        if st.button("Use these names", type="primary"):
+            rows = zip(proposals, edited["use"], edited["our column"], strict=True)
+            draft.confirm([replace(each, column=str(column)) for each, use, column in rows if use])
+            st.rerun()
+
+
+def _work(checked: Checked) -> None:
+    """List what is left to do in all tables; each table's button leads to it."""
+    groups = work_list(checked)
+    if not groups:
+        return
+    with st.expander("All that is left to do, table by table"):
+        for group in groups:
+            place = group.table if group.table in TABLES else SETTINGS_TABLE
+            title, go = st.columns([5, 1])
+            title.html(work_list_html([group], opened="" if group.faults else SETTINGS_TABLE))
+            go.button(f"Go to {place}", key=f"go-{group.table}", on_click=_choose, args=(place,), width="stretch")
+
+
+def _choose(table: str) -> None:
+    st.session_state["chosen_table"] = table
 
 
 def _tables(draft: Draft, checked: Checked) -> None:
@@ -279,6 +338,13 @@ def _studies(draft: Draft) -> None:
         on_click="ignore",
         width="stretch",
     )
+    st.download_button(
+        "Template to fill in (xlsx)",
+        data=_template,
+        file_name="template.xlsx",
+        on_click="ignore",
+        width="stretch",
+    )
     with st.popover("Open another study", width="stretch", key=f"open-{draft.token}"):
         st.caption("It takes the place of the tables here; you can go back to them.")
         files = st.file_uploader(
@@ -297,6 +363,12 @@ def _studies(draft: Draft) -> None:
         if st.button("Back to the study before", disabled=before is None, width="stretch") and before is not None:
             use_draft(before)
             st.rerun()
+
+
+def _template() -> bytes:
+    held = io.BytesIO()
+    write_template(held)
+    return held.getvalue()
 
 
 def _open_files(draft: Draft, files: Sequence[tuple[str, bytes]]) -> None:
