@@ -19,8 +19,14 @@ if TYPE_CHECKING:
     from siting.plan.proof import Outcome, Proof
     from siting.questions.closing import closing
     from siting.questions.closing_result import ClosingTest
+    from siting.questions.compare import Named, compare, read_named
+    from siting.questions.compare_result import Comparison
+    from siting.questions.counts import counts
+    from siting.questions.counts_result import Counts
     from siting.questions.headroom import headroom
     from siting.questions.headroom_result import Headroom
+    from siting.questions.runners_up import runners_up
+    from siting.questions.runners_up_result import RunnersUp
     from siting.questions.store import MemoryStore, Store
     from siting.sharing.map import MapPage, draw_map, write_map
     from siting.solving.solve import solve
@@ -29,6 +35,8 @@ if TYPE_CHECKING:
     from siting.study.read import read_study
     from siting.study.settings import Settings, SolveSettings
     from siting.study.tables import Study
+    from siting.study.variant import Variant, read_variant, write_variant
+    from siting.study.varying import Varied, vary
     from siting.study.write import write_study, write_workbook
 
     __version__: str
@@ -37,18 +45,22 @@ __all__ = [
     "Answer",
     "AuditError",
     "ClosingTest",
+    "Comparison",
+    "Counts",
     "EngineError",
     "Fault",
     "Headroom",
     "Listener",
     "MapPage",
     "MemoryStore",
+    "Named",
     "Network",
     "Outcome",
     "Plan",
     "PlanFileError",
     "Progress",
     "Proof",
+    "RunnersUp",
     "Settings",
     "SettingsError",
     "Silent",
@@ -59,20 +71,29 @@ __all__ = [
     "Study",
     "StudyError",
     "Today",
+    "Variant",
+    "Varied",
     "__version__",
     "audit",
     "build_network",
     "closing",
+    "compare",
+    "counts",
     "demo_folder",
     "draw_map",
     "fingerprint",
     "headroom",
+    "read_named",
     "read_plan_folder",
     "read_study",
+    "read_variant",
+    "runners_up",
     "solve",
+    "vary",
     "write_map",
     "write_plan_folder",
     "write_study",
+    "write_variant",
     "write_workbook",
 ]
 
@@ -95,8 +116,14 @@ _HOMES = {
     "siting.sharing.map": ("MapPage", "draw_map", "write_map"),
     "siting.questions.closing": ("closing",),
     "siting.questions.closing_result": ("ClosingTest",),
+    "siting.questions.compare": ("Named", "compare", "read_named"),
+    "siting.questions.compare_result": ("Comparison",),
+    "siting.questions.counts": ("counts",),
+    "siting.questions.counts_result": ("Counts",),
     "siting.questions.headroom": ("headroom",),
     "siting.questions.headroom_result": ("Headroom",),
+    "siting.questions.runners_up": ("runners_up",),
+    "siting.questions.runners_up_result": ("RunnersUp",),
     "siting.questions.store": ("MemoryStore", "Store"),
     "siting.solving.solve": ("solve",),
     "siting.study.demo": ("demo_folder",),
@@ -104,6 +131,8 @@ _HOMES = {
     "siting.study.read": ("read_study",),
     "siting.study.settings": ("Settings", "SolveSettings"),
     "siting.study.tables": ("Study",),
+    "siting.study.variant": ("Variant", "read_variant", "write_variant"),
+    "siting.study.varying": ("Varied", "vary"),
     "siting.study.write": ("write_study", "write_workbook"),
 }
 

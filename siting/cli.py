@@ -7,7 +7,19 @@ import os
 import sys
 from typing import TYPE_CHECKING
 
-from siting.commands import audit, browse, check, circuity, closing, headroom, plan, template
+from siting.commands import (
+    audit,
+    browse,
+    check,
+    circuity,
+    closing,
+    compare,
+    counts,
+    headroom,
+    plan,
+    runners_up,
+    template,
+)
 from siting.commands import map as map_command
 from siting.commands.command import BAD_INPUT, FOUND, NO_PLAN_YET
 from siting.errors import SitingError
@@ -15,7 +27,7 @@ from siting.errors import SitingError
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-COMMANDS = (check, plan, closing, headroom, audit, map_command, template, circuity, browse)
+COMMANDS = (check, plan, closing, headroom, runners_up, counts, compare, audit, map_command, template, circuity, browse)
 """In the order of the help."""
 
 EXIT_CODES = (

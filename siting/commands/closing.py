@@ -4,8 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from siting.commands.asking import add_asking, add_names, exit_code, run_question, study_and_answer
-from siting.commands.command import say, say_json
+from siting.commands.asking import add_asking, add_names, exit_code, run_question, say_answer, study_and_answer
 from siting.commands.solving import solve_settings
 
 if TYPE_CHECKING:
@@ -41,7 +40,8 @@ def run(arguments: argparse.Namespace) -> int:
     from siting.questions.closing import closing
     from siting.questions.closing_result import closing_to_json
 
-    study, answer = study_and_answer(arguments.study)
+    made, answer = study_and_answer(arguments)
+    study = made.study
     settings = solve_settings(arguments, study.settings.solve)
     test = run_question(
         arguments,
@@ -55,8 +55,6 @@ def run(arguments: argparse.Namespace) -> int:
             stop=stop,
         ),
     )
-    if arguments.json:
-        say_json(closing_to_json(test))
-    else:
-        say(closing_text(test, in_full=bool(arguments.site or arguments.supplier)))
+    in_full = bool(arguments.site or arguments.supplier)
+    say_answer(arguments, made, lambda: closing_text(test, in_full=in_full), lambda: closing_to_json(test))
     return exit_code(test.outcome, planned=test.cost is not None)

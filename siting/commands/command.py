@@ -7,7 +7,10 @@ from typing import TYPE_CHECKING, Protocol, TypeAlias
 
 if TYPE_CHECKING:
     import argparse
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
+
+    from siting.study.tables import Study
+    from siting.study.varying import Varied
 
     Commands: TypeAlias = argparse._SubParsersAction[argparse.ArgumentParser]  # noqa: SLF001  (no public name exists)
 
@@ -40,6 +43,52 @@ def add_study(parser: argparse.ArgumentParser) -> None:
 def add_json(parser: argparse.ArgumentParser) -> None:
     """Add the option --json."""
     parser.add_argument("--json", action="store_true", help="print one JSON object and nothing else")
+
+
+def add_variants(parser: argparse.ArgumentParser) -> None:
+    """Add the option --variant, to be given as often as wanted."""
+    parser.add_argument(
+        "--variant",
+        action="append",
+        default=[],
+        metavar="FILE",
+        help="apply the named changes of a TOML file first; may be repeated, a later one on top of an earlier one",
+    )
+
+
+def varied(study: Study, files: Sequence[str]) -> Varied:
+    """
+    Return a study with the variants of files applied.
+
+    Raises
+    ------
+    StudyError
+        If a file is no variant, or a variant does not fit the study.
+    """
+    from siting.study.variant import read_variant
+    from siting.study.varying import vary
+
+    return vary(study, [read_variant(file) for file in files])
+
+
+def changes_text(made: Varied) -> str:
+    """Return what variants changed, under their names; empty where there is none."""
+    from siting.commands.layout import bullets, paragraph
+
+    if not made.variants:
+        return ""
+    names = " + ".join(
+        f"{variant.name} ({variant.note})" if variant.note else variant.name for variant in made.variants
+    )
+    return "\n".join([paragraph(f"Variant: {names}. It changes:"), bullets(made.lines or ["nothing"])])
+
+
+def changes_to_json(made: Varied) -> dict[str, object]:
+    """Return the key that --json gains where there are variants; none where there are not."""
+    if not made.variants:
+        return {}
+    names = [{"name": variant.name, "note": variant.note} for variant in made.variants]
+    return {"variants": names, "changes": list(made.lines)}
 
 
 def say(text: str) -> None:

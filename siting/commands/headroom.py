@@ -4,8 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from siting.commands.asking import add_asking, add_names, exit_code, run_question, study_and_answer
-from siting.commands.command import say, say_json
+from siting.commands.asking import add_asking, add_names, exit_code, run_question, say_answer, study_and_answer
 from siting.commands.solving import solve_settings
 
 if TYPE_CHECKING:
@@ -43,7 +42,8 @@ def run(arguments: argparse.Namespace) -> int:
     from siting.questions.headroom import headroom
     from siting.questions.headroom_result import headroom_to_json
 
-    study, answer = study_and_answer(arguments.study)
+    made, answer = study_and_answer(arguments)
+    study = made.study
     settings = solve_settings(arguments, study.settings.solve)
     found = run_question(
         arguments,
@@ -58,8 +58,5 @@ def run(arguments: argparse.Namespace) -> int:
             stop=stop,
         ),
     )
-    if arguments.json:
-        say_json(headroom_to_json(found))
-    else:
-        say(headroom_text(found))
+    say_answer(arguments, made, lambda: headroom_text(found), lambda: headroom_to_json(found))
     return exit_code(found.outcome, planned=found.cost is not None)

@@ -5,7 +5,19 @@ from __future__ import annotations
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from siting.commands.command import FOUND, IMPOSSIBLE, NO_PLAN_YET, add_json, add_study, say, say_json
+from siting.commands.command import (
+    FOUND,
+    IMPOSSIBLE,
+    NO_PLAN_YET,
+    add_json,
+    add_study,
+    add_variants,
+    changes_text,
+    changes_to_json,
+    say,
+    say_json,
+    varied,
+)
 from siting.commands.solving import add_solving, solve_settings
 
 if TYPE_CHECKING:
@@ -15,6 +27,7 @@ if TYPE_CHECKING:
     from siting.plan.audit import AuditReport
     from siting.plan.plan import Answer
     from siting.study.tables import Study
+    from siting.study.varying import Varied
 
 
 def add(commands: Commands) -> None:
@@ -25,6 +38,7 @@ def add(commands: Commands) -> None:
         description="Solve a study, audit the plan and print it. Ctrl-C stops and keeps the best plan so far.",
     )
     add_study(parser)
+    add_variants(parser)
     parser.add_argument("--out", metavar="DIR", type=Path, help="write the plan folder: plan, study, result tables")
     add_solving(parser)
     parser.add_argument("--mps", metavar="FILE", type=Path, help="also write the exact model as free MPS")
@@ -51,7 +65,8 @@ def run(arguments: argparse.Namespace) -> int:
     from siting.study.demo import study_path
     from siting.study.read import read_study
 
-    study = read_study(study_path(arguments.study))
+    made = varied(read_study(study_path(arguments.study)), arguments.variant)
+    study = made.study
     if arguments.out:
         check_place(arguments.out)
     _write_model(arguments, study)
@@ -61,8 +76,8 @@ def run(arguments: argparse.Namespace) -> int:
     answer = run_stoppable(lambda: solve(study, settings, listener=listener, stop=stop), stop)
     report = audit(study, answer.plan) if answer.plan else None
     if arguments.out:
-        write_plan_folder(arguments.out, study, answer, report, more=_map(study, answer))
-    _show(arguments, study, answer, report)
+        write_plan_folder(arguments.out, study, answer, report, more=_more(made, answer))
+    _show(arguments, made, answer, report)
     if answer.plan:
         return FOUND
     return IMPOSSIBLE if answer.proof.outcome == "impossible" else NO_PLAN_YET
@@ -77,25 +92,29 @@ def _write_model(arguments: argparse.Namespace, study: Study) -> None:
     write_models(build_network(study), mps=arguments.mps, lp=arguments.lp)
 
 
-def _map(study: Study, answer: Answer) -> dict[str, str]:
-    """Return the map of the plan by its file name; nothing without a plan."""
-    from siting.plan.folder import MAP_FILE
+def _more(made: Varied, answer: Answer) -> dict[str, str]:
+    """Return the map of the plan, where there is one, and the variants, by their file names."""
+    from siting.plan.folder import MAP_FILE, VARIANTS_FILE
     from siting.plan.words import headline
     from siting.sharing.map import draw_map
+    from siting.study.variant import variants_text
 
-    if answer.plan is None:
-        return {}
-    return {MAP_FILE: draw_map(study, answer.plan, headline=headline(answer)).html}
+    more = {VARIANTS_FILE: variants_text(made.variants)} if made.variants else {}
+    if answer.plan is not None:
+        more[MAP_FILE] = draw_map(made.study, answer.plan, headline=headline(answer)).html
+    return more
 
 
-def _show(arguments: argparse.Namespace, study: Study, answer: Answer, report: AuditReport | None) -> None:
+def _show(arguments: argparse.Namespace, made: Varied, answer: Answer, report: AuditReport | None) -> None:
     from siting.commands.plan_text import answer_text
     from siting.plan.contract import summary_to_json
     from siting.study.fingerprint import fingerprint
 
     if arguments.json:
-        say_json(summary_to_json(answer, report, fingerprint=fingerprint(study)))
+        say_json(summary_to_json(answer, report, fingerprint=fingerprint(made.study)) | changes_to_json(made))
         return
-    say(answer_text(study, answer))
+    say(answer_text(made.study, answer))
+    if made.variants:
+        say(f"\n{changes_text(made)}")
     if arguments.out:
         say(f"\nWritten to {arguments.out}; `siting audit {arguments.out}` checks it again.")

@@ -31,8 +31,10 @@ if TYPE_CHECKING:
 PLAN_FILE = "plan.json"
 STUDY_FOLDER = "study"
 MAP_FILE = "map.html"
+VARIANTS_FILE = "variants.toml"
+"""The variants applied to the study before it was planned, where there were any; `study/` has them applied already."""
 
-OWN_NAMES = frozenset({PLAN_FILE, STUDY_FOLDER, MAP_FILE, *(f"{name}.csv" for name in TABLE_NAMES)})
+OWN_NAMES = frozenset({PLAN_FILE, STUDY_FOLDER, MAP_FILE, VARIANTS_FILE, *(f"{name}.csv" for name in TABLE_NAMES)})
 """What a PLAN folder may hold when it is written again; anything else is somebody's and stays."""
 
 NOTHING_MORE: Mapping[str, str] = {}
