@@ -58,6 +58,21 @@ def test_check_says_what_a_sound_study_holds(tiny: Path, capsys: pytest.CaptureF
     assert out.startswith("No fault. Tiny: 2 sites (1 running), 2 suppliers (1 signed), 4 customers, one good.")
 
 
+def test_check_counts_one_of_a_kind(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """The singular."""
+    lanes = "origin,destination,unit_cost\nLinz,Vienna,3\n"
+    tables = {
+        "sites": "site,standing,yearly_charge,capacity\nLinz,running,9,unlimited\n",
+        "customers": "customer,demand\nVienna,7\n",
+        "lanes": lanes,
+        "rules": "rule,members,number\nat_least,Linz,1\n",
+    }
+    write_folder(tmp_path / "one", tables)
+    assert cli.main(["check", str(tmp_path / "one")]) == 0
+    out = capsys.readouterr().out
+    assert out.startswith("No fault. Tiny: 1 site (1 running), 1 customer, one good, 1 row of lanes, 1 rule.\n")
+
+
 def test_check_as_json_keeps_to_its_schema(tiny: Path, capsys: pytest.CaptureFixture[str]) -> None:
     """With and without faults the object is as the shipped schema says, and nothing else is printed."""
     assert cli.main(["check", "--json", str(tiny)]) == 0
@@ -224,6 +239,13 @@ def test_an_impossible_study_is_explained(tmp_path: Path, capsys: pytest.Capture
     assert out.startswith("Impossible")
     assert "10 t" in " ".join(out.split())
     assert err == ""
+    kept = tmp_path / "kept"
+    assert cli.main(["plan", str(tmp_path / "short"), "--quiet", "--out", str(kept)]) == 3
+    out = capsys.readouterr().out
+    assert out.endswith(f"Written to {kept}, the reasons in plan.json.\n")
+    assert "Today: " not in out
+    assert cli.main(["audit", str(kept)]) == 2
+    assert "holds no plan to audit (outcome: impossible)" in capsys.readouterr().err
     assert cli.main(["plan", str(tmp_path / "short"), "--json"]) == 3
     held = json.loads(capsys.readouterr().out)
     jsonschema.validate(held, schema())

@@ -106,12 +106,16 @@ def _contents(study: Study) -> str:
     running = sum(row.standing == "running" for row in study.sites)
     signed = sum(row.standing == "signed" for row in study.suppliers)
     parts = [
-        f"{len(study.sites)} sites ({running} running)" if study.sites else "",
-        f"{len(study.suppliers)} suppliers ({signed} signed)" if study.suppliers else "",
-        f"{len(study.customers)} customers",
-        f"{len(study.all_goods)} goods" if len(study.all_goods) > 1 else "one good",
-        f"{len(study.lanes)} rows of lanes" if len(study.lanes) else "",
-        f"{len(study.rules)} rules" if study.rules else "",
+        f"{_many(len(study.sites), 'site')} ({running} running)" if study.sites else "",
+        f"{_many(len(study.suppliers), 'supplier')} ({signed} signed)" if study.suppliers else "",
+        _many(len(study.customers), "customer"),
+        "one good" if len(study.all_goods) == 1 else _many(len(study.all_goods), "good"),
+        f"{_many(len(study.lanes), 'row')} of lanes" if len(study.lanes) else "",
+        _many(len(study.rules), "rule") if study.rules else "",
     ]
     title = f"{study.settings.title}: " if study.settings.title else ""
     return f"{title}{', '.join(part for part in parts if part)}."
+
+
+def _many(count: int, noun: str) -> str:
+    return f"{count:,} {noun}" if count == 1 else f"{count:,} {noun}s"

@@ -117,4 +117,5 @@ def _show(arguments: argparse.Namespace, made: Varied, answer: Answer, report: A
     if made.variants:
         say(f"\n{changes_text(made)}")
     if arguments.out:
-        say(f"\nWritten to {arguments.out}; `siting audit {arguments.out}` checks it again.")
+        again = f"; `siting audit {arguments.out}` checks it again" if answer.plan else ", the reasons in plan.json"
+        say(f"\nWritten to {arguments.out}{again}.")

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import math
 from typing import TYPE_CHECKING
 
 from siting.commands.layout import bullets, paragraph, table
 from siting.plan.freight_words import tariff_sentence
 from siting.plan.plan import CostLine
-from siting.plan.words import CAUTIONS, delivery_sentence, headline, payback, percent
+from siting.plan.words import CAUTIONS, MILLION, delivery_sentence, headline, money_down, payback, percent
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
@@ -20,6 +21,8 @@ ABSENT = "-"
 """What a cell shows where there is nothing to pay, to move or to fill."""
 HALF = 0.5
 """Smaller than this rounds to 0."""
+SMALL = 1000.0
+"""Money below this is shown with decimals."""
 
 
 def answer_text(study: Study, answer: Answer) -> str:
@@ -42,7 +45,7 @@ def answer_text(study: Study, answer: Answer) -> str:
     if answer.plan is not None:
         parts += _plan_parts(study, answer.plan)
     elif answer.today is not None and answer.today.reason:
-        parts.append(paragraph(f"Today: {answer.today.reason}"))
+        parts.append(paragraph(answer.today.reason))
     return "\n\n".join(parts)
 
 
@@ -103,7 +106,10 @@ def _captioned(what: str, plan: Plan, lines: str, notes: list[str]) -> str:
 
 def _use(line: SiteLine | SupplierLine, load: float) -> tuple[str, str]:
     """Return what moves through, and how full that makes it."""
-    return _number(load), f"{100 * line.utilisation:.0f} %" if load and line.utilisation is not None else ABSENT
+    if not load or line.utilisation is None:
+        return _number(load), ABSENT
+    share = 100 * line.utilisation
+    return _number(load), f"{share:.0f} %" if round(share) else "<1 %"
 
 
 def _charges(line: SiteLine | SupplierLine) -> tuple[str, str]:
@@ -117,15 +123,24 @@ def _costs(plan: Plan) -> str:
     was = {line: before.cost_lines[line] if before else 0.0 for line in CostLine}
     amounts = [(str(line), plan.cost_lines[line], was[line]) for line in CostLine if plan.cost_lines[line] or was[line]]
     amounts.append(("cost", plan.cost, sum(was.values())))
+    digits = _digits([amount for _, now, then in amounts for amount in (now, then)])
     if before is None:
-        rows = [(name, _number(now)) for name, now, _ in amounts]
+        rows = [(name, _number(now, digits)) for name, now, _ in amounts]
         return table((f"{plan.currency} a year", "plan"), rows)
-    compared = [(name, _number(now), _number(then), _signed(now - then)) for name, now, then in amounts]
+    compared = [
+        (name, _number(now, digits), _number(then, digits), _signed(now - then, digits)) for name, now, then in amounts
+    ]
     return table((f"{plan.currency} a year", "plan", "today", "difference"), compared)
 
 
-def _signed(difference: float) -> str:
-    return f"{difference:+,.0f}" if abs(difference) >= HALF else "same"
+def _digits(amounts: list[float]) -> int:
+    """Return how many decimals a column of money needs: two for the small money of a textbook, as in the headline."""
+    is_small = all(abs(amount) < SMALL for amount in amounts)
+    return 2 if is_small and any(round(amount, 2) != round(amount) for amount in amounts) else 0
+
+
+def _signed(difference: float, digits: int) -> str:
+    return f"{difference:+,.{digits}f}" if abs(difference) >= HALF * 10**-digits else "same"
 
 
 def _said(study: Study, plan: Plan) -> list[str]:
@@ -136,7 +151,7 @@ def _said(study: Study, plan: Plan) -> list[str]:
     else:
         said.append(f"Emissions: {_number(plan.tonnes_co2e)} t CO2e a year.")
     if plan.today is not None and plan.today.reason:
-        said.append(f"Today: {plan.today.reason}")
+        said.append(plan.today.reason)
     return [sentence for sentence in said if sentence]
 
 
@@ -152,13 +167,19 @@ def _distance(study: Study, service: Service) -> Iterator[str]:
 
 def _proof(proof: Proof, currency: str) -> str:
     """Return what ran, for how long, and what it proved."""
-    bound = f" No plan can cost less than {proof.bound:,.0f} {currency} a year." if proof.bound is not None else ""
+    bound = f" No plan can cost less than {_floor(proof.bound, currency)} a year." if proof.bound is not None else ""
+    bound = " No plan can cost less." if proof.gap == 0 else bound
     why = f" ({proof.reason.rstrip('.')})" if proof.reason else ""
     return paragraph(f"Proof: {proof.outcome}, by the engine {proof.engine}{why} in {proof.seconds:,.1f} s.{bound}")
 
 
-def _number(value: float) -> str:
-    """Return a whole number with thousands apart, never 0 by rounding; 0 reads as nothing to pay or move."""
+def _floor(bound: float, currency: str) -> str:
+    """Return a bound in full, rounded down so that it stays one."""
+    return f"{math.floor(bound):,} {currency}" if abs(bound) >= MILLION else money_down(bound, currency)
+
+
+def _number(value: float, digits: int = 0) -> str:
+    """Return a number with thousands apart, never 0 by rounding; 0 reads as nothing to pay or move."""
     if value == 0:
         return ABSENT
-    return f"{value:,.0f}" if abs(value) >= HALF else f"{value:.2g}"
+    return f"{value:,.{digits}f}" if abs(value) >= HALF * 10**-digits else f"{value:.2g}"

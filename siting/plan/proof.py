@@ -42,7 +42,7 @@ class Proof:
     engine: str
     """Name of the engine that ran."""
     reason: str = ""
-    """Why that engine, where `auto` picked it."""
+    """Why that engine, where `auto` picked it, and why it stopped before its end, where it did."""
     site_count_bounds: Mapping[int, float] = field(default_factory=dict)
     """Bound for each exact number of open sites, where the engine keeps them; empty otherwise."""
 

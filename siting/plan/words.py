@@ -40,6 +40,11 @@ MILLION = 1e6
 SMALLEST_PERCENT = Decimal("0.0001")
 """Gaps below this are stated as it: still true, and readable."""
 
+HALF_CENT = 0.005
+"""Money below this would show as 0."""
+SAME = 1e-9
+"""Relative difference below which two costs are the same."""
+
 ONE_OFF_LINES = (CostLine.OPENING, CostLine.CLOSING, CostLine.SIGNING, CostLine.DROPPING)
 """The annualised lines, which a running saving leaves out."""
 
@@ -66,6 +71,8 @@ def money(amount: float, currency: str, *, like: float | None = None) -> str:
     in_millions = size >= MILLION or (like is not None and abs(like) >= MILLION and size >= MILLION / 100)
     if in_millions:
         return f"{amount / MILLION:,.2f} M {currency}".rstrip()
+    if 0 < size < HALF_CENT:
+        return f"{'less than 0.01' if amount > 0 else 'more than -0.01'} {currency}".rstrip()
     decimals = 2 if size < 1000 and round(amount, 2) != round(amount) else 0  # noqa: PLR2004  # small textbook money
     return f"{amount:,.{decimals}f} {currency}".rstrip()
 
@@ -135,8 +142,12 @@ def headline(answer: Answer, *, currency: str = "") -> str:
     if plan is None or proof.cost is None:
         if proof.outcome is Outcome.IMPOSSIBLE:
             return _impossible(answer)
-        floor = f"; no plan can cost less than {money(proof.bound, currency)} a year" if proof.bound is not None else ""
-        return f"No plan yet: the search was stopped after {proof.seconds:,.0f} s before it found one{floor}."
+        floor = (
+            f"; no plan can cost less than {money_down(proof.bound, currency)} a year"
+            if proof.bound is not None
+            else ""
+        )
+        return f"No plan yet: the search was stopped after {seconds(proof.seconds)} before it found one{floor}."
     does = ", ".join(part for part in (_sites(plan), _suppliers(plan)) if part)
     against = against_today(plan)
     costs = f"{money(proof.cost, plan.currency)} a year" + (f", {against}" if against else "")
@@ -204,7 +215,7 @@ def against_today(plan: Plan) -> str:
     if plan.saving is None or plan.today.plan is None:
         return "no saving stated since today cannot serve everything"
     before = plan.today.plan
-    if abs(plan.saving) <= 0.005 or abs(plan.saving) <= 1e-9 * abs(before.cost):  # noqa: PLR2004  # half a cent
+    if _is_nothing(plan.saving, before.cost):
         return "the same as today"
     text = (
         f"{money(abs(plan.saving), plan.currency, like=plan.cost)} {'less' if plan.saving > 0 else 'more'} than today"
@@ -269,6 +280,50 @@ def money_up(amount: float, currency: str) -> str:
     return f"{math.ceil(amount * 100) / 100:,.2f} {currency}".rstrip()
 
 
+def money_down(amount: float, currency: str) -> str:
+    """
+    Return money rounded down, so that "no plan can cost less" stays true.
+
+    Parameters
+    ----------
+    amount
+        Money.
+    currency
+        ISO 4217 code.
+
+    Returns
+    -------
+    text
+        Whole money from 1,000 up or where it is whole, else in hundredths; above a million in hundredths of a million.
+    """
+    size = abs(amount)
+    step = MILLION / 100 if size >= MILLION else 1.0 if size >= 1000 else 0.01  # noqa: PLR2004  # as `money` shows it
+    down = math.floor(amount / step + SAME) * step
+    return money(down, currency)
+
+
+def seconds(length: float) -> str:
+    """
+    Return a length of time, with a decimal below ten seconds.
+
+    Parameters
+    ----------
+    length
+        Seconds.
+
+    Returns
+    -------
+    text
+        Such as `0.3 s` or `120 s`.
+    """
+    return f"{length:.1f} s" if length < 10 else f"{length:,.0f} s"  # noqa: PLR2004  # tenths no longer matter
+
+
+def _is_nothing(difference: float, cost: float) -> bool:
+    """Return whether a difference of money is rounding alone."""
+    return abs(difference) <= HALF_CENT or abs(difference) <= SAME * abs(cost)
+
+
 def payback(plan: Plan) -> str:
     """
     Return what the plan costs once, what it saves a year in running, and how soon that pays back.
@@ -293,6 +348,9 @@ def payback(plan: Plan) -> str:
     if plan.saving is None:
         return f"{once}."
     saved = plan.saving + sum(plan.cost_lines[line] for line in ONE_OFF_LINES)
+    if _is_nothing(saved, plan.cost):
+        never = ": it never pays back" if plan.one_off > 0 else ""
+        return f"{once}, running cost the same as today{never}."
     if saved <= 0:
         never = ": it never pays back" if plan.one_off > 0 else ""
         return f"{once}, running cost {shown(saved)} a year higher{never}."

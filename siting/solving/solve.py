@@ -94,7 +94,7 @@ def solve(
     if result.impossible:
         answer = _impossible(study, network, run, today)
     elif result.decisions is None:
-        answer = Answer(proof=run.proof(Outcome.NO_PLAN_YET, result.bound), plan=None, today=today)
+        answer = Answer(proof=run.proof(Outcome.NO_PLAN_YET, result.bound, note=result.note), plan=None, today=today)
     else:
         plan = _plan(study, network, result, result.decisions, run, today)
         answer = Answer(proof=plan.proof, plan=plan, today=today)
@@ -130,7 +130,8 @@ def pick_engine(network: Network, settings: SolveSettings) -> tuple[str, str]:
         msg = f"there is no engine {settings.engine!r}; choose one of auto, {', '.join(sorted(REGISTRY))}"
         raise SettingsError(msg)
     lanes = len(network.inbound) + len(network.outbound) + len(network.direct)
-    return "direct", f"auto: the whole model, {lanes:,} lanes, goes to one solver"
+    size = "1 lane" if lanes == 1 else f"{lanes:,} lanes"
+    return "direct", f"auto: the whole model, {size}, goes to one solver"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -144,7 +145,11 @@ class _Run:
     """`time.monotonic()` at the start."""
     stop: Stop
 
-    def proof(self, outcome: Outcome, bound: float | None) -> Proof:
+    def why(self, note: str) -> str:
+        """Return why this engine ran and why it stopped before its end, where it has something to say."""
+        return "; ".join(part for part in (self.reason, note) if part)
+
+    def proof(self, outcome: Outcome, bound: float | None, *, note: str = "") -> Proof:
         """Return the proof of an answer without a plan."""
         return Proof(
             outcome=outcome,
@@ -153,7 +158,7 @@ class _Run:
             gap_asked=self.settings.gap,
             seconds=time.monotonic() - self.began,
             engine=self.engine,
-            reason=self.reason,
+            reason=self.why(note),
         )
 
 
@@ -179,7 +184,7 @@ def _plan(  # noqa: PLR0913, PLR0917 - what a plan is drawn up from
         gap_asked=run.settings.gap,
         seconds=time.monotonic() - run.began,
         engine=run.engine,
-        reason=run.reason,
+        reason=run.why(result.note),
         site_count_bounds=result.site_count_bounds,
         today=today,
     )

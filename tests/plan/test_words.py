@@ -15,10 +15,12 @@ from siting.plan.words import (
     delivery_sentence,
     headline,
     money,
+    money_down,
     money_up,
     payback,
     percent,
     percent_up,
+    seconds,
     sureness,
 )
 from tests.building import lane_table
@@ -192,6 +194,10 @@ def test_shares_never_round_to_nothing(share: float, text: str) -> None:
         (999_999.0, "999,999 EUR"),
         (1_000_000.0, "1.00 M EUR"),
         (-1_234_567.0, "-1.23 M EUR"),
+        (0.0, "0 EUR"),
+        (0.005, "0.01 EUR"),
+        (0.00042, "less than 0.01 EUR"),
+        (-0.00042, "more than -0.01 EUR"),
         (1_234_567_890.0, "1,234.57 M EUR"),
     ],
 )
@@ -217,15 +223,41 @@ def test_at_most_is_rounded_up(amount: float, text: str) -> None:
     assert money_up(amount, "EUR") == text
 
 
+@pytest.mark.parametrize(
+    ("amount", "text"),
+    [
+        (0.0, "0 EUR"),
+        (0.009, "0 EUR"),
+        (198.509, "198.50 EUR"),
+        (999.999, "999.99 EUR"),
+        (1_000.9, "1,000 EUR"),
+        (1_019_999.0, "1.01 M EUR"),
+        (-198.501, "-198.51 EUR"),
+        (0.29, "0.29 EUR"),
+    ],
+)
+def test_a_floor_is_rounded_down(amount: float, text: str) -> None:
+    """So that no plan can cost less than it says."""
+    assert money_down(amount, "EUR") == text
+
+
+@pytest.mark.parametrize(
+    ("length", "text"), [(0.04, "0.0 s"), (0.31, "0.3 s"), (9.94, "9.9 s"), (10.0, "10 s"), (3600, "3,600 s")]
+)
+def test_short_times_have_a_decimal(length: float, text: str) -> None:
+    """A search of a third of a second is not one of none."""
+    assert seconds(length) == text
+
+
 def test_the_headline_without_a_plan_yet() -> None:
     """Says how long it took, and what is known of the cost."""
     answer = Answer(proof=proof(Outcome.NO_PLAN_YET, None, 3_900_000.0), plan=None, today=None)
     assert headline(answer, currency="EUR") == (
-        "No plan yet: the search was stopped after 3 s before it found one; "
+        "No plan yet: the search was stopped after 3.0 s before it found one; "
         "no plan can cost less than 3.90 M EUR a year."
     )
     unbounded = replace(answer, proof=proof(Outcome.NO_PLAN_YET, None, None))
-    assert headline(unbounded) == "No plan yet: the search was stopped after 3 s before it found one."
+    assert headline(unbounded) == "No plan yet: the search was stopped after 3.0 s before it found one."
 
 
 def reason(sentence: str) -> Reason:
@@ -264,6 +296,10 @@ def test_the_headline_of_an_impossible_study(sentences: list[str], together: boo
         (-50_000.0, 4_500_000.0, "Brings in 0.05 M EUR once, running saving 0.68 M EUR a year."),
         (-50_000.0, 3_500_000.0, "Brings in 0.05 M EUR once, running cost 0.32 M EUR a year higher."),
         (1_200_000.0, None, "One-off money 1.20 M EUR."),
+        (0.0, 3_820_000.0, "No one-off money, running cost the same as today."),
+        (0.0, 3_820_000.003, "No one-off money, running cost the same as today."),
+        (0.0, 3_819_999.997, "No one-off money, running cost the same as today."),
+        (1_200_000.0, 3_820_000.0, "One-off money 1.20 M EUR, running cost the same as today: it never pays back."),
     ],
 )
 def test_payback_counts_no_money_twice(one_off: float, today_cost: float | None, text: str) -> None:

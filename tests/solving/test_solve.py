@@ -123,6 +123,7 @@ def test_stopped_on_request_keeps_the_best_plan() -> None:
     assert answer.proof.outcome is Outcome.STOPPED
     assert answer.proof.bound is not None
     assert answer.proof.bound < 10728.96 < answer.plan.cost + 0.01
+    assert answer.proof.reason.endswith("; stopped on request")
     assert len(heard.ended) == 1
 
 
@@ -132,6 +133,7 @@ def test_stopped_before_any_plan(study: Study) -> None:
     stop.request()
     answer = solve(study, EXACT, stop=stop)
     assert answer.proof.outcome is Outcome.NO_PLAN_YET
+    assert answer.proof.reason.endswith("; stopped on request")
     assert answer.plan is None
     assert answer.today is not None
 
