@@ -70,8 +70,8 @@ def server_settings(address: str, port: int) -> Mapping[str, object]:
         "server.enableXsrfProtection": True,
         "server.xsrfCookieSameSite": "strict",
         "server.trustedUserHeaders": {},
-        "server.sslCertFile": None,
-        "server.sslKeyFile": None,
+        "server.sslCertFile": "",
+        "server.sslKeyFile": "",
         # What it takes and what it gives away.
         "server.maxUploadSize": LARGEST_UPLOAD_MB,
         "server.maxMessageSize": LARGEST_MESSAGE_MB,
