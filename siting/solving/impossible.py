@@ -135,7 +135,8 @@ def _repairs(study: Study, network: Network, clock: _Clock) -> tuple[tuple[Repai
             alone.append(repair)
     if alone or not families or not clock.left(1):
         return tuple(alone), False
-    return _smallest_combination(study, network, families, clock), True
+    repairs = _smallest_combination(study, network, families, clock)
+    return repairs, len(repairs) > 1  # one family is enough where its search alone ran out of time
 
 
 def _beside_stuck(study: Study, stuck: Flags, clock: _Clock) -> tuple[tuple[Repair, ...], bool]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from decimal import Decimal
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -122,8 +123,7 @@ class Words:
             km = _km_to(customer, far)
             if not km.size:  # what is nearest is barred, or too small for the customer, as well
                 km = _km_to(customer, build_network(lifted(self._study, set(Requirement))))
-            reach = self._study.customers[customer].reach_km or 0.0
-            listed.append(f"{place[0]} (reach {shown(reach)} km, nearest {shown(float(np.nanmin(km)))} km)")
+            listed.append(_reach_of(place[0], self._study.customers[customer].reach_km or 0.0, km))
         origin = "supplier" if not self._study.sites else "site or supplier" if len(far.direct) else "site"
         who = _these(repair, "customer")
         if alone:
@@ -166,10 +166,12 @@ class Words:
 
     def _service_share(self, repair: Repair) -> tuple[str, str]:
         settings = self._study.settings
-        asked, short = (settings.service_share or 0.0) * PERCENT, self._points(repair)
+        asked, short = round((settings.service_share or 0.0) * PERCENT, 9), shown(self._points(repair))
+        can_be = Decimal(str(asked)) - Decimal(short.replace(",", ""))
+        at_most = "At most " if repair.smallest else ""
         return (
-            f"At most {asked - short:.6g} % of the weight can be delivered within {settings.service_km:g} km, "
-            f"{shown(short)} points less than the {asked:g} % asked."
+            f"{at_most}{can_be.normalize():f} % of the weight can be delivered within {settings.service_km:g} km, "
+            f"{short} points less than the {asked:g} % asked."
         ), "points"
 
     def _points(self, repair: Repair) -> float:
@@ -182,13 +184,13 @@ class Words:
 
     def _most_sites(self, repair: Repair) -> tuple[str, str]:
         allowed, short = self._network.most_sites, round(repair.amount)
-        return f"most_sites is {allowed}, {short} too few: {allowed + short} sites are needed.", "sites"
+        return f"most_sites is {allowed}, {short} too few: {allowed + short} sites are {_needed(repair)}.", "sites"
 
     def _budget(self, repair: Repair) -> tuple[str, str]:
         currency, budget = self._study.settings.currency, self._network.one_off_budget
         return (
             f"The one-off budget of {shown(budget)} {currency} falls {shown(repair.amount)} {currency} short: "
-            f"{shown(budget + repair.amount)} {currency} are needed."
+            f"{shown(budget + repair.amount)} {currency} are {_needed(repair)}."
         ), currency
 
     def _rulings(self, repair: Repair) -> tuple[str, str]:
@@ -211,10 +213,23 @@ class Words:
         return " ".join([*said, f"Enough: take out {out[0].lower()}{out[1:]}."]), "rules"
 
 
+def _reach_of(name: str, reach: float, km: Floats) -> str:
+    """Return a customer with its reach and what is nearest, or nearest beyond it where what lies within is full."""
+    nearest, beyond = float(np.nanmin(km)), km[km > reach]
+    if nearest > reach or not beyond.size:
+        return f"{name} (reach {shown(reach)} km, nearest {shown(nearest)} km)"
+    return f"{name} (reach {shown(reach)} km, nearest beyond it {shown(float(beyond.min()))} km)"
+
+
 def _km_to(customer: int, network: Network) -> Floats:
     """Return the road km of every lane to a customer."""
     legs = (network.outbound, network.direct)
     return np.concatenate([lanes.km[lanes.destination == customer] for lanes in legs])
+
+
+def _needed(repair: Repair) -> str:
+    """Return what a larger limit is: needed where it is the smallest, else only enough."""
+    return "needed" if repair.smallest else "enough"
 
 
 def _rows(rules: Sequence[RuleRow]) -> str:

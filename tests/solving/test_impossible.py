@@ -9,9 +9,10 @@ import pytest
 
 from siting.listener import Stop
 from siting.network.network import build_network
+from siting.solving.elastic import Elastic, Repair
 from siting.solving.impossible import explain, find_repairs
-from siting.solving.repair_words import shown
-from siting.solving.requirements import Requirement
+from siting.solving.repair_words import Words, shown
+from siting.solving.requirements import Requirement, asked
 from siting.study.tables import (
     IMPLIED_GOOD,
     CustomerRow,
@@ -123,7 +124,9 @@ def test_reach_of_customers_with_a_full_site() -> None:
     sites = (replace(study.sites[0], capacity=30.0), replace(study.sites[1], capacity=100.0))
     customers = (replace(study.customers[0], reach_km=100.0), study.customers[1])
     reasons = reasons_of(replace(study, sites=sites, customers=customers))
-    assert reasons["reach"][2].startswith("This customer can only be served from beyond reach: Linz (reach 100 km")
+    assert reasons["reach"][2] == (
+        "This customer can only be served from beyond reach: Linz (reach 100 km, nearest beyond it 120 km)."
+    )
     assert reasons["site-capacity"][0] == pytest.approx(30.0)
 
 
@@ -188,6 +191,16 @@ def test_service_share() -> None:
     amount, unit, sentence = reasons_of(study_of(service_km=100.0, service_share=0.9))["service-share"]
     assert (amount, unit) == (pytest.approx(90 - 100 * 60 / 130), "points")
     assert sentence.startswith("At most 46.1538 % of the weight can be delivered within 100 km, 43.8462 points less")
+
+
+def test_a_service_share_that_is_said_to_be_possible_is() -> None:
+    """The 70 of Linz out of 130 are 53.84615... %: cut, not rounded up to 53.8462."""
+    study = study_of(service_km=100.0, service_share=0.9)
+    study = replace(
+        study, customers=(replace(study.customers[0], demand=70.0), replace(study.customers[1], demand=60.0))
+    )
+    sentence = reasons_of(study)["service-share"][2]
+    assert sentence.startswith("At most 53.8461 % of the weight can be delivered within 100 km, 36.1539 points less")
 
 
 def test_fewest_sites() -> None:
@@ -280,6 +293,37 @@ def test_customer_whose_good_nobody_can_bring() -> None:
     assert ([reason.family for reason in reasons], together) == (["lanes", "site-capacity"], True)
     assert reasons[1].amount == pytest.approx(50.0)
     assert reasons[1].sentence.endswith("Not enough alone.")
+
+
+def test_one_family_found_late_is_enough_alone(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Where time ran out on each family by itself, and one then turns out to be enough, it is not said to be not."""
+    study = study_of(100.0, most_sites=1)
+    real = Elastic.minimise
+    hurried = iter([True] * len(asked(study)))
+
+    def minimise(self: Elastic, requirement: Requirement, seconds: float, stop: Stop | None) -> Repair | None:
+        return None if next(hurried, False) else real(self, requirement, seconds, stop)
+
+    monkeypatch.setattr(Elastic, "minimise", minimise)
+    reasons, together = explain(study, build_network(study))
+    assert not together
+    assert [reason.family for reason in reasons] == ["site-capacity"]
+    assert "Not enough alone" not in reasons[0].sentence
+
+
+@pytest.mark.parametrize(("smallest", "word"), [(True, "needed"), (False, "enough")])
+def test_a_repair_that_may_be_too_large_is_not_said_to_be_needed(smallest: bool, word: str) -> None:  # noqa: FBT001  # a parameter
+    """Where time ran out on the search for the smallest."""
+    study = study_of(100.0, most_sites=1, one_off_budget=120_000.0)
+    words = Words(study, build_network(study))
+    for requirement, amount, said in (
+        (Requirement.MOST_SITES, 1.0, f"2 sites are {word}."),
+        (Requirement.BUDGET, 80_000.0, f"200,000 XXX are {word}."),
+    ):
+        repair = Repair(requirement=requirement, amount=amount, parts=(), smallest=smallest)
+        sentence = words.reason(repair, [], together=False).sentence
+        assert said in sentence
+        assert ("Less may do" in sentence) is not smallest
 
 
 def test_smallest_combination() -> None:
