@@ -19,6 +19,7 @@ from siting.commands import (
     plan,
     runners_up,
     template,
+    zones,
 )
 from siting.commands import map as map_command
 from siting.commands.command import BAD_INPUT, FOUND, NO_PLAN_YET
@@ -27,7 +28,21 @@ from siting.errors import SitingError
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-COMMANDS = (check, plan, closing, headroom, runners_up, counts, compare, audit, map_command, template, circuity, browse)
+COMMANDS = (
+    check,
+    plan,
+    closing,
+    headroom,
+    runners_up,
+    counts,
+    compare,
+    audit,
+    map_command,
+    template,
+    circuity,
+    zones,
+    browse,
+)
 """In the order of the help."""
 
 EXIT_CODES = (
