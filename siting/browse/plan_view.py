@@ -58,9 +58,9 @@ def show_answer(kept: Kept, top: DeltaGenerator) -> None:
     st.iframe(kept.map_on_page, height=MAP_HEIGHT_PX, alt="Map of the plan")
     notices(plan.warnings, kind="stale", title="Worth a second look")
     section("Verdicts one by one")
-    sites, suppliers = st.columns(2, gap="medium")
-    sites.html(site_table(plan, formats))
-    suppliers.html(supplier_table(plan, formats))
+    tables = [table for table in (site_table(plan, formats), supplier_table(plan, formats)) if table]
+    for column, table in zip(st.columns(len(tables), gap="medium"), tables, strict=True):
+        column.html(table)
     _costs(study, plan, formats)
     _service(plan, formats)
     _details(plan, formats)

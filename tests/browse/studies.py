@@ -68,6 +68,22 @@ def long_folder(folder: Path, *, sites: int = 90, customers: int = 400) -> Path:
     return write_folder(folder, tables, settings + solve)
 
 
+def hostile_folder(folder: Path) -> Path:
+    """Write the tiny study with a hostile text wherever a user can type a name, into the folder."""
+    texts = [f"{text} {number}" for number, text in enumerate(HOSTILE)]
+    names = dict(
+        zip(("Linz", "Brno", "Deggendorf", "Szombathely", "Vienna", "Munich", "Prague", "Graz"), texts, strict=False)
+    )
+    tables = {}
+    for table, text in TINY.items():
+        header, *rows = csv.reader(io.StringIO(text))
+        renamed = [[names.get(cell, cell) for cell in row] for row in rows]
+        extra = [[*row, texts[8 + number % 3]] for number, row in enumerate(renamed)]
+        tables[table] = _csv([*header, HOSTILE[1]], extra)
+    settings = TINY_SETTINGS.replace('"Tiny"', f"'{HOSTILE[0]}'").replace('"t"', f"'{HOSTILE[7]}'")
+    return write_folder(folder, tables, settings)
+
+
 def _csv(header: Sequence[str], rows: Iterable[Sequence[object]]) -> str:
     text = io.StringIO()
     csv.writer(text, lineterminator="\n").writerows([header, *rows])
