@@ -18,6 +18,7 @@ from siting.plan.audit import audit
 from siting.plan.draw_up import draw_up
 from siting.plan.plan import Answer
 from siting.plan.proof import Outcome, Proof
+from siting.solving.bounding.engine import bounding
 from siting.solving.cbc import cbc
 from siting.solving.direct import direct
 from siting.solving.flows import flows_for, price
@@ -33,8 +34,11 @@ if TYPE_CHECKING:
     from siting.study.settings import SolveSettings
     from siting.study.tables import Study
 
-REGISTRY: dict[str, Engine] = {"direct": direct, "cbc": cbc}
+REGISTRY: dict[str, Engine] = {"direct": direct, "bounding": bounding, "cbc": cbc}
 """Every engine by the name the settings know it by."""
+
+FEW_LANES = 2_000
+"""Up to so many lanes `auto` gives the whole model to one solver, which needs about a second there."""
 
 TODAY_SHARE = 0.25
 """Share of the time limit the search for today may take; without single-sourced customers it needs none."""
@@ -131,7 +135,9 @@ def pick_engine(network: Network, settings: SolveSettings) -> tuple[str, str]:
         raise SettingsError(msg)
     lanes = len(network.inbound) + len(network.outbound) + len(network.direct)
     size = "1 lane" if lanes == 1 else f"{lanes:,} lanes"
-    return "direct", f"auto: the whole model, {size}, goes to one solver"
+    if lanes <= FEW_LANES:
+        return "direct", f"auto: the whole model, {size}, goes to one solver"
+    return "bounding", f"auto: {size} are more than one solver proves fast, so bounds and plans are searched for"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -19,8 +19,11 @@ class SolveSettings:
     """One of `ENGINES`."""
 
 
-ENGINES = ("auto", "direct", "cbc")
-"""`auto` picks; `direct` is HiGHS on the whole model; `cbc` is the cross-check on the same model."""
+ENGINES = ("auto", "direct", "bounding", "cbc")
+"""
+`auto` picks by size; `direct` is HiGHS on the whole model, `bounding` our own search for large studies, `cbc` the
+cross-check on the same model as `direct`.
+"""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

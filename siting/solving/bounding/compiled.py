@@ -43,6 +43,11 @@ def _user_cache() -> Path:
 _FOLDER = cache_folder()
 
 
+def is_compiled() -> bool:
+    """Return whether machine code from an earlier run is there, so that nobody waits for the compiler."""
+    return _FOLDER is not None and any(_FOLDER.rglob("*.nbi"))
+
+
 def compiled(function: Callable[..., Any]) -> Callable[..., Any]:
     """Return `function` compiled on its first call, without the interpreter's lock, kept in the user's cache."""
     if _FOLDER is None:

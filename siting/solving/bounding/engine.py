@@ -1,5 +1,8 @@
 """
-The engine `bounding`: Lagrangean bounds, plans found on the way, and branch and bound on the sites.
+The engine `bounding`: bounds from relaxations, plans found on the way, and branch and bound.
+
+Two searches stand behind it. Where the network is one echelon of sites that `handles` has no objection to, the demand
+rows are relaxed (`run`); every other network is searched over lanes priced in (`whole`).
 
 Every phase is budgeted in steps, not seconds: a run that neither time nor a request stops gives the same answer always.
 The compiled loops are loaded when the engine runs, so that other engines never wait for them.
@@ -9,7 +12,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from siting.errors import EngineError
+from siting.listener import Progress
 from siting.solving.bounding.problem import handles
 
 if TYPE_CHECKING:
@@ -29,12 +32,12 @@ def bounding(
     start: Decisions | None = None,
 ) -> EngineResult:
     """
-    Search with Lagrangean bounds until the gap, the time limit or `stop`.
+    Search until the gap, the time limit or `stop`.
 
     Parameters
     ----------
     network
-        What to decide; `handles` must have no objection.
+        What to decide; any feature.
     settings
         Gap and time limit.
     listener
@@ -47,17 +50,21 @@ def bounding(
     Returns
     -------
     result
-        With a bound for each number of sites looked at.
+        With a bound for each number of sites looked at, where the sites alone are searched.
 
     Raises
     ------
     EngineError
-        If the network asks for something that this engine cannot do.
+        If a linear program fails for a reason of its own.
     """
-    reason = handles(network)
-    if reason is not None:
-        msg = f"the engine `bounding` cannot solve this study: {reason}. Choose the engine `auto` or `direct`."
-        raise EngineError(msg)
+    if handles(network) is not None:
+        from siting.solving.bounding.whole import whole  # noqa: PLC0415 - each search loads what it needs
+
+        return whole(network, settings, listener=listener, stop=stop, start=start)
+    from siting.solving.bounding.compiled import is_compiled  # noqa: PLC0415 - loads the compiler
+
+    if not is_compiled():
+        listener.update(Progress(elapsed_s=0.0, phase="compiling the search, once on this machine"))
     from siting.solving.bounding.run import Run  # noqa: PLC0415 - loads the compiled loops
 
     return Run(network, settings, listener, stop).solve(start)
