@@ -124,6 +124,14 @@ class Enumeration:
                 return None if flow is None else flow + verdicts.charge
         return None
 
+    def every(self) -> Iterator[tuple[Best, float]]:
+        """Yield every set of verdicts that can serve the demand, with its cost, and what moving costs of that."""
+        for verdicts in self._verdicts():
+            if self._lower_bound(verdicts) is not None:
+                flow = self._cheapest_flow(verdicts, math.inf)
+                if flow is not None:
+                    yield _as_best(flow + verdicts.charge, verdicts), flow
+
     def _verdicts(self) -> Iterator[Verdicts]:
         """Yield every set of verdicts that rulings, rules, counts and the budget allow."""
         study = self.study
