@@ -6,13 +6,12 @@ from dataclasses import dataclass, field, fields
 from typing import TYPE_CHECKING, Any
 
 from siting.plan.codec import encode
+from siting.plan.plan import CostLine, Plan, Reason, Unserved  # noqa: TC001 - the codec reads the hints at run time
 from siting.plan.proof import PROVED_GAP, Outcome, gap_of
+from siting.questions.differences import Filling, Shift, VerdictChange  # noqa: TC001 - as above
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
-
-    from siting.plan.plan import CostLine, Plan, Reason, Unserved
-    from siting.questions.differences import Filling, Shift, VerdictChange
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -3,14 +3,11 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
-from siting.plan.plan import CostLine
+from siting.plan.plan import CostLine, Plan
 from siting.plan.proof import PROVED_GAP, Outcome, gap_of
 from siting.questions.restriction import OPEN
-
-if TYPE_CHECKING:
-    from siting.plan.plan import Plan
 
 FIXED = (
     CostLine.OPENING,

@@ -3,14 +3,11 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 from siting.plan.contract import summary_to_json
-from siting.plan.plan import Answer, SupplierVerdict
+from siting.plan.plan import Answer, Plan, SupplierVerdict
 from siting.plan.proof import PROVED_GAP, Outcome, gap_of
-
-if TYPE_CHECKING:
-    from siting.plan.plan import Plan
 
 Part = tuple[str, str]
 """A site with its size, "" where it has none; or a supplier with ""."""
