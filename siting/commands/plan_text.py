@@ -23,6 +23,8 @@ HALF = 0.5
 """Smaller than this rounds to 0."""
 SMALL = 1000.0
 """Money below this is shown with decimals."""
+MOST_SPLITS = 10
+"""Customers listed as split."""
 
 
 def answer_text(study: Study, answer: Answer) -> str:
@@ -145,7 +147,12 @@ def _signed(difference: float, digits: int) -> str:
 
 def _said(study: Study, plan: Plan) -> list[str]:
     """Return what is worth saying about distance, service, emissions and deliveries."""
-    said = [*_distance(study, plan.service), delivery_sentence(study, plan), tariff_sentence(study, plan)]
+    said = [
+        *_distance(study, plan.service),
+        _splits(plan),
+        delivery_sentence(study, plan),
+        tariff_sentence(study, plan),
+    ]
     if plan.tonnes_co2e is None:
         said.append("Emissions are not reported: the study sets no emission_kg_per_tkm.")
     else:
@@ -153,6 +160,16 @@ def _said(study: Study, plan: Plan) -> list[str]:
     if plan.today is not None and plan.today.reason:
         said.append(plan.today.reason)
     return [sentence for sentence in said if sentence]
+
+
+def _splits(plan: Plan) -> str:
+    """Return which customers are served from more than one place, with the places, the largest first."""
+    split = [f"{line.customer} ({', '.join(line.origins)})" for line in plan.customers if len(line.origins) > 1]
+    if not split:
+        return ""
+    who = "1 customer is" if len(split) == 1 else f"{len(split):,} customers are"
+    more = f" and {len(split) - MOST_SPLITS:,} more" if len(split) > MOST_SPLITS else ""
+    return f"{who} served from more than one place: {', '.join(split[:MOST_SPLITS])}{more}."
 
 
 def _distance(study: Study, service: Service) -> Iterator[str]:

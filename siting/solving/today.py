@@ -225,7 +225,8 @@ def _short(study: Study, network: Network, missing: Floats, *, exact: bool) -> T
         for customer, good in np.argwhere(where).tolist()
     )
     load = float((missing * network.load)[where].sum())
-    reason = f"Today's sites and suppliers leave {_shown(load)} {study.settings.unit} a year unserved"
+    kinds = " and ".join(kind for kind, there in (("sites", study.sites), ("suppliers", study.suppliers)) if there)
+    reason = f"Today's {kinds} leave {_shown(load)} {study.settings.unit} a year unserved"
     if not exact:
         reason += " as far as the search got before its time was over"
     return Today(outcome=TodayOutcome.SHORT, reason=f"{reason}, so no saving is stated.", plan=None, unserved=unserved)

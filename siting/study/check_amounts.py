@@ -23,6 +23,12 @@ _LEAST_OF = {
 }
 """The least volume that each table's capacity must allow."""
 
+ONE_OFF_MONEY = {
+    name: (*columns, "residual_value") if name in {"sites", "sizes"} else columns
+    for name, columns in ONE_OFF_CHARGES.items()
+}
+"""Columns of money that is spread over the years, by table."""
+
 
 def check_amounts(draft: Draft) -> None:
     """Note every fault among the amounts of a study."""
@@ -32,6 +38,7 @@ def check_amounts(draft: Draft) -> None:
     for table_name, least in _LEAST_OF.items():
         _check_least(draft.tables[table_name], least, draft)
     _check_unlimited(draft)
+    _check_residual(draft)
     _check_interest(draft)
     _check_counts(draft)
 
@@ -100,16 +107,34 @@ def _check_unlimited(draft: Draft) -> None:
             draft.gathering.warn(name, row.row, "capacity", "", wrong, "Write the capacity, or type unlimited")
 
 
+def _check_residual(draft: Draft) -> None:
+    """Warn of sites that give back more than opening them costs: they open to earn money, used or not."""
+    for name in ("sites", "sizes"):
+        table = draft.tables[name]
+        for index, row in enumerate(table.rows):
+            if name == "sites" and row.site in draft.size_count:
+                continue
+            doubtful = draft.gathering.hurt(name, row.row, "opening_charge", "residual_value", "standing")
+            proposed = row.standing is SiteStanding.PROPOSED
+            if proposed and row.residual_value > row.opening_charge and not doubtful:
+                wrong = f"above the opening_charge ({number_text(row.opening_charge)}), as if opening earned money"
+                repair = "Check both; the residual_value is what is got back of the opening_charge"
+                draft.gathering.warn(
+                    name, row.row, "residual_value", table.typed(index, "residual_value"), wrong, repair
+                )
+
+
 def _one_offs(draft: Draft) -> Iterator[tuple[str, int, str, float]]:
-    for name, columns in ONE_OFF_CHARGES.items():
+    for name, columns in ONE_OFF_MONEY.items():
         for row in draft.tables[name].rows:
             for column in columns:
-                if getattr(row, column):
+                unused = column == "residual_value" and row.standing is SiteStanding.RUNNING
+                if getattr(row, column) and not unused:
                     yield name, row.row, column, getattr(row, column)
 
 
 def _check_interest(draft: Draft) -> None:
-    """Note that one-off charges cannot be spread over years without interest_rate and life_years."""
+    """Note that one-off money cannot be spread over years without interest_rate and life_years."""
     place = draft.settings_name
     first = next(_one_offs(draft), None)
     if first is None or place in draft.unreadable:

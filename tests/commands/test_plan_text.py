@@ -77,3 +77,17 @@ def test_why_a_search_stopped_is_said() -> None:
     """What the engine notes is part of the proof's line."""
     proof = replace(PLAN.proof, reason="auto: the whole model, 12 lanes, goes to one solver; stopped by the time limit")
     assert "goes to one solver; stopped by the time limit) in " in text_of(replace(PLAN, proof=proof))
+
+
+def test_customers_served_from_more_than_one_place_are_listed() -> None:
+    """With the places, the largest first; after ten the others are counted."""
+    first, *others = PLAN.customers
+    alone = [replace(line, origins=("Linz",)) for line in others]
+    split = replace(first, origins=("Linz", "Brno"))
+    assert "served from more than one place" not in text_of(replace(PLAN, customers=tuple(alone)))
+    text = text_of(replace(PLAN, customers=(split, *alone)))
+    assert f"- 1 customer is served from more than one place: {first.customer} (Linz, Brno). " in text
+    twelve = tuple(replace(split, customer=f"C{number}") for number in range(12))
+    text = text_of(replace(PLAN, customers=twelve))
+    assert "- 12 customers are served from more than one place: C0 (Linz, Brno), C1 (Linz, Brno), " in text
+    assert "C9 (Linz, Brno) and 2 more. " in text

@@ -101,7 +101,7 @@ def test_short(study: Study) -> None:
     assert today.plan is None
     assert today.cost is None
     assert sum(short.amount for short in today.unserved) == pytest.approx(1)
-    assert today.reason == "Today's sites and suppliers leave 1 unit a year unserved, so no saving is stated."
+    assert today.reason == "Today's sites leave 1 unit a year unserved, so no saving is stated."
 
 
 def test_short_of_a_customer_nobody_running_reaches(study: Study) -> None:

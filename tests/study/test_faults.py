@@ -510,3 +510,15 @@ def test_values_are_shown_as_typed(table: str, row: int, cells: dict[str, str], 
     """Neither rounded nor rewritten, so that they can be searched for."""
     tables = TINY if table == "sites" else GOODS
     assert [fault.value for fault in check_tables(with_cells(tables, table, {row: cells})).faults] == [typed]
+
+
+def test_what_is_got_back_is_spread_over_the_years_too() -> None:
+    """A residual_value alone asks for interest_rate and life_years; at a running site it is not used."""
+    tables = with_cells(TINY, "sites", {2: {"closing_charge": "0"}, 3: {"opening_charge": "0"}})
+    tables = with_cells(tables, "suppliers", {2: {"dropping_charge": "0"}, 3: {"signing_charge": "0"}})
+    settings = TINY_SETTINGS.replace("interest_rate = 0.08\nlife_years = 10\n", "")
+    assert faults_of(tables, settings) == []
+    assert faults_of(with_cells(tables, "sites", {2: {"residual_value": "50"}}), settings) == []
+    found = faults_of(with_cells(tables, "sites", {3: {"residual_value": "50"}}), settings)
+    assert len(found) == 2
+    assert re.search(r"interest_rate: .* sites row 3 has a one-off residual_value of 50\. Add it", found[0])

@@ -18,6 +18,10 @@ WARNINGS = [
     (with_cells(TINY, "suppliers", {3: {"capacity": ""}}), r"^suppliers, row 3, column capacity: blank, taken as unl"),
     (with_cells(TINY, "customers", {2: {"demand": "0"}}), r"^customers, row 2, column demand: .*'Vienna' needs noth"),
     (with_cells(TINY, "sites", {2: {"remark": "old"}}), r"^sites: .* does not know are carried along unused: remark\."),
+    (
+        with_cells(TINY, "sites", {3: {"residual_value": "500.5"}}),
+        r"^sites, row 3, column residual_value, value '500.5': above the opening_charge \(500\), as if opening earned",
+    ),
     ({"contacts": "name\nx\n"}, r"^contacts: the file is not a table of a study and was not read"),
     ({"goods": "good\n"}, r"^goods: the table has no rows and counts as absent"),
     ({"lanes": "origin,destination,road_km\nLinz,Vienna,700\n"}, r"^lanes, row 2, column road_km, value '700': .*Linz"),
@@ -125,3 +129,9 @@ def test_warnings_are_capped_and_counted() -> None:
     found = check_tables({**TINY, "customers": "\n".join(["customer,latitude,longitude,demand", *rows])}).warnings
     assert len(found) == 201
     assert str(found[-1]).startswith("customers: 2 more warnings of this table are not listed")
+
+
+@pytest.mark.parametrize(("row", "value"), [(3, "500"), (3, "0"), (2, "900")])
+def test_what_is_got_back_at_most_once_is_no_news(row: int, value: str) -> None:
+    """All of the opening charge may be got back; a running site opens no more."""
+    assert check_tables(with_cells(TINY, "sites", {row: {"residual_value": value}})).warnings == ()
