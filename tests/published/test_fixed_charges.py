@@ -20,6 +20,7 @@ from tests.answers import EXACT, audited, open_sites, proved, relaxation, signed
 from tests.published import instances as given
 
 if TYPE_CHECKING:
+    from siting.study.settings import SolveSettings
     from siting.study.tables import Study
 
 MONEY = 0.005
@@ -54,10 +55,10 @@ OPTIMA = {
 
 
 @pytest.mark.parametrize("name", OPTIMA)
-def test_reaches_the_published_optimum(name: str) -> None:
+def test_reaches_the_published_optimum(name: str, exact: SolveSettings) -> None:
     """The proved cost and the open sites are the published ones."""
     study, cost, sites = OPTIMA[name]
-    plan = proved(study)
+    plan = proved(study, exact)
     assert plan.proof.cost == pytest.approx(cost, abs=MONEY)
     assert open_sites(plan) == set(sites.split(", "))
 

@@ -2,10 +2,15 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 import pytest
 
 from tests.answers import open_sites, proved, relaxation
 from tests.published.large_instances import needs_benchmarks, orlib, published_optima, recipe
+
+if TYPE_CHECKING:
+    from siting.study.settings import SolveSettings
 
 SMALL_FILES = [
     f"cap{number}"
@@ -25,10 +30,10 @@ def test_there_are_37_small_files() -> None:
 
 
 @pytest.mark.parametrize("name", SMALL_FILES)
-def test_reaches_the_published_optimum(name: str) -> None:
+def test_reaches_the_published_optimum(name: str, exact: SolveSettings) -> None:
     """Every small OR-Library problem is proved at its published optimum, to a cent."""
     needs_benchmarks()
-    assert proved(orlib(name)).proof.cost == pytest.approx(published_optima()[name], abs=0.01)
+    assert proved(orlib(name), exact).proof.cost == pytest.approx(published_optima()[name], abs=0.01)
 
 
 @pytest.mark.parametrize(
