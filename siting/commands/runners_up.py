@@ -14,8 +14,6 @@ if TYPE_CHECKING:
 
 def add(commands: Commands) -> None:
     """Add the command to the command line."""
-    from siting.questions.runners_up import MOST, WITHIN
-
     parser = commands.add_parser(
         "runners-up",
         help="the next-best sets of sites and suppliers",
@@ -27,13 +25,10 @@ def add(commands: Commands) -> None:
     parser.add_argument(
         "--within",
         type=_share,
-        default=WITHIN,
         metavar="SHARE",
         help="how far above the best to look, as 0.02 or 2%% (default: 2%%)",
     )
-    parser.add_argument(
-        "--most", type=_number, default=MOST, metavar="N", help=f"how many to list next to the best (default: {MOST})"
-    )
+    parser.add_argument("--most", type=_number, metavar="N", help="how many to list next to the best (default: 10)")
     parser.set_defaults(run=run)
 
 
@@ -48,7 +43,7 @@ def run(arguments: argparse.Namespace) -> int:
     """
     from siting.commands.runners_up_text import runners_up_text
     from siting.plan.proof import PROVED_GAP
-    from siting.questions.runners_up import runners_up
+    from siting.questions.runners_up import MOST, WITHIN, runners_up
     from siting.questions.runners_up_result import runners_up_to_json
 
     made, answer = study_and_answer(arguments)
@@ -58,8 +53,8 @@ def run(arguments: argparse.Namespace) -> int:
         lambda listener, stop: runners_up(
             made.study,
             answer,
-            within=arguments.within,
-            most=arguments.most,
+            within=WITHIN if arguments.within is None else arguments.within,
+            most=arguments.most or MOST,
             gap=PROVED_GAP if arguments.gap is None else arguments.gap,
             settings=settings,
             listener=listener,

@@ -9,6 +9,7 @@ import pytest
 
 from siting.cli import main
 from siting.plan.proof import Outcome
+from siting.questions.runners_up import MOST, WITHIN
 from siting.study.write import write_study
 from tests.builders import TINY, with_cells, write_folder
 from tests.published import instances
@@ -144,3 +145,12 @@ def test_headroom_of_a_named_supplier(tmp_path: Path, capsys: pytest.CaptureFixt
     assert lines["Deggendorf"]["one_off"] is None
     annuity = 0.08 / (1 - 1.08**-10)
     assert lines["Szombathely"]["one_off"] == pytest.approx(lines["Szombathely"]["yearly"] / annuity)
+
+
+def test_help_of_runners_up_states_the_defaults_of_the_question(capsys: pytest.CaptureFixture[str]) -> None:
+    """The command names them without loading the question, which would slow every --help down."""
+    with pytest.raises(SystemExit, match="0"):
+        main(["runners-up", "--help"])
+    text = " ".join(capsys.readouterr().out.split())
+    assert f"as 0.02 or 2% (default: {WITHIN:.0%})" in text
+    assert f"next to the best (default: {MOST})" in text
