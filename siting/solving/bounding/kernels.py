@@ -26,7 +26,7 @@ from __future__ import annotations
 import numpy as np
 
 from siting.solving.bounding.compiled import compiled
-from siting.solving.bounding.knapsack import FREE, OPEN, SHUT, fill
+from siting.solving.bounding.knapsack import FREE, OPEN, SHUT, copy, fill, wipe
 from siting.solving.bounding.master import price_cover, whole_cover
 
 BEST, FACTOR, MU, STEPS, IDLE = 0, 1, 2, 3, 4
@@ -46,7 +46,7 @@ LEAST_FACTOR = 1e-4
 @compiled
 def gather_margins(v, row_start, lane_site, lane_cost, demand, state, site_start, held, margin, load, row):
     """Put the lanes with a positive margin into their site's part of `margin`, `load` and `row`; it ends at `held`."""
-    held[:] = site_start[:-1]
+    copy(held, site_start)
     for r in range(v.shape[0]):
         worth, amount = v[r], demand[r]
         for lane in range(row_start[r], row_start[r + 1]):
@@ -140,11 +140,12 @@ def sift(reduced, rate, state, slack):
 @compiled
 def _follow(numbers, v, way, covered, demand, target, value):
     """Make the subgradient step: `way` is the deflected direction; return False when there is nowhere to go."""
-    norm = 0.0
+    norm, asked = 0.0, 0.0
     for r in range(v.shape[0]):
+        asked += demand[r]
         way[r] = demand[r] - covered[r] + DEFLECTION * way[r]
         norm += way[r] * way[r] / demand[r]
-    if norm <= SERVED * np.sum(demand) or numbers[FACTOR] < LEAST_FACTOR:
+    if norm <= SERVED * asked or numbers[FACTOR] < LEAST_FACTOR:
         return False
     size = numbers[FACTOR] * (target - value) / norm
     for r in range(v.shape[0]):
@@ -165,7 +166,10 @@ def ascend(problem, space, state, charge, fewest, most, numbers, steps, target, 
     row_start, lane_site, lane_cost, site_option, _, capacity, demand = problem
     site_start, held, margin, load, row, cost, taken, rest, edge, reduced, pick, pick_more, pick_whole = space[:13]
     covered, opened, way, v, best_v, used = space[13:]
-    need = np.sum(demand) * (1.0 - 1e-12)
+    asked = 0.0
+    for r in range(demand.shape[0]):
+        asked += demand[r]
+    need = asked * (1.0 - 1e-12)
     for _ in range(steps):
         gather_margins(v, row_start, lane_site, lane_cost, demand, state, site_start, held, margin, load, row)
         price_options(
@@ -188,20 +192,20 @@ def ascend(problem, space, state, charge, fewest, most, numbers, steps, target, 
             slack = 0.01 * (cutoff - bound)
             exact, found = whole_cover(cost, capacity, state, need, rate, count, slack, whole, pick_whole)
             if exact + worth > bound and found - exact <= 0.1 * (cutoff - bound):
-                pick[:] = pick_whole
+                copy(pick, pick_whole)
                 share = 1.0
             bound = max(bound, exact + worth)
         if bound > numbers[BEST]:
             if bound > numbers[BEST] + 1e-6 * abs(bound):
                 numbers[IDLE] = 0.0
             numbers[BEST] = bound
-            best_v[:] = v
+            copy(best_v, v)
             if bound >= cutoff:
                 return True
         else:
             numbers[IDLE] += 1.0
-        covered[:] = 0.0
-        opened[:] = 0.0
+        wipe(covered, 0.0)
+        wipe(opened, 0.0)
         cover_rows(share, pick, site_start, taken, rest, load, row, covered, opened)
         if share < 1.0:
             cover_rows(1.0 - share, pick_more, site_start, taken, rest, load, row, covered, opened)
@@ -211,7 +215,7 @@ def ascend(problem, space, state, charge, fewest, most, numbers, steps, target, 
         if numbers[IDLE] >= patience:
             numbers[FACTOR] *= 0.5
             numbers[IDLE] = 0.0
-            v[:] = best_v
+            copy(v, best_v)
             bound = numbers[BEST]
         if not _follow(numbers, v, way, covered, demand, target, bound):
             return True

@@ -12,6 +12,20 @@ FREE, OPEN, SHUT = 0, 1, -1
 
 
 @compiled
+def copy(target, source):
+    """Copy a flat array: a plain loop compiles ten times as fast as a slice and runs as fast."""
+    for k in range(target.shape[0]):
+        target[k] = source[k]
+
+
+@compiled
+def wipe(target, content):
+    """Set every element of a flat array."""
+    for k in range(target.shape[0]):
+        target[k] = content
+
+
+@compiled
 def _swap(margin, load, row, a, b):
     gain, amount, r = margin[a], load[a], row[a]
     margin[a], load[a], row[a] = margin[b], load[b], row[b]

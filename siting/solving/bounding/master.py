@@ -15,10 +15,24 @@ from __future__ import annotations
 import numpy as np
 
 from siting.solving.bounding.compiled import compiled
-from siting.solving.bounding.knapsack import FREE, OPEN, SHUT, fill
+from siting.solving.bounding.knapsack import FREE, OPEN, SHUT, copy, fill, wipe
 
 WINDOW = 48
 """Items on each side of the edge that are exchanged for a first cover."""
+
+
+@compiled
+def _edge_price(reduced, state, rank):
+    """Return the `rank`-th lowest reduced cost of the free sites."""
+    sites = state.shape[0]
+    worth, one, order = np.empty(sites), np.empty(sites), np.empty(sites, np.int32)
+    count = 0
+    for site in range(sites):
+        if state[site] == FREE:
+            worth[count], one[count], order[count] = -reduced[site], 1.0, site
+            count += 1
+    k, _ = fill(worth, one, order, 0, count, rank - 0.5, 0.0)
+    return -worth[k]
 
 
 @compiled
@@ -48,15 +62,17 @@ def pick_options(cost, capacity, site_option, state, fewest, most, mu, reduced, 
             held += 1
         elif least < 0.0:
             below += 1
-    free = reduced[state == FREE]
-    wanted = min(min(max(held + below, fewest), most) - held, free.shape[0])
+    free = 0
+    for site in range(state.shape[0]):
+        free += state[site] == FREE
+    wanted = min(max(min(max(held + below, fewest), most) - held, 0), free)
     rate, ties = 0.0, 0
     if wanted != below:
+        rate = _edge_price(reduced, state, max(wanted, 1))
         if wanted > 0:
-            rate = np.partition(free, wanted - 1)[wanted - 1]
-            ties = wanted - np.sum(free < rate)
-        else:
-            rate = np.min(free)
+            ties = wanted
+            for site in range(state.shape[0]):
+                ties -= state[site] == FREE and reduced[site] < rate
     for site in range(state.shape[0]):
         if state[site] == FREE:
             price = reduced[site]
@@ -146,7 +162,7 @@ def price_cover(cost, capacity, site_option, state, need, fewest, most, mu, redu
         return value, mu, 0.0, share
     value, total, rate = pick_options(cost, capacity, site_option, state, fewest, most, 0.0, reduced, pick)
     if total >= need:
-        pick_more[:] = pick
+        copy(pick_more, pick)
         return value, 0.0, rate, 1.0
     low, low_value, low_slope = 0.0, value, need - total
     high = mu if mu > 0.0 else 1e-3
@@ -156,7 +172,7 @@ def price_cover(cost, capacity, site_option, state, need, fewest, most, mu, redu
         if total >= need or high > 1e30:
             break
         low, low_value, low_slope = high, value, need - total
-        pick[:] = pick_more
+        copy(pick, pick_more)
         high *= 2.0
     high_value, high_slope = value, need - total
     other = np.empty_like(pick)
@@ -171,10 +187,10 @@ def price_cover(cost, capacity, site_option, state, need, fewest, most, mu, redu
             break
         if total >= need:
             high, high_value, high_slope = mu, value, need - total
-            pick_more[:] = other
+            copy(pick_more, other)
         else:
             low, low_value, low_slope = mu, value, need - total
-            pick[:] = other
+            copy(pick, other)
     value, total, rate = pick_options(cost, capacity, site_option, state, fewest, most, mu, reduced, other)
     share = -high_slope / (low_slope - high_slope) if low_slope > high_slope else 0.0
     return value + mu * need, mu, rate, share
@@ -225,8 +241,8 @@ def _first_cover(room, total, order, cost, capacity, taken):
                     best = paid
                     out, into = (a if a < size else -1), (b if b >= size else -1)
                     keep = size
-    taken[:] = False
-    taken[:keep] = True
+    for k in range(items):
+        taken[k] = k < keep
     if out >= 0:
         taken[out] = False
     if into >= 0:
@@ -263,7 +279,11 @@ def whole_cover(cost, capacity, state, need, rate, count, slack, limit, pick):
             items += 1
     if room <= 0.0:
         return base, base
-    order = order[:items][np.argsort(ratio[:items])]
+    sorted_items = np.argsort(ratio[:items])
+    listed = order.copy()
+    order = np.empty(items, np.int32)
+    for k in range(items):
+        order[k] = listed[sorted_items[k]]
     price = np.empty(sites)
     total, spent = np.zeros(items + 1), np.zeros(items + 1)
     for k in range(items):
@@ -275,7 +295,8 @@ def whole_cover(cost, capacity, state, need, rate, count, slack, limit, pick):
         return np.inf, np.inf
     taken = np.zeros(items, np.bool_)
     best_taken = np.zeros(items, np.bool_)
-    other = np.full(items, np.inf)
+    other = np.empty(items)
+    wipe(other, np.inf)
     best = _first_cover(room, total, order, price, capacity, best_taken)
     least, paid, k, tried = best, 0.0, 0, 0
     while True:
@@ -308,8 +329,8 @@ def whole_cover(cost, capacity, state, need, rate, count, slack, limit, pick):
         if room <= 0.0:
             if paid < best:
                 best = paid
-                best_taken[:] = False
-                best_taken[:k] = taken[:k]
+                for j in range(items):
+                    best_taken[j] = j < k and taken[j]
             least = min(least, paid)
         elif tried >= limit:
             least = min(least, paid + _least_cost(room, k, total, spent, order, price, capacity))

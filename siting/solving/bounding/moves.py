@@ -12,14 +12,14 @@ move improves, or when its trials are used up.
 """
 
 # mypy: allow-untyped-defs
-# ruff: noqa: ANN001, ANN201, PLR0913, PLR0917, PLR0912, PLR0915, C901 - compiled loops: the compiler
+# ruff: noqa: ANN001, ANN201, ANN202, PLR0913, PLR0917, PLR0912, PLR0915, C901 - compiled loops: the compiler
 # finds the types, and takes arrays and work space one by one.
 from __future__ import annotations
 
 import numpy as np
 
 from siting.solving.bounding.compiled import compiled
-from siting.solving.bounding.knapsack import fill
+from siting.solving.bounding.knapsack import copy, fill, wipe
 from siting.solving.bounding.simplex import (
     COST,
     DEPTH,
@@ -100,6 +100,21 @@ def price_moves(problem, flows, chosen, fixed, space, drop, add, worth, second):
 
 
 @compiled
+def _longer(array, size):
+    """Return the array with room for `size` elements."""
+    longer = np.empty(size, array.dtype)
+    copy(longer[: array.shape[0]], array)
+    return longer
+
+
+@compiled
+def _keep(target, source):
+    """Copy the tree or the values of the flows."""
+    for line in range(target.shape[0]):
+        copy(target[line], source[line])
+
+
+@compiled
 def list_moves(problem, flows, chosen, drop, add, worth, second, count, fewest, most, floor):
     """Return promise, site to shut (-1 = none) and site to open of every move that may save more than `floor`."""
     row_start, lane_site, lane_cost, _, _, capacity, demand = problem
@@ -109,7 +124,9 @@ def list_moves(problem, flows, chosen, drop, add, worth, second, count, fewest, 
     for site in range(sites):
         if is_open[site]:
             total += limits[site]
-    need = np.sum(demand) * (1.0 - 1e-12)
+    need = 0.0
+    for r in range(demand.shape[0]):
+        need += demand[r] * (1.0 - 1e-12)
     size = 1024
     promise, out, into = np.empty(size), np.empty(size, np.int32), np.empty(size, np.int32)
     found = 0
@@ -132,7 +149,7 @@ def list_moves(problem, flows, chosen, drop, add, worth, second, count, fewest, 
             continue
         base = drop[gone] if gone >= 0 else 0.0
         left = total - (limits[gone] if gone >= 0 else 0.0)
-        bonus[:] = 0.0
+        wipe(bonus, 0.0)
         if gone >= 0:
             for k in range(start[gone], start[gone + 1]):
                 r = member[k]
@@ -155,13 +172,16 @@ def list_moves(problem, flows, chosen, drop, add, worth, second, count, fewest, 
                 continue
             if found == size:
                 size *= 2
-                promise = np.append(promise, np.empty(found))
-                out = np.append(out, np.empty(found, np.int32))
-                into = np.append(into, np.empty(found, np.int32))
+                promise, out, into = _longer(promise, size), _longer(out, size), _longer(into, size)
             promise[found], out[found], into[found] = gain, gone, site
             found += 1
-    order = np.argsort(-promise[:found])
-    return promise[:found][order], out[:found][order], into[:found][order]
+    for k in range(found):
+        promise[k] = -promise[k]
+    order = np.argsort(promise[:found])
+    first, second_out, second_into = np.empty(found), np.empty(found, np.int32), np.empty(found, np.int32)
+    for k in range(found):
+        first[k], second_out[k], second_into[k] = -promise[order[k]], out[order[k]], into[order[k]]
+    return first, second_out, second_into
 
 
 @compiled
@@ -195,7 +215,9 @@ def descend(problem, flows, saved, chosen, fixed, space, fewest, most, far, tole
     worth, second = np.empty(rows), np.empty(rows)
     floor = 1e-9 * abs(numbers[0])
     while True:
-        count = np.sum(is_open)
+        count = 0
+        for site in range(sites):
+            count += is_open[site]
         price_moves(problem, flows, chosen, fixed, space, drop, add, worth, second)
         promise, out, into = list_moves(problem, flows, chosen, drop, add, worth, second, count, fewest, most, floor)
         moved = False
@@ -204,9 +226,9 @@ def descend(problem, flows, saved, chosen, fixed, space, fewest, most, far, tole
                 return False
             trials -= 1
             numbers[1] += 1.0
-            saved[0][:] = tree
-            saved[1][:] = value
-            saved[2][:] = at_top
+            _keep(saved[0], tree)
+            _keep(saved[1], value)
+            copy(saved[2], at_top)
             gone, site = out[k], into[k]
             if gone >= 0:
                 is_open[gone] = False
@@ -236,9 +258,9 @@ def descend(problem, flows, saved, chosen, fixed, space, fewest, most, far, tole
                 numbers[1] = 0.0
                 moved = True
                 break
-            tree[:] = saved[0]
-            value[:] = saved[1]
-            at_top[:] = saved[2]
+            _keep(tree, saved[0])
+            _keep(value, saved[1])
+            copy(at_top, saved[2])
             if gone >= 0:
                 is_open[gone] = True
                 root_cost[gone] = 0.0

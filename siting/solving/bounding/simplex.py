@@ -27,6 +27,7 @@ from __future__ import annotations
 import numpy as np
 
 from siting.solving.bounding.compiled import compiled
+from siting.solving.bounding.knapsack import wipe
 
 PARENT, FIRST, NEXT, BEFORE, DEPTH = 0, 1, 2, 3, 4
 FLOW, COST, PRICE = 0, 1, 2
@@ -273,9 +274,11 @@ def begin(tree, value, capacity, at_top, root_cost, is_open, row_start, lane_sit
     """Set up the first basis: each row whole at its cheapest open site with room, else at the overflow."""
     sites = is_open.shape[0]
     root = sites + 1
-    tree[:] = NONE
-    value[:] = 0.0
-    at_top[:] = False
+    for line in range(tree.shape[0]):
+        wipe(tree[line], NONE)
+    for line in range(value.shape[0]):
+        wipe(value[line], 0.0)
+    wipe(at_top, False)  # noqa: FBT003 - compiled functions take no names
     tree[DEPTH, root] = 0
     for site in range(sites + 1):
         root_cost[site] = 0.0 if site < sites and is_open[site] else far
@@ -283,8 +286,9 @@ def begin(tree, value, capacity, at_top, root_cost, is_open, row_start, lane_sit
         tree[DEPTH, site] = 1
         value[COST, site] = root_cost[site]
         value[PRICE, site] = root_cost[site]
-    order = np.argsort(-demand)
-    for r in order:
+    order = np.argsort(demand)
+    for k in range(order.shape[0] - 1, -1, -1):
+        r = order[k]
         node = sites + 2 + r
         home, cost = sites, 0.0
         for lane in range(row_start[r], row_start[r + 1]):
