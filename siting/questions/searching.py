@@ -224,10 +224,13 @@ class _Search:
         parts |= {part for name in restriction.pinned - there for part in self._cheapest_part(name)}
         fitting = self._hints.fitting(restriction)
         begun = [self._begun(network, at_hand) for at_hand in (parts, fitting) if at_hand is not None]
-        if not any(begun) and restriction.out and not network.single_source.any():
-            tried = stand_ins(self._bench.study, self._bench.network, incumbent, restriction.out)
-            begun = [self._begun(network, at_hand) for at_hand in tried]
-        return min((found for found in begun if found is not None), key=_cost, default=None)
+        best = min((found for found in begun if found is not None), key=_cost, default=None)
+        if best is not None or not restriction.out or network.single_source.any():
+            return best
+        tried = stand_ins(self._bench.study, self._bench.network, incumbent, restriction.out)
+        return next(
+            (found for found in (self._begun(network, at_hand) for at_hand in tried) if found is not None), None
+        )
 
     def _begun(self, network: Network, parts: frozenset[tuple[str, str]]) -> _Found | None:
         """Return the plan with these parts, where it is allowed and serves everything."""

@@ -27,8 +27,8 @@ if TYPE_CHECKING:
 
     Parts = frozenset[tuple[str, str]]
 
-STAND_INS = 6
-"""Sites or suppliers tried in the place of what is held out; each costs one linear program of the flows."""
+STAND_INS = 4
+"""Sites or suppliers tried in turn in the place of what is held out; each costs one linear program of the flows."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

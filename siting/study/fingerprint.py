@@ -23,6 +23,12 @@ _FORM = b"siting study, form 2\n"
 _known: WeakKeyDictionary[Study, str] = WeakKeyDictionary()
 """Fingerprints of studies still in use, which never change: each is asked for several times."""
 
+TABLES_KEPT = 16
+"""Tables whose lines are kept: those of two studies, the oldest forgotten first."""
+
+_tables: dict[int, tuple[tuple[object, ...], bytes]] = {}
+"""By identity, each with the table itself, so that no other can take its place in memory meanwhile."""
+
 
 def fingerprint(study: Study) -> str:
     """
@@ -54,9 +60,18 @@ def _digest(study: Study) -> str:
         if name == "lanes":
             _add_lanes(digest, study.lanes)
         else:
-            for line in sorted(_text(_row(row)) for row in getattr(study, name)):
-                digest.update(line)
+            digest.update(_lines(getattr(study, name)))
     return digest.hexdigest()
+
+
+def _lines(table: tuple[object, ...]) -> bytes:
+    """Return the rows of a table as sorted lines; studies made from one another share most of their tables."""
+    kept = _tables.pop(id(table), None)
+    lines = b"".join(sorted(_text(_row(row)) for row in table)) if kept is None else kept[1]
+    _tables[id(table)] = table, lines
+    while len(_tables) > TABLES_KEPT:
+        _tables.pop(next(iter(_tables)), None)
+    return lines
 
 
 def _row(row: object) -> dict[str, object]:

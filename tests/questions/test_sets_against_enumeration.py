@@ -9,6 +9,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
+import numpy as np
 import pytest
 from hypothesis import given, settings
 
@@ -18,6 +19,8 @@ from siting.questions.counts import counts
 from siting.questions.counts_result import FIXED
 from siting.questions.restriction import parts_of
 from siting.questions.runners_up import runners_up
+from siting.study.tables import SiteRow
+from tests.building import one_echelon
 from tests.questions.asked import EXACT
 from tests.whole.enumeration import Enumeration
 from tests.whole.generator import studies
@@ -138,6 +141,18 @@ def test_runners_up_with_sizes_least_volumes_pins_and_rules(study: Study) -> Non
 def test_runners_up_with_single_sources_and_limits(study: Study) -> None:
     """Limits on the whole hold in every answer."""
     check_runners_up(study)
+
+
+@pytest.mark.parametrize("seed", range(6))
+def test_runners_up_of_dense_studies(seed: int) -> None:
+    """With five sites that reach all customers there are many answers, and many sets with a site nobody uses."""
+    draws = np.random.default_rng(seed)
+    sites = [
+        SiteRow(site=f"S{n}", yearly_charge=float(draws.integers(0, 6)), capacity=float(draws.integers(6, 30)))
+        for n in range(5)
+    ]
+    demand = {f"C{n}": float(draws.integers(1, 5)) for n in range(5)}
+    check_runners_up(one_echelon("dense", sites, demand, draws.integers(1, 7, size=(5, 5)).tolist()))
 
 
 def check_counts(study: Study) -> None:
