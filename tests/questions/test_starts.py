@@ -59,7 +59,7 @@ def test_stand_ins_take_the_place_of_what_is_out() -> None:
 
 
 def test_regret_is_what_the_next_site_costs_more_less_the_charge() -> None:
-    """From St. Louis the lanes of its customers cost more or less than from Kansas City, whose charge of 500 is saved."""
+    """From St. Louis its customers are served dearer or cheaper, and the charge of Kansas City, 500, is saved."""
     study = instances.distribution_centres()
     plan = Resolver(study, settings=EXACT).plan().plan
     assert plan is not None
