@@ -180,13 +180,13 @@ class _Hunt:
                 if finder is None:
                     finder = NextBest(bench.network, limit=limit, saving=self._saving)
                     for each in ruled_out[:-1]:
-                        finder.rule_out(each.used)
-                finder.rule_out(ruled_out[-1].used)
+                        finder.rule_out(each.decisions, each.used)
+                finder.rule_out(ruled_out[-1].decisions, ruled_out[-1].used)
                 kept = self._search(finder, limit)
                 if kept.within:
                     self._store.put(self._key(ruled_out, limit), kept)
             elif finder is not None:
-                finder.rule_out(ruled_out[-1].used)
+                finder.rule_out(ruled_out[-1].decisions, ruled_out[-1].used)
             complete_to = _higher(complete_to, limit if kept.impossible else kept.bound)
             if kept.plan is None or kept.plan.cost > limit + self._saving:
                 break

@@ -4,13 +4,15 @@ The best plan but for those found already: the whole model with each answer foun
 Two sets of decisions are the same answer where what moves uses the same options and suppliers. Let U be what an answer
 uses and F(U) what moving costs with U alone. Decisions D that hold all of U can move as that answer does, so they move
 at F(U) or cheaper; where they are no cheaper, whatever else D opens is of no use and D is the same answer. Each answer
-found is therefore ruled out by two rows, for the binaries y of options and suppliers::
+found is therefore ruled out by one row on the binaries of options and suppliers::
 
     moving cost <= F(U) - least saving + M (number of U not in D + number in D outside U that must move something)
-    number of U not in D + number in D outside U >= 1
 
 with M = (most that moving may cost within the limit asked) - F(U) + least saving, the smallest constant that is valid.
-What has a least volume is always used once it is open, so that opening it makes another answer.
+What has a least volume is always used once it is open, so that opening it makes another answer. A second row rules out
+the very decisions found, so that no tolerance of a solver can bring them back::
+
+    number of decisions that differ >= 1
 """
 
 from __future__ import annotations
@@ -72,20 +74,21 @@ class NextBest:
         self._model = build_model(network)
         self._count = 0
 
-    def rule_out(self, used: Used) -> None:
-        """Rule out every set of decisions that is the same answer as one found."""
+    def rule_out(self, decisions: Decisions, used: Used) -> None:
+        """Rule out decisions found, and all others that are the same answer."""
         self._count += 1
         columns = self._model.columns
         inside = np.concatenate([columns.option[used.options], columns.supplier[used.suppliers]]).tolist()
-        outside = np.concatenate([columns.option[~used.options], columns.supplier[~used.suppliers]]).tolist()
         must_move = np.concatenate(
             [
                 columns.option[~used.options & options_must_move(self._network)],
                 columns.supplier[~used.suppliers & suppliers_must_move(self._network)],
             ]
         ).tolist()
-        apart = [(column, -1.0) for column in inside] + [(column, 1.0) for column in outside]
-        self._add("apart", apart, AT_LEAST, 1.0 - len(inside))
+        taken = np.concatenate([decisions.option_open, decisions.supplier_signed])
+        every = np.concatenate([columns.option, columns.supplier])
+        apart = list(zip(every.tolist(), np.where(taken, -1.0, 1.0).tolist(), strict=True))
+        self._add("apart", apart, AT_LEAST, 1.0 - float(taken.sum()))
         room = max(self._most_moving() - used.moving, 0.0) + self._saving
         terms = [*self._moving(), *((column, room) for column in inside), *((column, -room) for column in must_move)]
         self._add("cheaper", terms, AT_MOST, used.moving - self._saving + room * len(inside))
