@@ -1,9 +1,10 @@
 """
-Solves that run beside the pages, a process each.
+Solves and follow-up questions that run beside the pages, a process each.
 
-A job is started once per key (same study, same settings), is found again by any page that asks with that key, and dies
-with the server: the worker stops when its standard input ends. All files of a job, those of its solver too, lie in one
-folder, which the worker removes where the server cannot. Nothing here imports Streamlit.
+A job is started once per key (same study, settings, question and parameters), is found again by any page that asks with
+that key, and dies with the server: the worker stops when its standard input ends. All files of a job, those of its
+solver too, lie in one folder, which the worker removes where the server cannot. The searches that questions make are
+kept for the next question on the same study. Nothing here imports Streamlit.
 """
 
 from __future__ import annotations
@@ -20,17 +21,20 @@ import sys
 import tempfile
 import threading
 import time
+from collections import OrderedDict
 from dataclasses import asdict, dataclass, field, replace
 from enum import StrEnum
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from siting.browse.tasks import NOTHING, PLAN, told_key
+from siting.browse.worker import KEPT_FILE, PLAN_FILE
 from siting.listener import Progress
 from siting.study.fingerprint import fingerprint
 from siting.study.write import write_study
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
+    from collections.abc import Callable, Mapping
 
     from siting.study.tables import Study
 
@@ -39,8 +43,11 @@ logger = logging.getLogger(__name__)
 STOP_GRACE_S = 10.0
 """Seconds a worker gets to hand over its best plan after Stop, before it is killed."""
 
-KEEP_ENDED = 16
+KEEP_ENDED = 32
 """Ended jobs kept in memory; older ones are forgotten first."""
+
+KEEP_SEARCHES = 8
+"""Studies whose questions' searches are kept; those not asked about for longest are forgotten first."""
 
 
 class JobState(StrEnum):
@@ -67,9 +74,15 @@ class JobView:
     history: tuple[Progress, ...]
     """Every improvement, oldest first."""
     answer: dict[str, Any] | None
-    """The object of plan.json once done."""
+    """The object of plan.json once done, or the JSON of the question's result."""
     error: str
     """Why it failed, fit for the user; empty otherwise."""
+    question: str = PLAN
+    """What is asked."""
+    parameters: Mapping[str, Any] = field(default_factory=dict)
+    """What it is asked with."""
+    plan: dict[str, Any] | None = None
+    """The object of plan.json that a question is about."""
 
     @property
     def running(self) -> bool:
@@ -85,6 +98,9 @@ class _Job:
     number: int
     study: Study
     folder: Path
+    question: str
+    parameters: Mapping[str, Any]
+    plan: dict[str, Any] | None
     started: float = field(default_factory=time.monotonic)
     process: subprocess.Popen[str] | None = None
     """None until it has been started."""
@@ -108,30 +124,68 @@ class _Job:
                 history=tuple(self.history),
                 answer=self.answer,
                 error=self.error,
+                question=self.question,
+                parameters=self.parameters,
+                plan=self.plan,
             )
 
 
 _jobs: dict[str, _Job] = {}
+_searches: OrderedDict[str, dict[str, Any]] = OrderedDict()
+"""What questions have searched, by the fingerprint of the study asked about."""
 _guard = threading.Lock()
 _numbers = itertools.count(1)
 
 
-def job_key(study: Study) -> str:
-    """Return the key of solving this study: its fingerprint with its `[solve]` settings."""
+def job_key(study: Study, question: str = PLAN, parameters: Mapping[str, Any] = NOTHING) -> str:
+    """Return the key of asking this of the study: its fingerprint, its `[solve]` settings, question and parameters."""
     solve = study.settings.solve
-    return f"{fingerprint(study)}:{solve.engine}:{solve.gap!r}:{solve.time_limit_s!r}"
+    key = f"{fingerprint(study)}:{solve.engine}:{solve.gap!r}:{solve.time_limit_s!r}"
+    return key if question == PLAN else f"{key}:{question}:{json.dumps(parameters, sort_keys=True)}"
 
 
-def start_job(study: Study) -> JobView:
-    """Start solving, or return the job that already runs for the same study and settings."""
-    key = job_key(study)
+def start_job(
+    study: Study,
+    question: str = PLAN,
+    parameters: Mapping[str, Any] = NOTHING,
+    *,
+    plan: dict[str, Any] | None = None,
+) -> JobView:
+    """
+    Start solving or asking, or return the job that already runs under the same key.
+
+    Parameters
+    ----------
+    study
+        What it is about.
+    question
+        `PLAN`, or one of `siting.browse.tasks.QUESTIONS`.
+    parameters
+        What the question is asked with; values for `json.dumps`.
+    plan
+        The object of plan.json of the study, which a question is about.
+
+    Returns
+    -------
+    job
+        As it is now.
+    """
+    key = job_key(study, question, parameters)
     with _guard:
         job = _jobs.get(key)
         if job is not None and job.view().running:
             return job.view()
         _forget_old()
         folder = Path(tempfile.mkdtemp(prefix="siting-job-"))
-        _jobs[key] = job = _Job(key=key, number=next(_numbers), study=study, folder=folder)
+        _jobs[key] = job = _Job(
+            key=key,
+            number=next(_numbers),
+            study=study,
+            folder=folder,
+            question=question,
+            parameters=dict(parameters),
+            plan=plan,
+        )
     threading.Thread(target=_run, args=(job,), name=f"siting-job-{job.number}", daemon=True).start()
     return job.view()
 
@@ -163,6 +217,7 @@ def _run(job: _Job) -> None:
     """Start the worker and follow it to its end; runs in a thread of its own."""
     try:
         write_study(job.study, job.folder / "study")
+        _hand_over(job)
         errors = _follow(job, _launch(job))
     except Exception as error:
         logger.exception("a solve could not be run")
@@ -175,6 +230,18 @@ def _run(job: _Job) -> None:
             job.error = job.error or _last_words(job, errors)
             job.state = JobState.FAILED
     shutil.rmtree(job.folder, ignore_errors=True)
+
+
+def _hand_over(job: _Job) -> None:
+    """Write what a question builds on: the plan, and the searches of questions before it."""
+    if job.question == PLAN:
+        return
+    if job.plan is not None:
+        (job.folder / PLAN_FILE).write_text(json.dumps(job.plan), encoding="utf-8")
+    with _guard:
+        kept = list(_searches.get(fingerprint(job.study), {}).values())
+    if kept:
+        (job.folder / KEPT_FILE).write_text(json.dumps(kept), encoding="utf-8")
 
 
 def _launch(job: _Job) -> subprocess.Popen[str]:
@@ -191,7 +258,12 @@ def _launch(job: _Job) -> subprocess.Popen[str]:
     )
     with job.lock:
         job.process = process
-        _tell(job, json.dumps(asdict(job.study.settings.solve)))
+        order = {
+            "question": job.question,
+            "parameters": job.parameters,
+            "settings": asdict(job.study.settings.solve),
+        }
+        _tell(job, json.dumps(order))
         if job.state is JobState.STOPPING:
             _tell(job, "stop")
     return process
@@ -230,7 +302,11 @@ def _follow(job: _Job, process: subprocess.Popen[str]) -> list[str]:
             event = json.loads(line)
         except ValueError:
             continue
-        if isinstance(event, dict):
+        if not isinstance(event, dict):
+            continue
+        if event.get("event") == "kept":
+            _keep_search(job, event)
+        else:
             _take(job, event)
     process.wait()
     drain.join(timeout=1.0)
@@ -262,6 +338,17 @@ def _take(job: _Job, event: dict[str, Any]) -> None:
                 job.error = event["message"]
 
 
+def _keep_search(job: _Job, event: dict[str, Any]) -> None:
+    """Keep a search for the questions on the same study that come after."""
+    mark = fingerprint(job.study)
+    told = {"key": event["key"], "resolved": event["resolved"]}
+    with _guard:
+        _searches.setdefault(mark, {})[told_key(told)] = told
+        _searches.move_to_end(mark)
+        while len(_searches) > KEEP_SEARCHES:
+            _searches.popitem(last=False)
+
+
 def _best(better: Callable[[float, float], float], one: float | None, other: float | None) -> float | None:
     """Return the better of two numbers, either of which may be missing."""
     if one is None or other is None:
@@ -272,7 +359,9 @@ def _best(better: Callable[[float, float], float], one: float | None, other: flo
 def _last_words(job: _Job, errors: list[str]) -> str:
     """Return why there is no answer, for the user; called under the job's lock."""
     if job.state is JobState.STOPPING:
-        return f"The search did not hand over a plan within {STOP_GRACE_S:g} s of Stop and was ended. Run it again."
+        return (
+            f"The search did not hand over what it had within {STOP_GRACE_S:g} s of Stop and was ended. Run it again."
+        )
     last = errors[-1].strip() if errors else ""
     code = job.process.returncode if job.process else None
     how = "could not be started" if code is None else f"ended without an answer (exit code {code})"

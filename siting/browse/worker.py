@@ -1,9 +1,10 @@
 """
-One solve in a process of its own: `python -u -m siting.browse.worker FOLDER`.
+One solve or follow-up question in a process of its own: `python -u -m siting.browse.worker FOLDER`.
 
-FOLDER holds the study in a folder `study`; it is removed at the end. The first line on standard input holds the
-`[solve]` settings as JSON; a line `stop`, or the end of standard input, asks for the best plan so far. Standard output
-carries one JSON object a line: `progress`, then `answer` or `error`.
+FOLDER holds the study in a folder `study`, its plan in `plan.json` and searches kept from questions before in
+`kept.json`, where there are any; it is removed at the end. The first line on standard input holds question, parameters
+and `[solve]` settings as JSON; a line `stop`, or the end of standard input, asks for what is done so far. Standard
+output carries one JSON object a line: `progress` and `kept` (a search worth keeping), then `answer` or `error`.
 """
 
 from __future__ import annotations
@@ -25,6 +26,8 @@ from siting.listener import Progress, Stop
 
 if TYPE_CHECKING:
     from typing import TextIO
+
+PLAN_FILE, KEPT_FILE = "plan.json", "kept.json"
 
 LEAST_PAUSE_S = 0.1
 """Seconds between two progress lines that bring nothing new."""
@@ -60,7 +63,7 @@ class _Lines:
         self.write({"event": "progress", "progress": asdict(progress)})
 
     def end(self, progress: Progress) -> None:
-        self.write({"event": "progress", "progress": asdict(replace(progress, phase="auditing the plan"))})
+        self.write({"event": "progress", "progress": asdict(replace(progress, phase="handing over"))})
 
 
 def _wait_for_stop(stop: Stop, folder: Path) -> None:
@@ -77,34 +80,51 @@ def _wait_for_stop(stop: Stop, folder: Path) -> None:
 
 
 def main() -> int:
-    """Solve the study in the folder named on the command line, write what happens, and remove the folder."""
+    """Answer what is asked of the study in the folder named, write what happens, and remove the folder."""
     folder = Path(sys.argv[1])
     try:
-        return _solve(folder)
+        return _work(folder)
     finally:
         shutil.rmtree(folder, ignore_errors=True)
 
 
-def _solve(folder: Path) -> int:
-    from siting.plan.audit import AuditReport  # noqa: PLC0415 - the heavy imports come once the folder is looked after
-    from siting.plan.contract import answer_to_json  # noqa: PLC0415
-    from siting.solving.solve import solve  # noqa: PLC0415
+def _work(folder: Path) -> int:
+    from siting.browse.tasks import ToldStore, answer_task  # noqa: PLC0415 - heavy: once the folder is looked after
+    from siting.plan.contract import answer_from_json  # noqa: PLC0415
     from siting.study.read import read_study  # noqa: PLC0415
     from siting.study.settings import SolveSettings  # noqa: PLC0415
 
     lines = _Lines(sys.stdout)
     stop = Stop()
-    settings = SolveSettings(**json.loads(sys.stdin.readline()))
+    order = json.loads(sys.stdin.readline())
     threading.Thread(target=_wait_for_stop, args=(stop, folder), daemon=True).start()
     try:
+        settings = SolveSettings(**order["settings"])
         study = read_study(folder / "study")
-        answer = solve(study, settings, listener=lines, stop=stop)
+        plan, kept = _read(folder / PLAN_FILE), _read(folder / KEPT_FILE)
+        store = ToldStore(lambda told: lines.write({"event": "kept", **told}))
+        for told in kept or ():
+            store.take(told)
+        answer = answer_task(
+            order["question"],
+            study,
+            answer_from_json(plan) if plan is not None else None,
+            order["parameters"],
+            settings=settings,
+            store=store,
+            listener=lines,
+            stop=stop,
+        )
     except SitingError as error:
         lines.write({"event": "error", "message": str(error)})
         return error.exit_code
-    report = AuditReport(passed=True, faults=()) if answer.plan else None  # `solve` raises where it fails
-    lines.write({"event": "answer", "answer": answer_to_json(answer, report)})
+    lines.write({"event": "answer", "answer": answer})
     return 0
+
+
+def _read(path: Path) -> Any:  # noqa: ANN401 - a JSON value
+    """Return what a file holds; None where it is not there."""
+    return json.loads(path.read_text(encoding="utf-8")) if path.is_file() else None
 
 
 if __name__ == "__main__":

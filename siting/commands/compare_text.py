@@ -5,7 +5,8 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from siting.commands.layout import bullets, paragraph, short, table
-from siting.plan.words import money, percent, percent_up
+from siting.plan.words import percent, percent_up
+from siting.questions.words import comparison_headline
 
 if TYPE_CHECKING:
     from siting.questions.compare_result import Comparison, Figures, VerdictRow
@@ -33,36 +34,15 @@ def comparison_text(found: Comparison) -> str:
         Headline, figures and cost lines, verdicts that differ, customers that change site.
     """
     heads, key = _heads(found)
-    parts = [paragraph(headline_of(found)), key, _figures(found, heads), _costs(found, heads), _verdicts(found, heads)]
+    parts = [
+        paragraph(comparison_headline(found)),
+        key,
+        _figures(found, heads),
+        _costs(found, heads),
+        _verdicts(found, heads),
+    ]
     parts.append(_customers(found, heads))
     return "\n\n".join(part for part in parts if part)
-
-
-def headline_of(found: Comparison) -> str:
-    """
-    Return the one sentence that says how the plans compare.
-
-    Parameters
-    ----------
-    found
-        What was compared.
-
-    Returns
-    -------
-    sentence
-        The cheapest, by how much, and how many verdicts and customers differ.
-    """
-    ranked = sorted(found.plans, key=lambda plan: plan.cost)
-    first, second = ranked[0], ranked[1]
-    gap = second.cost - first.cost
-    if abs(gap) <= 1e-6 * abs(second.cost):
-        costs = f"{first.name} and {second.name} cost the same"
-    else:
-        costs = f"{first.name} is the cheapest, {money(gap, found.currency)} a year less than {second.name}"
-    differ, moved = len(found.differing), len(found.customers)
-    verdicts = f"{differ} verdict{'' if differ == 1 else 's'} differ{'s' if differ == 1 else ''}"
-    customers = f"{moved} customer{'' if moved == 1 else 's'} change{'s' if moved == 1 else ''} site"
-    return f"{costs}; {verdicts} and {customers}."
 
 
 def _heads(found: Comparison) -> tuple[list[str], str]:

@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 from siting.commands.layout import bullets, paragraph, table
 from siting.plan.words import money, percent, percent_up
+from siting.questions.words import counts_headline
 
 if TYPE_CHECKING:
     from siting.questions.counts_result import CountLine, Counts
@@ -30,41 +31,7 @@ def counts_text(found: Counts) -> str:
     """
     if found.why_none:
         return "\n\n".join(paragraph(sentence) for sentence in found.why_none)
-    return "\n\n".join([paragraph(headline_of(found)), _table(found), bullets(_notes(found))])
-
-
-def headline_of(found: Counts) -> str:
-    """
-    Return the one sentence that says what was found.
-
-    Parameters
-    ----------
-    found
-        What was found.
-
-    Returns
-    -------
-    sentence
-        The best number, and what one more and one fewer would cost.
-    """
-    best = found.best
-    if best is None or best.cost is None:
-        return "No plan with any of these numbers of sites was found."
-    near = {line.count: line for line in found.lines}
-    said = []
-    for word, other in (("fewer", near.get(best.count - 1)), ("more", near.get(best.count + 1))):
-        if other is None:
-            continue
-        if other.outcome == "impossible":
-            said.append(f"one {word} is impossible")
-        elif other.cost is not None:
-            said.append(f"one {word} costs {money(other.cost - best.cost, found.currency)} a year more")
-    things = "site is" if best.count == 1 else "sites are"
-    return (
-        f"{best.count} {things} best, at {money(best.cost, found.currency)} a year"
-        + "".join(f"{', ' if at == 0 else ' and '}{part}" for at, part in enumerate(said))
-        + "."
-    )
+    return "\n\n".join([paragraph(counts_headline(found)), _table(found), bullets(_notes(found))])
 
 
 def _table(found: Counts) -> str:
