@@ -17,6 +17,7 @@ from siting.commands import (
     counts,
     headroom,
     plan,
+    rollup,
     runners_up,
     template,
     zones,
@@ -40,6 +41,7 @@ COMMANDS = (
     map_command,
     template,
     circuity,
+    rollup,
     zones,
     browse,
 )
