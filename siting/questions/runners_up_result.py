@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from siting.plan.contract import summary_to_json
-from siting.plan.plan import Answer, Plan, SupplierVerdict
+from siting.plan.plan import Answer, Plan, SiteVerdict, SupplierVerdict
 from siting.plan.proof import PROVED_GAP, Outcome, gap_of
 
 Part = tuple[str, str]
@@ -175,34 +175,31 @@ def differs_line(best: RunnerUp | None, plan: Plan, sites: tuple[Part, ...], sup
         for name in after
         if before.get(name, after[name]) != after[name]
     ]
-    parts = [
-        *resized,
-        _swap([name for name in after if name not in before], [name for name in before if name not in after]),
-        _suppliers(best, plan, suppliers),
-    ]
+    parts = [*resized, _sites(best, plan, sites), _suppliers(best, plan, suppliers)]
     said = "; ".join(part for part in parts if part)
     return said or "the same sites and suppliers"
 
 
+def _sites(best: RunnerUp, plan: Plan, sites: tuple[Part, ...]) -> str:
+    before, after = dict(best.used_sites), dict(sites)
+    opens = {line.site for line in plan.sites if line.verdict is SiteVerdict.OPEN}
+    words = ("opens {} too", "keeps {} too", "does without {}")
+    return _swapped([name for name in after if name not in before], [n for n in before if n not in after], opens, words)
+
+
 def _suppliers(best: RunnerUp, plan: Plan, suppliers: tuple[str, ...]) -> str:
     new = [name for name in suppliers if name not in best.used_suppliers]
-    gone = [name for name in best.used_suppliers if name not in suppliers]
-    signs = {line.supplier: line.verdict is SupplierVerdict.SIGN for line in plan.suppliers}
-    if new and gone:
-        return f"{_listed(new)} instead of {_listed(gone)}"
-    if gone:
-        return f"drops {_listed(gone)}"
-    signed, stays = [name for name in new if signs[name]], [name for name in new if not signs[name]]
-    said = [f"signs {_listed(signed)}" if signed else "", f"buys from {_listed(stays)} too" if stays else ""]
-    return "; ".join(part for part in said if part)
+    signs = {line.supplier for line in plan.suppliers if line.verdict is SupplierVerdict.SIGN}
+    words = ("signs {}", "stays with {}", "drops {}")
+    return _swapped(new, [name for name in best.used_suppliers if name not in suppliers], signs, words)
 
 
-def _swap(new: list[str], gone: list[str]) -> str:
+def _swapped(new: list[str], gone: list[str], begins: set[str], words: tuple[str, str, str]) -> str:
+    """Return what is used instead, or in words for what begins, what goes on and what is gone."""
     if new and gone:
         return f"{_listed(new)} instead of {_listed(gone)}"
-    if new:
-        return f"uses {_listed(new)} too"
-    return f"does without {_listed(gone)}" if gone else ""
+    groups = ([name for name in new if name in begins], [name for name in new if name not in begins], gone)
+    return "; ".join(word.format(_listed(names)) for word, names in zip(words, groups, strict=True) if names)
 
 
 def _listed(names: list[str]) -> str:

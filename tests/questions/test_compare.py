@@ -121,8 +121,11 @@ def test_what_cannot_be_compared_is_refused() -> None:
         compare([replace(one, name=str(n)) for n in range(7)])
     with pytest.raises(SettingsError, match=r"two plans go by the name 'as it is'\. Give each plan once"):
         compare([one, one])
-    for column, value in (("currency", "CZK"), ("unit", "pallets")):
-        changed = replace(other, plan=replace(other.plan, **{column: value}))
+    for column, plan in (
+        ("currency", replace(other.plan, currency="CZK")),
+        ("unit", replace(other.plan, unit="pallets")),
+    ):
+        changed = replace(other, plan=plan)
         with pytest.raises(PlanFileError, match=f"differ in their {column} cannot be compared: as it is in "):
             compare([one, changed])
 

@@ -73,7 +73,7 @@ def test_each_says_what_it_does_otherwise() -> None:
     found = runners_up(given.distribution_centres(), within=0.2, settings=EXACT)
     lines = [each.differs for each in found.answers]
     assert lines[:2] == ["", "Detroit and Denver instead of Kansas City"]
-    assert sorted(lines[2:]) == ["Toledo and Denver instead of Kansas City", "uses Detroit too"]
+    assert sorted(lines[2:]) == ["Toledo and Denver instead of Kansas City", "opens Detroit too"]
     farms = runners_up(given.farms_as_suppliers(), within=0.001, settings=EXACT)
     assert farms.answers[1].differs == "farm 3 instead of farm 6"
     assert farms.answers[1].used_suppliers == ("farm 1", "farm 2", "farm 3", "farm 4")
