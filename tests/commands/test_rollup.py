@@ -19,7 +19,8 @@ def test_order_lines_become_customers_goods_and_demands(tmp_path: Path, capsys: 
     """The tables are written, all that was done is said, months too; a second time nothing is replaced."""
     order_lines(5000).to_csv(tmp_path / "orders.csv", index=False)
     given = ["rollup", str(tmp_path / "orders.csv"), "--by", "customer,product", "--quantity", "kg",
-             "--date", "shipped", "--factor", "0.001", "--unit", "t", "--currency", "EUR", "--carry", "place=town", "--quiet"]  # fmt: skip
+             "--date", "shipped", "--factor", "0.001", "--unit", "t", "--currency", "EUR",
+             "--carry", "place=town", "--quiet"]  # fmt: skip
     assert cli.main([*given, "--out", str(tmp_path / "mine")]) == 0
     said = capsys.readouterr().out
     for pattern in (
