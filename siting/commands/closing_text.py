@@ -8,6 +8,7 @@ from siting.commands.layout import bullets, paragraph, table
 from siting.plan.plan import CostLine
 from siting.plan.proof import Outcome
 from siting.plan.words import money, percent, percent_up
+from siting.study.tables import IMPLIED_GOOD
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
@@ -145,7 +146,9 @@ def _short(test: ClosingTest, found: Without) -> str:
         return ""
     customers = list(dict.fromkeys(short.customer for short in found.unserved))
     who = "customer goes" if len(customers) == 1 else "customers go"
-    return f"At least {found.unserved_load:,.6g} {test.unit} stay unserved; {len(customers)} {who} short. "
+    goods = [good for good in dict.fromkeys(short.good for short in found.unserved) if good != IMPLIED_GOOD]
+    what = f" of {_some(goods)}" if goods else ""
+    return f"At least {found.unserved_load:,.6g} {test.unit}{what} stay unserved; {len(customers)} {who} short. "
 
 
 def _facts(test: ClosingTest, line: ClosingLine, found: Without) -> Iterator[str]:
