@@ -44,7 +44,7 @@ LATER_MOVES = 200
 """Moves from a plan that the search finds, priced at most."""
 
 KEPT_LINKS = 1.3
-"""Times as many links as the first relaxation ended with may stay loaded."""
+"""Times as many links as the first relaxation ended with are loaded before old ones are forgotten."""
 
 
 def whole(
@@ -117,7 +117,7 @@ class _Run:
         if relaxed.ending is Ending.EMPTY:
             return EngineResult(decisions=None, bound=None, impossible=True)
         self.root = relaxed.bound
-        if relaxed.ending is Ending.SOLVED:
+        if relaxed.ending in {Ending.SOLVED, Ending.NEARLY}:
             self._search(program, relaxed)
         return self._result()
 
@@ -126,6 +126,7 @@ class _Run:
         assert self.plans is not None  # noqa: S101 - made by the caller
         assert self.tree is not None  # noqa: S101
         most = int(KEPT_LINKS * program.links.size) + 100
+        self.tree.open[0].spot = program.spot()
         self._say("looking for plans")
         self.plans.dive(program, relaxed)
         self._say("improving the plan")

@@ -118,7 +118,7 @@ class Plans:
         """
         lower, upper = self.levers.whole()
         split = self.levers.split
-        while relaxed.ending is Ending.SOLVED:
+        while relaxed.ending in {Ending.SOLVED, Ending.NEARLY}:
             value = relaxed.values[:split]
             free = np.flatnonzero((lower[:split] < upper[:split]) & (np.abs(value - np.rint(value)) > WHOLE))
             if not free.size:

@@ -33,6 +33,9 @@ BROKEN = 1e-7
 DUAL_NOISE = 1e-9
 """Reduced costs above minus this (in the problem's money) are rounding: the lane stays out."""
 
+PATIENCE = 40
+"""Solves after which a link that had no price in any of them may be forgotten."""
+
 EMPTY = 1e-8
 """By how much rows, scaled to coefficients of 1 to 2 and priced at most 1, must contradict each other."""
 
@@ -40,10 +43,15 @@ ROUNDS = 200
 """Rounds of pricing and linking after which a program that still moves is given up; none of the tests came near."""
 
 
+DEVEX = 1
+"""Steepest edges are found anew at every jump to another node, which costs more than the steps they save."""
+
+
 class Ending(Enum):
     """How a solve ended."""
 
-    SOLVED = "every lane priced, no link broken, or as near to it as the rounds allowed"
+    SOLVED = "every lane priced, no link broken"
+    NEARLY = "out of rounds"
     CUT = "the bound reached what it had to"
     EMPTY = "nothing satisfies the rows"
     HALTED = "out of time, of steps, or asked to stop"
@@ -62,6 +70,15 @@ class Relaxed:
     """(N,) of the columns; meaningless unless solved."""
     priced: Priced | None
     """At the best bound; None when nothing was proved."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Spot:
+    """Where the simplex stood, to go on from there later."""
+
+    basis: highspy.HighsBasis
+    links: NDArray[np.int64]
+    """Loaded then."""
 
 
 class LaneProgram:
@@ -99,6 +116,8 @@ class LaneProgram:
         self._idle_links = self.links
         self.highs = self._start()
         self.iterations = 0
+        self._solves = 0
+        self._priced_at = np.zeros(len(problem.links), dtype=np.int64)
         self.at: Sides | None = None
         self._refresh()
 
@@ -108,6 +127,7 @@ class LaneProgram:
         for name, value in (
             ("presolve", "off"),
             ("solver", "simplex"),
+            ("simplex_dual_edge_weight_strategy", DEVEX),
             ("primal_feasibility_tolerance", TOLERANCE),
             ("dual_feasibility_tolerance", TOLERANCE),
         ):
@@ -184,16 +204,40 @@ class LaneProgram:
             rows.value,
         )
         self.links = np.concatenate([self.links, links])
+        self._priced_at[links] = self._solves
         self._link_rows = self.problem.links.chosen(self.links)
         self._refresh()
 
+    def spot(self) -> Spot:
+        """Return where the simplex stands."""
+        return Spot(basis=self.highs.getBasis(), links=self.links)
+
+    def return_to(self, spot: Spot) -> None:
+        """Go back to where the simplex stood, unless a link that was binding there has been forgotten."""
+        limits = len(self.problem.limits)
+        rows = np.array(spot.basis.row_status)
+        known = dict(zip(spot.links.tolist(), rows[limits:].tolist(), strict=True))
+        basic = highspy.HighsBasisStatus.kBasic
+        status = [known.pop(link, basic) for link in self.links.tolist()]
+        if any(left != basic for left in known.values()):
+            return
+        columns = list(spot.basis.col_status)
+        columns += [highspy.HighsBasisStatus.kLower] * (self.columns.size - len(columns))
+        basis = highspy.HighsBasis()
+        basis.valid = True
+        basis.col_status = columns
+        basis.row_status = [*rows[:limits].tolist(), *status]
+        self.highs.setBasis(basis)
+
     def forget(self, most: int) -> None:
-        """Take out the links that do not bind in the program's last solution, once more than `most` are loaded."""
+        """Take out the links that have had no price for long, once more than `most` are loaded."""
         if self.links.size <= most:
             return
-        limits = len(self.problem.limits)
-        slack = np.array(self.highs.getBasis().row_status)[limits:] == highspy.HighsBasisStatus.kBasic
-        gone = (limits + np.flatnonzero(slack)).astype(np.int32)
+        slack = self._priced_at[self.links] < self._solves - PATIENCE
+        slack &= np.array(self.highs.getBasis().row_status)[-self.links.size :] == highspy.HighsBasisStatus.kBasic
+        gone = (len(self.problem.limits) + np.flatnonzero(slack)).astype(np.int32)
+        if not gone.size:
+            return
         self.highs.deleteRows(gone.size, gone)
         self.links = self.links[~slack]
         self._link_rows = self.problem.links.chosen(self.links)
@@ -252,6 +296,7 @@ class LaneProgram:
             If HiGHS gives up for a reason of its own.
         """
         self.set_sides(sides)
+        self._solves += 1
         best: Priced | None = None
         values, value = np.zeros(self.problem.places.count), -np.inf
         self.highs.setOptionValue("objective_bound", enough - self.problem.constant)
@@ -282,16 +327,17 @@ class LaneProgram:
                 return self._result(Ending.CUT, best.bound, value, values, best)
             values = np.zeros(self.problem.places.count)
             values[self.columns] = np.array(solution.col_value)
-            broken = self._broken(values)
-            if not lanes.size and not broken.size:
-                if status == highspy.HighsModelStatus.kOptimal:
-                    return self._result(Ending.SOLVED, best.bound, value, values, best)
-                self.highs.setOptionValue("objective_bound", np.inf)  # its prices fell short of proving the cut
-            if broken.size:
-                self.load_links(broken)
+            optimal = status == highspy.HighsModelStatus.kOptimal
+            broken = self._broken(values) if optimal else self._idle_links[:0]
             if lanes.size:
                 self.load_lanes(lanes)
-        ending = Ending.HALTED if self.halted else Ending.SOLVED
+            elif not optimal:
+                self.highs.setOptionValue("objective_bound", np.inf)  # its prices fell short of proving the cut
+            elif not broken.size:
+                return self._result(Ending.SOLVED, best.bound, value, values, best)
+            if broken.size:
+                self.load_links(broken)
+        ending = Ending.HALTED if self.halted else Ending.NEARLY
         return self._result(ending, -np.inf if best is None else best.bound, value, values, best)
 
     def try_sides(self, sides: Sides, basis: highspy.HighsBasis, steps: int) -> float:
@@ -330,6 +376,7 @@ class LaneProgram:
     def _priced(self, duals: Floats, sides: Sides, *, costless: bool) -> tuple[Priced, NDArray[np.intp]]:
         """Return what the duals of the loaded rows prove, and the lanes that would lower the program's value."""
         limits = len(self.problem.limits)
+        self._priced_at[self.links[duals[limits:] != 0]] = self._solves
         priced = self._pricer.price(
             duals[:limits], self.links, self._link_rows, duals[limits:], sides, costless=costless
         )

@@ -32,13 +32,16 @@ if TYPE_CHECKING:
     from siting.solving.bounding.whole_levers import Levers
     from siting.solving.bounding.whole_plans import Plans
     from siting.solving.bounding.whole_problem import WholeProblem
-    from siting.solving.bounding.whole_program import LaneProgram, Relaxed
+    from siting.solving.bounding.whole_program import LaneProgram, Relaxed, Spot
 
 SURE = 2
 """Splits of a lever seen, on average of both sides, from which on its record is believed without a trial."""
 
 TRIALS = 8
 """Levers tried at most at a node."""
+
+NODE_ROUNDS = 4
+"""Rounds of pricing and linking at a node that is split anyway."""
 
 TRIAL_STEPS = 60
 """Simplex steps of a trial at most."""
@@ -60,6 +63,8 @@ class Node:
     up: bool = field(compare=False, default=False)
     away: float = field(compare=False, default=0.0)
     """How far the lever was moved."""
+    spot: Spot | None = field(compare=False, default=None)
+    """Where the simplex stood at its parent."""
 
 
 class Tree:
@@ -103,11 +108,13 @@ class Tree:
     def step(self) -> None:
         """Search one node: the child just made, or the open node of least bound."""
         node = self._here or heapq.heappop(self.open)
+        if self._here is None and node.spot is not None and node.bound < self.enough:
+            self._program.return_to(node.spot)
         self._here = node
         if node.bound >= self.enough:
             self._close(node)
             return
-        relaxed = self._program.solve(self.levers.sides(node.lower, node.upper), enough=self.enough)
+        relaxed = self._relax(node)
         if relaxed.ending is Ending.HALTED:
             node.bound = max(node.bound, relaxed.bound)
             return
@@ -120,6 +127,14 @@ class Tree:
             return
         self._fix(node, relaxed)
         self._branch(node, relaxed)
+
+    def _relax(self, node: Node) -> Relaxed:
+        """Solve a node, to the end only where its levers come out whole: a split needs no more than a good idea."""
+        sides = self.levers.sides(node.lower, node.upper)
+        relaxed = self._program.solve(sides, enough=self.enough, rounds=NODE_ROUNDS)
+        if relaxed.ending is Ending.NEARLY and not self.levers.fractional(self.levers.values(relaxed.values)).size:
+            relaxed = self._program.solve(sides, enough=self.enough)
+        return relaxed
 
     def _close(self, node: Node) -> None:
         self.floor = min(self.floor, node.bound)
@@ -181,11 +196,12 @@ class Tree:
     def _split(self, node: Node, lever: int, value: float) -> None:
         """Make both children; go on with the one nearer to the relaxation, leave the other open."""
         children = []
+        spot = self._program.spot()
         for up in (False, True):
             lower, upper = node.lower.copy(), node.upper.copy()
             (lower if up else upper)[lever] = math.ceil(value) if up else math.floor(value)
             away = math.ceil(value) - value if up else value - math.floor(value)
-            children.append(Node(node.bound, self.made + int(up), lower, upper, node.depth + 1, lever, up, away))
+            children.append(Node(node.bound, self.made + int(up), lower, upper, node.depth + 1, lever, up, away, spot))
         self.made += 2
         first = int(value - math.floor(value) >= 0.5) if lever < self.levers.count - 2 else 1  # noqa: PLR2004
         heapq.heappush(self.open, children[1 - first])
