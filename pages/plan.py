@@ -100,7 +100,7 @@ def _live(key: str) -> None:
     headline(f"{doing}: {found}{sure}", second=f"{progress.elapsed_s:,.0f} s, {progress.phase or 'starting'}.")
 
 
-@st.fragment(run_every=2 * REFRESH_S)
+@st.fragment(run_every=4 * REFRESH_S)
 def _live_chart(key: str) -> None:
     """Draw the best cost and the bound over time, once there are both."""
     job = find_job(key)

@@ -27,6 +27,7 @@ from siting.study.raw import FIRST_ROW, table_from_rows
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
 
+    from siting.browse.remembered import Remembered
     from siting.study.propose import Proposal
     from siting.study.raw import RawStudy, RawTable
 
@@ -66,6 +67,10 @@ class Draft:
     """Key of the solve last asked for; empty before the first."""
     before: str = ""
     """Token of the draft it was opened from; empty for the first of a session."""
+    questions: dict[str, str] = field(default_factory=dict)
+    """Key of the job last asked for, by question."""
+    plans: list[Remembered] = field(default_factory=list)
+    """Plans found so far, oldest first."""
     _checked: tuple[int, Checked] | None = None
     _key: tuple[int, str] | None = None
     _lock: threading.RLock = field(default_factory=threading.RLock)

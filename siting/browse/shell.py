@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING
 import streamlit as st
 
 from siting.browse.drafts import Draft, find_draft, keep_draft
+from siting.browse.remembered import remember
 from siting.browse.serve import STUDY_VARIABLE
 from siting.browse.style import STYLE
 from siting.sharing import looks
@@ -22,7 +23,15 @@ if TYPE_CHECKING:
 
     from siting.study.raw import RawStudy
 
-PAGES = (("inputs", "Inputs"), ("plan", "Plan"), ("share", "Share"))
+PAGES = (
+    ("inputs", "Inputs"),
+    ("plan", "Plan"),
+    ("close_a_site", "Close a site"),
+    ("shortlist", "Shortlist"),
+    ("how_many", "How many sites?"),
+    ("compare", "Compare"),
+    ("share", "Share"),
+)
 """File and title of each page, in the order of the navigation."""
 
 DRAFT = "draft"
@@ -59,6 +68,11 @@ def pages_folder() -> Path:
     return next(path for path in (package / "pages", package.parent / "pages") if path.is_dir())
 
 
+def page_path(name: str) -> str:
+    """Return the path by which a page is switched to, as `st.switch_page` takes it."""
+    return str(pages_folder() / f"{name}.py")
+
+
 def current_draft() -> Draft:
     """
     Return the draft of this session.
@@ -72,6 +86,7 @@ def current_draft() -> Draft:
         draft = find_draft(token) or keep_draft(*_study_given())
         st.session_state[LOST] = bool(token) and draft.token != token
     use_draft(draft)
+    remember(draft)
     return draft
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, TypeVar
 
 import altair as alt
 import pandas as pd
@@ -15,6 +15,8 @@ if TYPE_CHECKING:
 
     from siting.listener import Progress
     from siting.plan.plan import Plan, Service
+
+Drawn = TypeVar("Drawn", bound=alt.TopLevelMixin)
 
 LINE_NAMES: Mapping[CostLine, str] = {
     CostLine.OPENING: "Opening, per year",
@@ -33,12 +35,13 @@ LINE_NAMES: Mapping[CostLine, str] = {
 }
 """What each cost line is called wherever it is shown."""
 
-_ROW_HEIGHT_PX = 24
+ROW_HEIGHT_PX = 24
+"""Height of one row of a chart that has a row for each name."""
 
 
-def _styled(chart: alt.Chart) -> alt.Chart:
+def styled(chart: Drawn) -> Drawn:
     """Return the chart with the fonts, inks and rules that all charts share."""
-    styled: alt.Chart = (
+    made: Drawn = (
         chart.configure(background=looks.PAPER, font=looks.FONT_STACK)
         .configure_axis(
             labelColor=looks.INK,
@@ -54,7 +57,7 @@ def _styled(chart: alt.Chart) -> alt.Chart:
         .configure_legend(labelColor=looks.INK, titleColor=looks.QUIET, labelFontSize=12, orient="top")
         .configure_view(strokeWidth=0)
     )
-    return styled
+    return made
 
 
 def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart:
@@ -77,7 +80,7 @@ def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart:
     frame = pd.DataFrame(rows, columns=["seconds", "money", "what"])
     scale = alt.Scale(domain=_worth_seeing(history), clamp=True, nice=False)
     names = ["best plan so far", "no plan is cheaper than"]
-    return _styled(
+    made: alt.Chart = styled(
         alt.Chart(frame)
         .mark_line(interpolate="step-after", strokeWidth=2.5, point={"size": 26, "filled": True})
         .encode(
@@ -101,6 +104,7 @@ def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart:
         )
         .properties(height=320)
     )
+    return made
 
 
 def _worth_seeing(history: Sequence[Progress]) -> list[float]:
@@ -130,7 +134,7 @@ def cost_chart(plan: Plan) -> alt.Chart:
     frame = frame[frame["line"].isin(shown)]
     order = [LINE_NAMES[line] for line in CostLine if LINE_NAMES[line] in shown]
     whose = list(dict.fromkeys(frame["whose"]))
-    return _styled(
+    made: alt.Chart = styled(
         alt.Chart(frame)
         .mark_bar(height={"band": 0.82}, stroke=looks.TEAL, strokeWidth=1)
         .encode(
@@ -145,8 +149,9 @@ def cost_chart(plan: Plan) -> alt.Chart:
             ),
             tooltip=["whose:N", "line:N", alt.Tooltip("money:Q", format=",.0f", title=f"{plan.currency} a year")],
         )
-        .properties(height=alt.Step(_ROW_HEIGHT_PX / len(whose)))
+        .properties(height=alt.Step(ROW_HEIGHT_PX / len(whose)))
     )
+    return made
 
 
 def _whose(plan: Plan) -> list[tuple[str, Mapping[CostLine, float]]]:
@@ -186,4 +191,5 @@ def band_chart(service: Service, unit: str) -> alt.Chart:
             tooltip=["band:N", alt.Tooltip("share:Q", format=".1%"), alt.Tooltip("load:Q", format=",.0f", title=unit)],
         )
     )
-    return _styled(bars.properties(height=alt.Step(_ROW_HEIGHT_PX)))
+    made: alt.Chart = styled(bars.properties(height=alt.Step(ROW_HEIGHT_PX)))
+    return made

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from siting.sharing.map_data import plan_json
+from siting.sharing.map_differences import differences_json
 from siting.sharing.map_given import given_json
 from siting.sharing.map_page import page_of
 
@@ -82,6 +83,44 @@ def draw_given(study: Study, *, headline: str | None = None, fingerprint: str = 
         If the locale is unknown.
     """
     return MapPage(page_of(given_json(study, headline=headline, fingerprint=fingerprint, locale=locale)))
+
+
+def draw_differences(  # noqa: PLR0913 - two plans with their names, and how they are told
+    study: Study,
+    before: Plan,
+    after: Plan,
+    *,
+    names: tuple[str, str],
+    headline: str,
+    locale: str = "en",
+) -> MapPage:
+    """
+    Draw only what differs between two plans.
+
+    Parameters
+    ----------
+    study
+        The study of the plan after; places that only the other's study has are not drawn.
+    before, after
+        The plans.
+    names
+        What they are called.
+    headline
+        As for `draw_map`.
+    locale
+        Whose separators numbers carry, such as `en` or `de`.
+
+    Returns
+    -------
+    page
+        The map: dashed lanes carry less in the second plan, solid ones more; nothing else is on it.
+
+    Raises
+    ------
+    SettingsError
+        If the locale is unknown.
+    """
+    return MapPage(page_of(differences_json(study, before, after, names=names, headline=headline, locale=locale)))
 
 
 def write_map(path: Path, study: Study, plan: Plan, *, headline: str, locale: str = "en") -> None:

@@ -70,11 +70,11 @@ siting.bindCard = function (layer, title, heads, facts, sticky) {
 
 siting.makeLanes = function () {
   const data = siting.data;
-  for (const leg of data.legs) siting.pens[leg.leg] = leg;
+  for (const leg of data.legs) siting.pens[leg.pen || leg.leg] = leg;
   for (const lane of data.lanes) {
     const [start, end] = siting.ends[lane.leg], from = data[start][lane.from], to = data[end][lane.to];
     if (!from.spot || !to.spot) continue;
-    const pen = siting.pens[lane.leg];
+    const pen = siting.pens[lane.pen || lane.leg];
     lane.drawn = L.polyline([from.spot, to.spot], {
       renderer: siting.canvas, color: pen.colour, lineCap: pen.dashes ? "butt" : "round", smoothFactor: 0,
     });
@@ -135,7 +135,7 @@ siting.restyle = function () {
     }
     const group = groups[lane.leg];
     if (load > 0) {
-      const pen = siting.pens[lane.leg], weight = siting.width(pen, load);
+      const pen = siting.pens[lane.pen || lane.leg], weight = siting.width(pen, load);
       lane.drawn.setStyle({ weight, dashArray: siting.dashes(pen, weight), opacity: strong ? (lane.leg === "inbound" ? 0.85 : 0.72) : 0.07 });
       if (!group.hasLayer(lane.drawn)) group.addLayer(lane.drawn);
     } else group.removeLayer(lane.drawn);

@@ -8,7 +8,7 @@ siting.group = function (key) {
 
 siting.panels = function () {
   const data = siting.data;
-  document.title = data.title ? `${data.title}: ${data.kind === "plan" ? "plan" : "what was given"}` : "Map";
+  document.title = data.title ? `${data.title}: ${{ plan: "plan", differences: "what differs" }[data.kind] || "what was given"}` : "Map";
   document.getElementById("title").append(siting.name(data.title || "Untitled study"));
   document.getElementById("headline").append(siting.name(data.headline));
   document.body.classList.toggle("embedded", !data.headline); // inside a page that says the rest
@@ -87,10 +87,14 @@ siting.entry = function (list, drawing, text, more) {
   list.append(item);
 };
 
-siting.legendPart = function (root, key, text, more) {
+siting.legendPart = function (root, key, text, more, switched = true) {
   const part = siting.element("section");
-  if (siting.data.base) siting.switcher(part, key, text, more);
-  else part.append(siting.element("h3", "", text));
+  if (siting.data.base && switched) siting.switcher(part, key, text, more);
+  else {
+    const head = siting.element("h3", "", text);
+    if (more) head.append(" ", siting.name(more, "more"));
+    part.append(head);
+  }
   const list = siting.element("ul", "keys");
   part.append(list);
   root.append(part);
@@ -102,17 +106,17 @@ siting.legend = function () {
   if (data.goods.length > 1 && data.base) siting.goodsChoice(root);
   for (const [kind, word, text] of [["sites", "site", "Sites"], ["suppliers", "supplier", "Suppliers"]]) {
     if (!data[kind].length) continue;
-    const list = siting.legendPart(root, kind, text, kind === "sites" && data.kind === "plan" ? "level: utilisation" : "");
+    const list = siting.legendPart(root, kind, text, kind === "sites" && data.kind !== "given" ? "level: utilisation" : "");
     for (const symbol of data[`${word}_symbols`])
       if (data[kind].some((thing) => thing.key === symbol.key)) siting.entry(list, siting.symbol(symbol, symbol.fill ? 0.6 : null, true), symbol.key, symbol.meaning);
-    if (kind === "sites" && data.kind === "plan") {
+    if (kind === "sites" && data.kind !== "given") {
       const told = data.sites.some((site) => site.active && site.level === null) && "a dot where capacity is unlimited";
       if (told) list.append(siting.element("li", "told", told));
     }
   }
   siting.customerLegend(root);
   const words = { outbound: ["Outbound", "site to customer"], inbound: ["Inbound", "supplier to site"], direct: ["Direct", "supplier to customer"] };
-  for (const leg of data.legs) if (leg.most > 0) siting.legLegend(root, leg, words[leg.leg]);
+  for (const leg of data.legs) if (leg.most > 0) siting.legLegend(root, leg, leg.words || words[leg.leg]);
   root.append(siting.element("p", "told", data.amounts_text));
 };
 
@@ -146,7 +150,7 @@ siting.customerLegend = function (root) {
 };
 
 siting.legLegend = function (root, leg, [text, more]) {
-  const list = siting.legendPart(root, leg.leg, text, more);
+  const list = siting.legendPart(root, leg.leg, text, more, !leg.pen);
   const sample = (width) => {
     const picture = siting.canvasSvg(34, 14), cap = leg.dashes ? "butt" : "round";
     siting.svg("line", { x1: 2, x2: 32, y1: 7, y2: 7, stroke: leg.colour, "stroke-width": width, "stroke-dasharray": siting.dashes(leg, width) || "none", "stroke-linecap": cap }, picture);
