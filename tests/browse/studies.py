@@ -36,7 +36,7 @@ def tiny_folder(folder: Path) -> Path:
     return write_folder(folder, TINY, TINY_SETTINGS)
 
 
-def long_folder(folder: Path, *, sites: int = 90, customers: int = 400) -> Path:
+def long_folder(folder: Path, *, sites: int = 60, customers: int = 200) -> Path:
     """Write a study whose proof takes minutes, while its first plan is there within seconds, into the folder."""
     draw = random.Random(SEED)  # noqa: S311 - figures for a test
     places = [(f"S{i}", 46 + 6 * draw.random(), 8 + 14 * draw.random()) for i in range(sites)]
@@ -88,3 +88,41 @@ def _csv(header: Sequence[str], rows: Iterable[Sequence[object]]) -> str:
     text = io.StringIO()
     csv.writer(text, lineterminator="\n").writerows([header, *rows])
     return text.getvalue()
+
+
+TOWNS = {
+    "sites": """\
+site,latitude,longitude,standing,opening_charge,yearly_charge,closing_charge,capacity
+Linz,48.30639,14.28611,running,0,52000,20000,900
+Brno,49.19522,16.60796,running,0,48000,15000,800
+Graz,47.06667,15.45,proposed,90000,44000,0,700
+Regensburg,49.01513,12.10161,proposed,120000,47000,0,700
+Vienna,48.20849,16.37208,proposed,150000,70000,0,1000
+""",
+    "suppliers": """\
+supplier,latitude,longitude,standing,signing_charge,dropping_charge,yearly_charge,capacity,unit_price
+Deggendorf,48.84085,12.96068,signed,0,5000,9000,1200,100
+Szombathely,47.23088,16.62155,offered,8000,0,7000,900,98
+Ostrava,49.83465,18.28204,offered,9000,0,8000,1000,99
+""",
+    "customers": """\
+customer,latitude,longitude,demand
+Munich,48.13743,11.57549,210
+Prague,50.08804,14.42076,260
+Salzburg,47.79941,13.04399,90
+Innsbruck,47.26266,11.39454,60
+Klagenfurt,46.62472,14.30528,70
+Maribor,46.55472,15.64667,80
+Zagreb,45.81444,15.97798,120
+Bratislava,48.14816,17.10674,150
+Budapest,47.49801,19.03991,230
+Olomouc,49.59552,17.25175,70
+""",
+}
+"""Five sites, three suppliers, ten customers: solved in a second, and different verdicts cost little more."""
+
+
+def towns_folder(folder: Path) -> Path:
+    """Write the study of a few towns, on which every follow-up question has something to say, into the folder."""
+    settings = TINY_SETTINGS.replace('"Tiny"', '"Towns"') + "service_km = 250\nservice_share = 0.5\n"
+    return write_folder(folder, TOWNS, settings)

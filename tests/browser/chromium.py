@@ -1,4 +1,4 @@
-"""The real browser for tests: Debian's Chromium, driven by playwright, with everything but files cut off."""
+"""The real browser for tests: Debian's Chromium, driven by playwright, with the world outside cut off."""
 
 from __future__ import annotations
 
@@ -50,7 +50,9 @@ def chromium() -> Iterator[Browser]:
 class Watched:
     """Whatever a page said that it should not have: outside requests, console messages, errors, dialogs."""
 
-    def __init__(self, context: BrowserContext) -> None:
+    def __init__(self, context: BrowserContext, *, server: str = "") -> None:
+        """Watch all pages of a context; only files, and the server where there is one, can be reached."""
+        self._inside = ("file:", "data:", "blob:", *([server] if server else []))
         self.outside: list[str] = []
         self.said: list[str] = []
         context.route("**/*", self._route)
@@ -63,7 +65,7 @@ class Watched:
         dialog.dismiss()
 
     def _route(self, route: Route) -> None:
-        if route.request.url.startswith(("file:", "data:")):
+        if route.request.url.startswith(self._inside):
             route.continue_()
         else:
             self.outside.append(route.request.url)
