@@ -48,6 +48,8 @@ DIVE_STEPS = 25
 """Greatest number of steps after each decision of a dive."""
 DIVE_TRIALS = 150
 """Moves tried at its end."""
+FEWEST_TRIALS, MANY_ROWS = 4, 1000
+"""With more rows than this the numbers of moves fall in proportion, but not below the first figure."""
 CLEARLY_OPEN, CLEARLY_SHUT = 0.9, 0.02
 """Use in the averaged solution from which, and up to which, a dive decides a site without more steps."""
 REPORT_EVERY = 8
@@ -144,9 +146,13 @@ class Worker:
     def _look_for_plans(self, box: Box, ascent: Ascent, cutoff: float, goal: float) -> None:
         self._nodes += 1
         if self._nodes % PRICE_EVERY == 1:
-            self.incumbents.search(ascent.used, trials=NEAR_TRIALS, near=NEAR)
+            self.incumbents.search(ascent.used, trials=self._trials(NEAR_TRIALS), near=NEAR)
         if self._nodes % DIVE_EVERY == 1:
-            self.incumbents.search(self._dive(box, ascent, cutoff, goal), trials=DIVE_TRIALS)
+            self.incumbents.search(self._dive(box, ascent, cutoff, goal), trials=self._trials(DIVE_TRIALS))
+
+    def _trials(self, most: int) -> int:
+        """Return how many moves to try: fewer where there are so many rows that a move costs more than a node."""
+        return max(FEWEST_TRIALS, min(most, most * MANY_ROWS // max(self._problem.rows, 1)))
 
     def _dive(self, box: Box, ascent: Ascent, cutoff: float, goal: float) -> Floats:
         """Decide clear sites, and at least one, in turns with a few steps; return what the last solution uses."""
