@@ -58,8 +58,9 @@ def show() -> None:
         different = "" if found.one_study else "The plans are of different tables or settings."
         headline(comparison_headline(found), second=different)
     section("Verdicts that differ")
-    st.html(verdicts_table(found) if found.differing else "")
-    if not found.differing:
+    if found.differing:
+        st.html(verdicts_table(found))
+    else:
         notice("Every verdict is the same.")
     section("Cost lines side by side")
     st.html(figures_table(found))

@@ -64,23 +64,27 @@ def _cheapest(test: ClosingTest, kind: str) -> str:
 def answer_words(line: ClosingLine, currency: str) -> str:
     """Return both answers of a line in words."""
     replan, reroute = line.replan, line.reroute
-    again = _extra_words(replan, currency, "if everything is re-planned")
-    if reroute is None or (reroute.extra_cost is None and reroute.possible is None):
-        return again
-    if reroute.possible is False:
-        return f"{again}; the others alone cannot take over"
-    return f"{_extra_words(reroute, currency, 'if others take over')}, {again}"
+    if reroute is not None and reroute.possible is False:
+        return f"{_extra_words(replan, currency)} if everything is re-planned; the others alone cannot take over"
+    if reroute is None or reroute.extra_cost is None:
+        return f"{_extra_words(replan, currency)} if everything is re-planned"
+    brief = reroute.extra_cost > 0 and not reroute.tied
+    return (
+        f"{_extra_words(reroute, currency)} if others take over, "
+        f"{_extra_words(replan, currency, brief=brief)} if everything is re-planned"
+    )
 
 
-def _extra_words(found: Without | None, currency: str, when: str) -> str:
+def _extra_words(found: Without | None, currency: str, *, brief: bool = False) -> str:
+    """Return what it costs more; `brief` after another amount of the same kind."""
     if found is None or found.extra_cost is None:
-        return f"not known yet {when}"
-    if found.possible is False:
-        return f"impossible {when}"
+        return "not known yet"
     if found.tied:
-        return f"at the same cost {when}"
-    amount = f"{money(abs(found.extra_cost), currency)} a year"
-    return f"{amount} {'less' if found.extra_cost < 0 else 'more'} {when}"
+        return "at the same cost"
+    amount = money(abs(found.extra_cost), currency)
+    if found.extra_cost < 0:
+        return f"{amount} a year less"
+    return amount if brief else f"{amount} a year more"
 
 
 def ranking_table(test: ClosingTest) -> str:
@@ -208,8 +212,10 @@ def _possible(line: ClosingLine, found: Without, test: ClosingTest, formats: For
         yield "Takes over", f"{some(taken)} {formats.unit} a year"
     others = [change for change in found.changes if change.name != line.name]
     if others:
-        verdicts = [f"{each.name}: {_verdict(each.before, each.size_before)} to {_verdict(each.after, each.size_after)}"
-                    for each in others]  # fmt: skip
+        verdicts = [
+            f"{each.name}: {_verdict(each.after, each.size_after)} (was {_verdict(each.before, each.size_before)})"
+            for each in others
+        ]
         yield "Other verdicts", "; ".join(verdicts)
     if found.average_km is not None and found.extra_km is not None:
         yield "Average distance", f"{formats.distance(found.average_km)} ({_km(found.extra_km)})"

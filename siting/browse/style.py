@@ -58,7 +58,7 @@ table.report td {{padding:.26rem .55rem .26rem 0; border-bottom:1px solid var(--
 table.report .n {{text-align:right;}}
 table.report td.n {{white-space:nowrap;}}
 table.report th, table.report td.verdict {{overflow-wrap:normal;}}
-table.report td.name {{min-width:7.5rem;}}
+table.report td.name {{min-width:9rem;}}
 table.report tr.total td {{border-top:1px solid var(--ink); font-weight:650;}}
 table.report tr.faint td {{color:var(--quiet);}}
 table.report td.verdict {{white-space:nowrap; font-weight:600;}}

@@ -182,8 +182,8 @@ def _kept_things(  # noqa: PLR0913, PLR0917 - what is there, and what is said of
     kept = []
     for at in sorted(place):
         change = moved.get(names[at], 0.0)
-        amount = map_facts.load_text(where.study, where.formats, abs(change))
-        brief = f"{amount} a year {MORE if change > 0 else LESS}" if abs(change) > LOAD_TOLERANCE else ""
+        amount = where.formats.amount(abs(change))
+        brief = f"{amount} {MORE if change > 0 else LESS}" if abs(change) > LOAD_TOLERANCE else ""
         was = changed.get((kind, names[at]), "")
         kept.append({**things[at], "brief": brief, "note": f"was: {map_facts.name_shown(was)}" if was else ""})
     return kept

@@ -36,7 +36,7 @@ FIRMNESS_LOOKS: Mapping[Firmness, tuple[str, str, str]] = {
 }
 """Shape, outline and fill of the dot of each word: the shape alone or the fill alone tells them apart."""
 
-COST_PARTS = (("fixed", looks.TEAL), ("freight", looks.SLATE), ("rest", looks.BORDER))
+COST_PARTS = (("fixed", looks.TEAL), ("freight", looks.SLATE), ("rest", looks.PAPER))
 
 
 def label_of(line: ShortlistLine) -> str:
@@ -161,7 +161,9 @@ def counts_chart(found: Counts) -> Layered:
     )
     x = alt.X("sites:O", title="open sites", axis=alt.Axis(labelAngle=0))
     money = alt.Axis(format=",.0f", tickCount=5, tickMinStep=1)
-    scale = alt.Scale(zero=False, nice=True)
+    low, high = float(frame["bound"].min()), float(frame["cost"].max())
+    room = max(high - low, 1.0) / 6
+    scale = alt.Scale(domain=[low - room, high + room / 2], zero=False, nice=False)
     base = alt.Chart(frame).encode(x=x)
     band = base.mark_area(color=looks.OCHRE, opacity=0.28, line={"color": looks.OCHRE, "strokeDash": [5, 3]}).encode(
         y=alt.Y("bound:Q", title=f"{found.currency} a year", axis=money, scale=scale), y2="cost:Q"
@@ -188,37 +190,42 @@ def counts_chart(found: Counts) -> Layered:
     )
     text = (
         alt.Chart(frame[frame["what"] == "best"])
-        .mark_text(dy=-16, color=looks.INK, fontWeight="bold", fontSize=12, text="best")
+        .mark_text(dy=20, color=looks.INK, fontWeight="bold", fontSize=12, text="best")
         .encode(x=x, y=alt.Y("cost:Q", scale=scale))
     )
     return styled(alt.layer(band, line, dots, text).properties(height=HEIGHT_PX))
 
 
 def split_chart(found: Counts) -> alt.Chart:
-    """Draw what each number of sites costs, split into fixed charges, freight and the rest, as bars from zero."""
+    """Draw by how much fixed charges, freight and the rest differ from those of the best number, for each number."""
+    best = found.best
+    parts = [part for part, _ in COST_PARTS]
     frame = pd.DataFrame(
         [
-            {"sites": line.count, "part": part, "money": getattr(line, part), "order": order}
+            {"sites": line.count, "part": part, "money": (getattr(line, part) or 0.0) - (getattr(best, part) or 0.0)}
             for line in found.lines
             if line.cost is not None
-            for order, (part, _) in enumerate(COST_PARTS)
+            for part in parts
         ]
     )
-    parts = [part for part, _ in COST_PARTS]
     made: alt.Chart = styled(
         alt.Chart(frame)
-        .mark_bar(width={"band": 0.6}, stroke=looks.PAPER, strokeWidth=1)
+        .mark_bar(stroke=looks.SLATE, strokeWidth=0.8)
         .encode(
             x=alt.X("sites:O", title="open sites", axis=alt.Axis(labelAngle=0)),
-            y=alt.Y("money:Q", title=f"{found.currency} a year", axis=alt.Axis(format="~s", tickCount=5)),
+            xOffset=alt.XOffset("part:N", sort=parts),
+            y=alt.Y(
+                "money:Q",
+                title=f"more than at the best number, {found.currency} a year",
+                axis=alt.Axis(format="+~s", tickCount=6),
+            ),
             color=alt.Color(
                 "part:N",
                 title=None,
                 sort=parts,
                 scale=alt.Scale(domain=parts, range=[colour for _, colour in COST_PARTS]),
             ),
-            order=alt.Order("order:Q"),
-            tooltip=["sites:O", "part:N", alt.Tooltip("money:Q", format=",.0f", title=f"{found.currency} a year")],
+            tooltip=["sites:O", "part:N", alt.Tooltip("money:Q", format="+,.0f", title=f"{found.currency} a year")],
         )
         .properties(height=HEIGHT_PX)
     )
@@ -232,7 +239,7 @@ def distance_chart(found: Counts) -> Layered | None:
         for line in found.lines
         if line.cost is not None and line.average_km is not None
     ]
-    return _small(rows, "road km on average", ",.0f") if rows else None
+    return _small(rows, "Road km on average", ",.0f") if rows else None
 
 
 def service_chart(found: Counts) -> Layered | None:
@@ -242,19 +249,19 @@ def service_chart(found: Counts) -> Layered | None:
         for line in found.lines
         if line.cost is not None and line.share_within is not None
     ]
-    return _small(rows, f"weight within {found.service_km:g} km", ".0%") if rows else None
+    return _small(rows, f"Share of weight within {found.service_km:g} km", ".0%") if rows else None
 
 
 def _small(rows: Sequence[Mapping[str, object]], title: str, form: str) -> Layered:
-    x = alt.X("sites:O", title="open sites", axis=alt.Axis(labelAngle=0))
-    y = alt.Y("value:Q", title=title, scale=alt.Scale(zero=False), axis=alt.Axis(format=form, tickCount=4))
+    x = alt.X("sites:O", title=None, axis=alt.Axis(labelAngle=0))
+    y = alt.Y("value:Q", title=None, scale=alt.Scale(zero=False), axis=alt.Axis(format=form, tickCount=3))
     base = alt.Chart(pd.DataFrame(rows)).encode(x=x, y=y)
     dots = base.mark_point(filled=True, color=looks.SLATE, size=60, opacity=1).encode(
         tooltip=[alt.Tooltip("sites:O", title="open sites"), alt.Tooltip("value:Q", format=form, title=title)]
     )
-    return styled(
-        alt.layer(base.mark_line(color=looks.SLATE, strokeWidth=2), dots).properties(height=HEIGHT_PX // 2 - 8)
-    )
+    said = alt.TitleParams(title, anchor="start", color=looks.QUIET, fontSize=12, fontWeight="normal")
+    line = base.mark_line(color=looks.SLATE, strokeWidth=2)
+    return styled(alt.layer(line, dots).properties(height=HEIGHT_PX // 2, title=said))
 
 
 def extra_chart(lines: Mapping[CostLine, float], currency: str) -> alt.Chart | None:

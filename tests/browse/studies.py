@@ -93,17 +93,17 @@ def _csv(header: Sequence[str], rows: Iterable[Sequence[object]]) -> str:
 TOWNS = {
     "sites": """\
 site,latitude,longitude,standing,opening_charge,yearly_charge,closing_charge,capacity
-Linz,48.30639,14.28611,running,0,52000,20000,900
-Brno,49.19522,16.60796,running,0,48000,15000,800
-Graz,47.06667,15.45,proposed,90000,44000,0,700
-Regensburg,49.01513,12.10161,proposed,120000,47000,0,700
-Vienna,48.20849,16.37208,proposed,150000,70000,0,1000
+Linz,48.30639,14.28611,running,0,13000,6000,900
+Brno,49.19522,16.60796,running,0,12000,5000,1000
+Graz,47.06667,15.45,proposed,20000,9000,0,700
+Regensburg,49.01513,12.10161,proposed,30000,11000,0,1400
+Vienna,48.20849,16.37208,proposed,40000,14000,0,1400
 """,
     "suppliers": """\
 supplier,latitude,longitude,standing,signing_charge,dropping_charge,yearly_charge,capacity,unit_price
-Deggendorf,48.84085,12.96068,signed,0,5000,9000,1200,100
-Szombathely,47.23088,16.62155,offered,8000,0,7000,900,98
-Ostrava,49.83465,18.28204,offered,9000,0,8000,1000,99
+Deggendorf,48.84085,12.96068,signed,0,5000,3000,1400,100
+Szombathely,47.23088,16.62155,offered,8000,0,3000,1400,98
+Ostrava,49.83465,18.28204,offered,9000,0,3000,1400,99
 """,
     "customers": """\
 customer,latitude,longitude,demand
