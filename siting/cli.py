@@ -16,6 +16,7 @@ from siting.commands import (
     compare,
     counts,
     headroom,
+    locate,
     plan,
     rollup,
     runners_up,
@@ -43,6 +44,7 @@ COMMANDS = (
     circuity,
     rollup,
     zones,
+    locate,
     browse,
 )
 """In the order of the help."""
