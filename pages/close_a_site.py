@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 import pandas as pd
 import streamlit as st
 
-from siting.browse.ask_view import ask
+from siting.browse.ask_view import ask, places
 from siting.browse.closing_view import (
     HOW,
     closing_headline,
@@ -35,11 +35,10 @@ BEFORE, CHANGES = "The plan", "Only what changes"
 def show() -> None:
     """Draw the page."""
     draft = current_draft()
-    top, controls = st.columns([4.4, 1.2], gap="medium")
     ask(
         draft,
         "closing",
-        places=(top, controls),
+        places=places(draft, "closing"),
         button="Test each",
         what="Each site that the plan has open is closed in turn, each supplier dropped: once with the others as they "
         "are, once with everything decided afresh.",
@@ -62,7 +61,8 @@ def _answer(kept: KeptQuestion, top: DeltaGenerator) -> None:
     names = [line.name for line in test.lines]
     key = f"without-{kept.plan.fingerprint}"
     section("One at a time")
-    chosen = st.selectbox("Without", names, key=key, width=420)
+    at_first = next((at for at, line in enumerate(test.lines) if line.kind == "site"), 0)
+    chosen = st.selectbox("Without", names, index=at_first, key=key, width=420)
     line = next(line for line in test.lines if line.name == chosen)
     _one(kept, test, line)
 

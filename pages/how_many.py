@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import streamlit as st
 
-from siting.browse.ask_view import ask
+from siting.browse.ask_view import ask, places
 from siting.browse.counts_view import counts_notes, counts_table
 from siting.browse.shell import current_draft, headline, notices, section
 from siting.questions.words import counts_headline
@@ -22,19 +22,17 @@ if TYPE_CHECKING:
 def show() -> None:
     """Draw the page."""
     draft = current_draft()
-    top, controls = st.columns([4.4, 1.2], gap="medium")
     study = draft.checked.study
     if study is not None and not study.sites:
-        with top:
-            headline(
-                "There are no sites to count: this study is a choice of suppliers",
-                second="The page Shortlist says which of them stand.",
-            )
+        headline(
+            "There are no sites to count: this study is a choice of suppliers",
+            second="The page Shortlist says which of them stand.",
+        )
         return
     ask(
         draft,
         "counts",
-        places=(top, controls),
+        places=places(draft, "counts"),
         button="Try each number",
         what="The best plan is found for each number of open sites, from the fewest possible to where one more only "
         "costs more.",

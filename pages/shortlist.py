@@ -67,7 +67,7 @@ def _answer(draft: Draft, kept: KeptQuestion, top: DeltaGenerator) -> None:
     stays.altair_chart(stays_chart(lines, found.count))
     room.altair_chart(headroom_chart(lines, near.currency, limit))
     st.caption(
-        f"Left: in how many of the {found.count} near-best plans listed below each is used. Right: how far its yearly "
+        f"Left: in how many of the near-best plans listed below each is used. Right: how far its yearly "
         f"charge may rise (in the plan) or must fall (outside) before the best plan changes its mind; the broken rule "
         f"marks {percent(near.within)} of the best cost."
     )
@@ -92,14 +92,14 @@ def _pins(draft: Draft, found: Shortlist) -> None:
             "in a word": [str(line.firmness) for line in lines],
             "best plan": [line.verdict for line in lines],
             "used in": [f"{line.used_in} of {found.count}" for line in lines],
-            f"headroom, {found.near.currency} a year": [line.headroom.yearly for line in lines],
-            f"headroom, {found.near.currency} once": [line.headroom.one_off for line in lines],
+            f"headroom, {found.near.currency} a year": [_money(line.headroom.yearly) for line in lines],
+            f"headroom, {found.near.currency} once": [_money(line.headroom.one_off) for line in lines],
             PIN_IN: [now[line.kind, line.name] == IN for line in lines],
             PIN_OUT: [now[line.kind, line.name] == OUT for line in lines],
         }
     )
     numbers = {
-        name: st.column_config.NumberColumn(name, format="localized", step=1)
+        name: st.column_config.TextColumn(name, alignment="right")
         for name in frame.columns
         if name.startswith("headroom")
     }
@@ -127,6 +127,10 @@ def _pins(draft: Draft, found: Shortlist) -> None:
         if draft.checked.study is not None:
             draft.asked = start_job(draft.checked.study).key
         st.switch_page(page_path("plan"))
+
+
+def _money(amount: float | None) -> str:
+    return "" if amount is None else f"{amount:,.0f}"
 
 
 show()

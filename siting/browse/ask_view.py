@@ -94,6 +94,15 @@ def ask(  # noqa: PLR0913 - what is asked, where it is shown, and in what words
     show(kept, top)
 
 
+def places(draft: Draft, question: str) -> tuple[DeltaGenerator, DeltaGenerator]:
+    """Return where headline and controls go: beside each other, or the headline alone once the answer is whole."""
+    job = find_job(job_key(draft.checked.study, question)) if draft.checked.study is not None else None
+    if job is not None and job.answer is not None and job.plan is not None and _whole(kept_question(job)):
+        return st.container(), st.container()
+    top, controls = st.columns([4.4, 1.2], gap="medium")
+    return top, controls
+
+
 def planned(draft: Draft) -> JobView | None:
     """Return the ended job of the plan of the draft as it is, where it found a plan; None otherwise."""
     job = find_job(draft.key) if draft.key else None

@@ -168,10 +168,12 @@ def then_words(line: ClosingLine) -> str:
     return "; ".join(parts)
 
 
-def some(names: Sequence[str]) -> str:
+def some(names: Sequence[str], most: int = NAMED) -> str:
     """Return names in a row, the first few of many."""
-    listed = ", ".join(names[:NAMED])
-    return listed if len(names) <= NAMED else f"{listed} and {len(names) - NAMED} more"
+    shown, left = list(names[:most]), len(names) - most
+    if left > 0:
+        return f"{', '.join(shown)} and {left} more"
+    return shown[0] if len(shown) == 1 else f"{', '.join(shown[:-1])} and {shown[-1]}"
 
 
 def facts(line: ClosingLine, found: Without | None, test: ClosingTest, formats: Formats) -> list[tuple[str, str]]:

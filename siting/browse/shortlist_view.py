@@ -13,6 +13,10 @@ if TYPE_CHECKING:
     from siting.questions.shortlist import Shortlist
 
 
+NAMED = 5
+"""Names that the headline lists before "and n more"."""
+
+
 def shortlist_headline(found: Shortlist) -> tuple[str, str]:
     """
     Return the sentence a shortlist opens with, and a second one.
@@ -34,25 +38,29 @@ def shortlist_headline(found: Shortlist) -> tuple[str, str]:
     names = {word: [line.name for line in found.lines if line.firmness is word] for word in Firmness}
     firm = [*names[Firmness.IRREPLACEABLE], *names[Firmness.ROBUST]]
     within = percent(found.near.within)
-    parts = [f"{some(firm)} {'is' if len(firm) == 1 else 'are'} in every plan within {within} of the best" if firm
-             else f"Nothing is in every plan within {within} of the best"]  # fmt: skip
+    parts = [f"Nothing is in every plan within {within} of the best"]
+    if firm:
+        parts = [f"{some(firm, NAMED)} {'is' if len(firm) == 1 else 'are'} in every plan within {within} of the best"]
     if names[Firmness.REPLACEABLE]:
-        parts.append(f"{some(names[Firmness.REPLACEABLE])} can be replaced")
+        parts.append(f"{some(names[Firmness.REPLACEABLE], NAMED)} can be replaced")
     never = names[Firmness.NEVER]
     if never:
-        parts.append(f"{some(never)} {'is' if len(never) == 1 else 'are'} never worth having")
+        parts.append(f"{some(never, NAMED)} {'is' if len(never) == 1 else 'are'} never worth having")
     return f"{'; '.join(parts)}.", _completeness(found)
 
 
 def _completeness(found: Shortlist) -> str:
     near = found.near
-    count = "Only the best plan is" if found.count == 1 else f"{found.count} plans are"
-    said = f"{count} listed within {percent(near.within)} of the best"
+    within = percent(near.within)
+    if found.count == 1 and near.complete:
+        return f"No other set of sites and suppliers comes within {within} of the best: proved."
+    said = f"{found.count} plan{'' if found.count == 1 else 's'} within {within} of the best"
     if near.complete:
         return f"{said}: proved to be all there are."
     if near.complete_to is not None:
-        return f"{said}; up to {money(near.complete_to, near.currency)} a year none is missing, above that some may be."
-    return f"{said}; others may be missing. The words rest on headroom, which is proved by itself."
+        known = money(near.complete_to, near.currency)
+        return f"{said} listed; up to {known} a year none is missing, above that some may be."
+    return f"{said} listed; others may be missing. The words rest on headroom, which is proved by itself."
 
 
 def rule_table(found: Shortlist) -> str:

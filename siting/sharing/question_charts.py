@@ -216,7 +216,7 @@ def split_chart(found: Counts) -> alt.Chart:
             xOffset=alt.XOffset("part:N", sort=parts),
             y=alt.Y(
                 "money:Q",
-                title=f"more than at the best number, {found.currency} a year",
+                title=f"{found.currency} a year against the best",
                 axis=alt.Axis(format="+~s", tickCount=6),
             ),
             color=alt.Color(
