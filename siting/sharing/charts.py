@@ -80,6 +80,7 @@ def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart:
     frame = pd.DataFrame(rows, columns=["seconds", "money", "what"])
     scale = alt.Scale(domain=_worth_seeing(history), clamp=True, nice=False)
     names = ["best plan so far", "no plan is cheaper than"]
+    legend = alt.Legend(symbolType="stroke", symbolSize=400)
     made: alt.Chart = styled(
         alt.Chart(frame)
         .mark_line(interpolate="step-after", strokeWidth=2.5, point={"size": 26, "filled": True})
@@ -94,11 +95,11 @@ def progress_chart(history: Sequence[Progress], currency: str) -> alt.Chart:
             color=alt.Color(
                 "what:N",
                 title=None,
-                legend=alt.Legend(symbolType="stroke", symbolSize=400),
+                legend=legend,
                 scale=alt.Scale(domain=names, range=[looks.TEAL, looks.OCHRE]),
             ),
             strokeDash=alt.StrokeDash(
-                "what:N", title=None, legend=None, scale=alt.Scale(domain=names, range=[[1, 0], [5, 3]])
+                "what:N", title=None, legend=legend, scale=alt.Scale(domain=names, range=[[1, 0], [5, 3]])
             ),
             tooltip=[alt.Tooltip("what:N", title=" "), alt.Tooltip("money:Q", format=",.0f"), "seconds:Q"],
         )

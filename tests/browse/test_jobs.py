@@ -18,6 +18,7 @@ import pytest
 from siting.browse import jobs
 from siting.browse.jobs import JobState, find_job, job_key, start_job, stop_job
 from siting.browse.kept import kept_answer
+from siting.browse.tasks import PLAN
 from siting.listener import Progress
 from siting.plan.audit import audit
 from siting.plan.proof import Outcome
@@ -233,7 +234,7 @@ def test_the_worker_says_lines_of_json(tiny: Study, tmp_path: Path) -> None:
     write_study(tiny, folder / "study")
     done = subprocess.run(  # noqa: S603 - our own module
         [sys.executable, "-m", "siting.browse.worker", str(folder)],
-        input=json.dumps(asdict(SolveSettings())) + "\n",
+        input=json.dumps({"question": PLAN, "parameters": {}, "settings": asdict(SolveSettings())}) + "\n",
         capture_output=True,
         text=True,
         check=True,
