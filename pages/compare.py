@@ -119,7 +119,7 @@ def _choose(draft: Draft) -> list[Remembered]:
         height=40 + 35 * len(frame),
         disabled=["cost a year", "open", "signed"],
         column_config={
-            "compare": st.column_config.CheckboxColumn("compare", width=80),
+            "compare": st.column_config.CheckboxColumn("compare", width=105),
             "name": st.column_config.TextColumn("name, to be edited", required=True, width=240, max_chars=60),
             "open": st.column_config.TextColumn("open", width="large"),
         },

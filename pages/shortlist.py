@@ -123,8 +123,7 @@ def _pins(draft: Draft, found: Shortlist) -> None:
             (line.kind, line.name): IN if pinned else OUT if shut else FREE
             for line, pinned, shut in zip(lines, edited[PIN_IN], edited[PIN_OUT], strict=True)
         }
-        put_pins(draft, wanted)
-        if draft.checked.study is not None:
+        if put_pins(draft, wanted) and draft.checked.study is not None:
             draft.asked = start_job(draft.checked.study).key
         st.switch_page(page_path("plan"))
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from siting.browse.closing_view import signed
 from siting.browse.tables import Heading, Line, report_table
 from siting.plan.plan import CostLine, SiteVerdict, SupplierVerdict
 from siting.plan.words import percent, percent_up
@@ -23,20 +24,29 @@ HALF = 0.5
 
 def figures_table(found: Comparison) -> str:
     """Return what each plan amounts to, a plan a column, the cost lines below, as an HTML table."""
-    headings = [Heading(text=f"{found.currency} a year"), *(Heading(text=name_shown(name), number=True)
-                                                           for name in found.names)]  # fmt: skip
-    lines = [Line(cells=("Cost", *(_number(plan.cost) for plan in found.plans)), kind="total")]
-    lines += [
-        Line(cells=(label, *cells)) for label, cells in _figures(found) if any(cell not in {"", "0"} for cell in cells)
+    two = len(found.plans) == 2  # noqa: PLR2004 - of two plans there is one difference
+    headings = [
+        Heading(text=f"{found.currency} a year"),
+        *(Heading(text=name_shown(name), number=True) for name in found.names),
+        *([Heading(text="Difference", number=True)] if two else []),
     ]
-    lines.append(Line(cells=("Cost lines", *("" for _ in found.plans)), kind="total"))
+
+    def money_cells(amounts: Sequence[float]) -> tuple[str, ...]:
+        cells = tuple(map(_number, amounts))
+        return (*cells, signed(amounts[1] - amounts[0])) if two else cells
+
+    blank = ("",) if two else ()
+    lines = [Line(cells=("Cost", *money_cells([plan.cost for plan in found.plans])), kind="total")]
+    lines += [
+        Line(cells=(label, *cells, *blank))
+        for label, cells in _figures(found)
+        if any(cell not in {"", "0"} for cell in cells)
+    ]
+    lines.append(Line(cells=("Cost lines", *("" for _ in found.plans), *blank), kind="total"))
     differ = [row for row in found.cost_lines if max(row.amounts) - min(row.amounts) >= HALF]
     same = [row for row in found.cost_lines if row not in differ]
-    lines += [Line(cells=(LINE_NAMES[CostLine(row.name)], *map(_number, row.amounts))) for row in differ]
-    lines += [
-        Line(cells=(f"{LINE_NAMES[CostLine(row.name)]}, the same", *map(_number, row.amounts)), kind="faint")
-        for row in same
-    ]
+    lines += [Line(cells=(LINE_NAMES[CostLine(row.name)], *money_cells(row.amounts))) for row in differ]
+    lines += [Line(cells=(LINE_NAMES[CostLine(row.name)], *money_cells(row.amounts)), kind="faint") for row in same]
     return report_table(headings, lines)
 
 
@@ -47,8 +57,11 @@ def _figures(found: Comparison) -> list[tuple[str, list[str]]]:
         return [value(plan) for plan in found.plans]
 
     more = f"More than {name_shown(found.names[0])}"
+    several = [] if len(found.plans) == 2 else [  # noqa: PLR2004 - as above
+        (more, each(lambda plan: f"{plan.cost - first:+,.0f}" if abs(plan.cost - first) >= HALF else ""))
+    ]  # fmt: skip
     return [
-        (more, each(lambda plan: f"{plan.cost - first:+,.0f}" if abs(plan.cost - first) >= HALF else "")),
+        *several,
         ("No plan costs less than", each(lambda plan: _number(plan.bound))),
         ("Proof", each(_proof)),
         ("Saving against today", each(lambda plan: _number(plan.saving))),

@@ -46,8 +46,14 @@ def remember(draft: Draft) -> None:
     if job is None or job.state is not JobState.DONE or any(each.number == job.number for each in draft.plans):
         return
     kept = kept_answer(job)
-    if kept.answer.plan is not None:
-        _add(draft, _unused_name(draft, "Plan"), kept.study, kept.answer.plan, job.number)
+    plan = kept.answer.plan
+    if plan is None:
+        return
+    same = [each for each in draft.plans if (each.plan.fingerprint, each.plan.cost) == (plan.fingerprint, plan.cost)]
+    if same:
+        same[0].number = job.number
+    else:
+        _add(draft, _unused_name(draft, "Plan"), kept.study, plan, job.number)
 
 
 def remember_zip(draft: Draft, name: str, content: bytes) -> Remembered:

@@ -67,7 +67,7 @@ def _row(headings: Sequence[Heading], line: Line) -> str:
     if line.wide:
         span, shown = f' colspan="{len(shown) - 1}"', shown[:2]
     cells = "".join(
-        f"<td{_class(heading)}{span if position else ''}>{'' if position else mark}{html.escape(cell)}</td>"
+        f"<td{span if span and position else _class(heading)}>{'' if position else mark}{html.escape(cell)}</td>"
         for position, (heading, cell) in enumerate(shown)
     )
     kind = f' class="{line.kind}"' if line.kind else ""

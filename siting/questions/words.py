@@ -67,6 +67,8 @@ def comparison_headline(found: Comparison) -> str:
     else:
         costs = f"{first.name} is the cheapest, {money(gap, found.currency)} a year less than {second.name}"
     differ, moved = len(found.differing), len(found.customers)
+    if not differ and not moved:
+        return f"{costs}; no verdict differs and every customer is served from the same places."
     verdicts = f"{differ} verdict{'' if differ == 1 else 's'} differ{'s' if differ == 1 else ''}"
     customers = f"{moved} customer{'' if moved == 1 else 's'} change{'s' if moved == 1 else ''} site"
     return f"{costs}; {verdicts} and {customers}."

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import pytest
 
@@ -177,6 +177,8 @@ def test_plans_are_remembered_named_and_compared(planned: AppTest) -> None:
     text = said(app)
     assert "Plan 1" in text
     assert text.index("Verdicts that differ") < text.index("Cost lines side by side")
+    again = on(solved(app), "compare")
+    assert [each.name for each in draft_of(again).plans] == ["Plan 1", "Plan 2"]
     key = f"plans-{draft.token}-2-0"
     app.session_state[key] = {"edited_rows": {1: {"name": "Without Graz"}}, "added_rows": [], "deleted_rows": []}
     app = checked(app.run())
@@ -251,7 +253,7 @@ def test_results_travel_between_processes_without_loss(towns: Study) -> None:
         assert _numbers(there) == _numbers(found)
 
 
-def _numbers(found: object) -> list[object]:
+def _numbers(found: Any) -> list[object]:  # noqa: ANN401 - a result of any question
     """Return what a result says, without the seconds it took."""
     if hasattr(found, "near"):
         return [(line.name, line.firmness, line.used_in, line.headroom.yearly) for line in found.lines]
