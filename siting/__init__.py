@@ -10,7 +10,16 @@ import importlib
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
-    from siting.errors import AuditError, EngineError, Fault, PlanFileError, SettingsError, SitingError, StudyError
+    from siting.errors import (
+        AuditError,
+        DataFileError,
+        EngineError,
+        Fault,
+        PlanFileError,
+        SettingsError,
+        SitingError,
+        StudyError,
+    )
     from siting.listener import Listener, Progress, Silent, Stop
     from siting.network.network import Network, build_network
     from siting.plan.audit import audit
@@ -27,17 +36,22 @@ if TYPE_CHECKING:
     from siting.questions.headroom_result import Headroom
     from siting.questions.runners_up import runners_up
     from siting.questions.runners_up_result import RunnersUp
+    from siting.questions.shortlist import Shortlist, shortlist
     from siting.questions.store import MemoryStore, Store
-    from siting.sharing.map import MapPage, draw_map, write_map
+    from siting.questions.zone_error import ZoneError, zone_error
+    from siting.sharing.map import MapPage, draw_differences, draw_map, write_map
     from siting.solving.solve import solve
     from siting.study.demo import demo_folder
     from siting.study.fingerprint import fingerprint
+    from siting.study.locate import Found, find_place
+    from siting.study.orders import OrderColumns, OrderReading, Rollup, roll_up
     from siting.study.read import read_study
     from siting.study.settings import Settings, SolveSettings
     from siting.study.tables import Study
     from siting.study.variant import Variant, read_variant, write_variant
     from siting.study.varying import Varied, vary
     from siting.study.write import write_study, write_workbook
+    from siting.study.zones import Zoned, zone_study
 
     __version__: str
 
@@ -47,22 +61,28 @@ __all__ = [
     "ClosingTest",
     "Comparison",
     "Counts",
+    "DataFileError",
     "EngineError",
     "Fault",
+    "Found",
     "Headroom",
     "Listener",
     "MapPage",
     "MemoryStore",
     "Named",
     "Network",
+    "OrderColumns",
+    "OrderReading",
     "Outcome",
     "Plan",
     "PlanFileError",
     "Progress",
     "Proof",
+    "Rollup",
     "RunnersUp",
     "Settings",
     "SettingsError",
+    "Shortlist",
     "Silent",
     "SitingError",
     "SolveSettings",
@@ -73,6 +93,8 @@ __all__ = [
     "Today",
     "Variant",
     "Varied",
+    "ZoneError",
+    "Zoned",
     "__version__",
     "audit",
     "build_network",
@@ -80,14 +102,18 @@ __all__ = [
     "compare",
     "counts",
     "demo_folder",
+    "draw_differences",
     "draw_map",
+    "find_place",
     "fingerprint",
     "headroom",
     "read_named",
     "read_plan_folder",
     "read_study",
     "read_variant",
+    "roll_up",
     "runners_up",
+    "shortlist",
     "solve",
     "vary",
     "write_map",
@@ -95,11 +121,18 @@ __all__ = [
     "write_study",
     "write_variant",
     "write_workbook",
+    "zone_error",
+    "zone_study",
 ]
 
 _HOMES = {
+    "siting.study.zones": ("Zoned", "zone_study"),
+    "siting.study.orders": ("OrderColumns", "OrderReading", "Rollup", "roll_up"),
+    "siting.study.locate": ("Found", "find_place"),
+    "siting.questions.zone_error": ("ZoneError", "zone_error"),
     "siting.errors": (
         "AuditError",
+        "DataFileError",
         "EngineError",
         "Fault",
         "PlanFileError",
@@ -113,7 +146,7 @@ _HOMES = {
     "siting.plan.folder": ("read_plan_folder", "write_plan_folder"),
     "siting.plan.plan": ("Answer", "Plan", "Today"),
     "siting.plan.proof": ("Outcome", "Proof"),
-    "siting.sharing.map": ("MapPage", "draw_map", "write_map"),
+    "siting.sharing.map": ("MapPage", "draw_differences", "draw_map", "write_map"),
     "siting.questions.closing": ("closing",),
     "siting.questions.closing_result": ("ClosingTest",),
     "siting.questions.compare": ("Named", "compare", "read_named"),
@@ -124,6 +157,7 @@ _HOMES = {
     "siting.questions.headroom_result": ("Headroom",),
     "siting.questions.runners_up": ("runners_up",),
     "siting.questions.runners_up_result": ("RunnersUp",),
+    "siting.questions.shortlist": ("Shortlist", "shortlist"),
     "siting.questions.store": ("MemoryStore", "Store"),
     "siting.solving.solve": ("solve",),
     "siting.study.demo": ("demo_folder",),

@@ -34,13 +34,13 @@ class TariffBook:
 
     def __init__(self, study: Study) -> None:
         self._rows = study.tariffs
-        site_country = {row.site: country_key(row.country) for row in study.sites}
-        supplier_country = {row.supplier: country_key(row.country) for row in study.suppliers}
-        customer_country = {row.customer: country_key(row.country) for row in study.customers}
+        sites = {row.site: row.country for row in study.sites}
+        suppliers = {row.supplier: row.country for row in study.suppliers}
+        customers = {row.customer: row.country for row in study.customers}
         self._countries = {
-            Leg.INBOUND: (supplier_country, site_country),
-            Leg.OUTBOUND: (site_country, customer_country),
-            Leg.DIRECT: (supplier_country, customer_country),
+            Leg.INBOUND: (suppliers, sites),
+            Leg.OUTBOUND: (sites, customers),
+            Leg.DIRECT: (suppliers, customers),
         }
         self._drop = {row.customer: row.drop_size or study.settings.drop_size for row in study.customers}
         self._inbound_size = study.settings.inbound_size
@@ -91,7 +91,7 @@ class TariffBook:
     def _between(self, haul: Haul) -> dict[str, list[TariffRow]]:
         """Return the rows, by tariff, whose leg and countries are those of a lane."""
         origins, destinations = self._countries[haul.leg]
-        ends = haul.leg, origins[haul.origin], destinations[haul.destination]
+        ends = haul.leg, country_key(origins[haul.origin]), country_key(destinations[haul.destination])
         if ends not in self._by_ends:
             held: dict[str, list[TariffRow]] = defaultdict(list)
             for row in self._rows:

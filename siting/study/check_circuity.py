@@ -13,6 +13,8 @@ if TYPE_CHECKING:
 
 def check_circuity(draft: Draft) -> None:
     """Note pairs of countries that are there twice, and warn of countries without a place."""
+    if not draft.circuity.rows:
+        return
     there, first = countries_of(draft), dict[frozenset[str], int]()
     for row in draft.circuity.rows:
         if draft.gathering.hurt("circuity", row.row, "country"):

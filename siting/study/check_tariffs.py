@@ -120,8 +120,9 @@ def _check_overlaps(draft: Draft) -> None:
 
 def _check_countries(draft: Draft) -> None:
     """Warn of countries that no place of the study is in: a slip of the pen leaves a zone without lanes."""
-    there = countries_of(draft)
-    for row, column, country in _countries(draft):
+    named = list(_countries(draft))
+    there = countries_of(draft) if named else set()
+    for row, column, country in named:
         if country_key(country) not in there:
             wrong = "no place of the study has this country, so that no lane fits the row"
             repair = "Write it as in sites, suppliers or customers; codes such as AT and names both do"

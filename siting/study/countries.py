@@ -27,6 +27,7 @@ _NO_COUNTRIES = frozenset({"EU", "EZ", "QO", "UN", "XA", "XB", "ZZ"})
 """Codes beside those of countries: unions, the unknown, and what tests of software use."""
 
 
+@cache
 def country_code(text: str) -> str:
     """
     Return the ISO 3166 code of two letters of a country as typed.
