@@ -39,7 +39,7 @@ def bounding(
     network
         What to decide; any feature.
     settings
-        Gap and time limit.
+        Gap and time limit; compiling the search, once on a machine, does not count.
     listener
         Gets `update` with elapsed seconds, best cost and bound in money a year.
     stop
@@ -64,7 +64,10 @@ def bounding(
     from siting.solving.bounding.compiled import is_compiled  # noqa: PLC0415 - loads the compiler
 
     if not is_compiled():
+        from siting.solving.bounding.warm import compile_loops  # noqa: PLC0415 - only once a machine
+
         listener.update(Progress(elapsed_s=0.0, phase="compiling the search, once on this machine"))
+        compile_loops()
     from siting.solving.bounding.run import Run  # noqa: PLC0415 - loads the compiled loops
 
     return Run(network, settings, listener, stop).solve(start)

@@ -12,6 +12,7 @@ import pytest
 
 from siting.listener import Progress, Silent, Stop
 from siting.network.network import NetworkRule, build_network
+from siting.solving.bounding import compiled
 from siting.solving.bounding.engine import bounding
 from siting.solving.bounding.problem import handles
 from siting.solving.direct import direct
@@ -21,6 +22,8 @@ from tests.published.large_instances import recipe
 from tests.solving.solved import best
 
 if TYPE_CHECKING:
+    from pathlib import Path
+
     from siting.network.network import Network
     from tests.solving.conftest import NetworkMaker
 
@@ -51,6 +54,17 @@ def test_the_same_run_gives_the_same_answer() -> None:
     assert first.decisions is not None
     assert second.decisions is not None
     assert (first.decisions.option_open == second.decisions.option_open).all()
+
+
+def test_compiling_is_said_and_takes_no_time_of_the_search(monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> None:
+    """Where no machine code is kept, the user is told, and a time limit far below the compiler's still finds a plan."""
+    monkeypatch.setattr(compiled, "_FOLDER", tmp_path)
+    heard = Recorder()
+    network = build_network(recipe(10, 20, 3, 1))
+    result = bounding(network, SolveSettings(gap=1e-4, time_limit_s=5.0), listener=heard, stop=Stop())
+    assert heard.updates[0].phase == "compiling the search, once on this machine"
+    assert result.decisions is not None
+    assert all(update.elapsed_s < 5.0 for update in heard.updates)
 
 
 def test_a_stop_is_heard_and_leaves_no_thread(hard: Network) -> None:
