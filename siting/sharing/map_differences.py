@@ -8,6 +8,7 @@ from siting.plan.plan import LOAD_TOLERANCE
 from siting.sharing import looks, map_facts
 from siting.sharing.map_data import dots_json, frame_json, loads_of, located, plan_json
 from siting.study.tables import Leg
+from siting.study.words import counted
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
@@ -84,7 +85,7 @@ def differences_json(  # noqa: PLR0913 - two plans with their names, and how the
     lanes = [_moved(change, place) for change in changes]
     notes = [f"Only what differs is drawn: dashed carries less in {names[1]} than in {names[0]}, solid more."]
     if left_out:
-        notes.append(f"{left_out} lanes lead to places that the study of {names[1]} does not have; they are not drawn.")
+        notes.append(f"Not drawn: {counted(left_out, 'lane')} of places that the study of {names[1]} does not have.")
     moved = {kind: _throughput_change(before, after, kind) for kind in ("sites", "suppliers")}
     return {
         **whole,
