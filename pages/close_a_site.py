@@ -57,7 +57,7 @@ def _answer(kept: KeptQuestion, top: DeltaGenerator) -> None:
     st.html(ranking_table(test))
     st.caption(_how_sure(test))
     if not test.complete:
-        notice("Stopped: what reads `not asked` was not begun.", kind="stale")
+        notice('Stopped: what reads "not asked" was not begun, what reads "up to" may cost less.', kind="stale")
     names = [line.name for line in test.lines]
     key = f"without-{kept.plan.fingerprint}"
     section("One at a time")
@@ -71,8 +71,8 @@ def _how_sure(test: ClosingTest) -> str:
     return (
         f"More than the plan's {test.cost or 0.0:,.0f} {test.currency} a year. Others take over: every other verdict "
         "stays, only flows move. Everything re-planned: what opens, closes and is signed is decided afresh. Each "
-        f"search came within {percent_up(test.gap_asked)} of the best or says otherwise; at least: what no plan "
-        "without it can undercut."
+        f"search came within {percent_up(test.gap_asked)} of the best, but for those that read 'up to'; at least: what "
+        "no plan without it can undercut."
     )
 
 

@@ -23,8 +23,8 @@ if TYPE_CHECKING:
     from siting.browse.kept import KeptQuestion
     from siting.questions.shortlist import Shortlist
 
-PERCENTAGES = (0.5, 1.0, 2.0, 5.0, 10.0)
-USUAL_PERCENTAGE = 2.0
+PERCENTAGES = (0.1, 0.2, 0.5, 1.0, 2.0, 5.0, 10.0)
+USUAL_PERCENTAGE = 0.5
 PIN_IN, PIN_OUT = "pin in", "pin out"
 EDITOR_HEIGHT_PX = 420
 

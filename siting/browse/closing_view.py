@@ -58,7 +58,13 @@ def _cheapest(test: ClosingTest, kind: str) -> str:
         if all(line.replan is not None and line.replan.possible is False for line in lines):
             return f"No {kind} can be done without: no plan meets everything that is asked without it."
         return f"What it costs to {doing} a {kind} is not known yet."
-    return f"{opening}: {best.name}, {answer_words(best, test.currency)}."
+    so_far = "" if all(_settled(line.replan) for line in lines) else " so far, the search being cut short"
+    return f"{opening}{so_far}: {best.name}, {answer_words(best, test.currency)}."
+
+
+def _settled(found: Without | None) -> bool:
+    """Return whether an answer is as good as was asked."""
+    return found is not None and found.outcome in {Outcome.PROVED, Outcome.WITHIN_GAP, Outcome.IMPOSSIBLE}
 
 
 def answer_words(line: ClosingLine, currency: str) -> str:
@@ -84,7 +90,8 @@ def _extra_words(found: Without | None, currency: str, *, brief: bool = False) -
     amount = money(abs(found.extra_cost), currency)
     if found.extra_cost < 0:
         return f"{amount} a year less"
-    return amount if brief else f"{amount} a year more"
+    most = "" if _settled(found) else "at most "
+    return f"{most}{amount}" if brief else f"{most}{amount} a year more"
 
 
 def ranking_table(test: ClosingTest) -> str:
@@ -131,7 +138,8 @@ def _cells(found: Without | None, *, least: bool = False) -> tuple[str, ...]:
         return ("impossible", *blank)
     if found.extra_cost is None:
         return ("not yet", *blank)
-    more = "same" if found.tied else signed(found.extra_cost)
+    most = "" if _settled(found) else "up to "
+    more = "same" if found.tied else f"{most}{signed(found.extra_cost)}"
     low = () if not least else ("" if found.extra_least is None else signed(found.extra_least),)
     return (more, *low, signed(found.extra_one_off) if found.extra_one_off else "")
 

@@ -132,7 +132,7 @@ def test_a_shortlist_explains_its_words_and_pins(planned: AppTest) -> None:
     before = draft.table("sites").drop(columns="ruling")
     frame = app.dataframe[0].value
     row = frame["name"].tolist().index("Graz")
-    key = f"pins-{draft.token}-{draft.version}-0.02"
+    key = f"pins-{draft.token}-{draft.version}-0.005"
     app.session_state[key] = {"edited_rows": {row: {"pin out": True, "pin in": False}}, "added_rows": [],
                               "deleted_rows": []}  # fmt: skip
     app = press(checked(app.run()), "Pin these and plan again")
@@ -148,7 +148,7 @@ def test_pins_in_and_out_at_once_are_refused(planned: AppTest) -> None:
     app = asked(planned, "shortlist")
     draft = draft_of(app)
     name = app.dataframe[0].value["name"][0]
-    key = f"pins-{draft.token}-{draft.version}-0.02"
+    key = f"pins-{draft.token}-{draft.version}-0.005"
     app.session_state[key] = {"edited_rows": {0: {"pin out": True, "pin in": True}}, "added_rows": [],
                               "deleted_rows": []}  # fmt: skip
     app = checked(app.run())
