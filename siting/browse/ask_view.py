@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 import streamlit as st
 
-from siting.browse.jobs import JobState, JobView, find_job, job_key, start_job, stop_job
+from siting.browse.jobs import JobState, JobView, find_job, question_key, start_job, stop_job, study_mark
 from siting.browse.kept import KeptQuestion, kept_question
 from siting.browse.shell import headline, notice, page_path
 from siting.browse.tasks import NOTHING
@@ -68,8 +68,7 @@ def ask(  # noqa: PLR0913 - what is asked, where it is shown, and in what words
             _plan_first(draft)
         _stale(before, "", show)
         return
-    study = draft.checked.sound()
-    key = job_key(study, question, parameters)
+    key = question_key(draft.key, question, parameters)
     job = find_job(key)
     if job is not None:
         draft.questions[question] = key
@@ -96,7 +95,7 @@ def ask(  # noqa: PLR0913 - what is asked, where it is shown, and in what words
 
 def places(draft: Draft, question: str) -> tuple[DeltaGenerator, DeltaGenerator]:
     """Return where headline and controls go: beside each other, or the headline alone once the answer is whole."""
-    job = find_job(job_key(draft.checked.study, question)) if draft.checked.study is not None else None
+    job = find_job(question_key(draft.key, question)) if draft.key else None
     if job is not None and job.answer is not None and job.plan is not None and _whole(kept_question(job)):
         return st.container(), st.container()
     top, controls = st.columns([4.4, 1.2], gap="medium")
@@ -187,7 +186,7 @@ def _stale(before: JobView | None, key: str, show: Show) -> None:
                 st.rerun()
             _live(before.key)
             return
-        same = bool(key) and key.partition(":")[0] == before.key.partition(":")[0]
+        same = bool(key) and study_mark(key) == study_mark(before.key)
         what = "this was asked otherwise" if same else "this answers the tables and settings as they were before"
         notice(f"Out of date: {what}. Ask again for what is there now.", kind="stale")
         show(kept_question(before), st.container())

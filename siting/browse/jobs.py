@@ -140,8 +140,19 @@ _numbers = itertools.count(1)
 def job_key(study: Study, question: str = PLAN, parameters: Mapping[str, Any] = NOTHING) -> str:
     """Return the key of asking this of the study: its fingerprint, its `[solve]` settings, question and parameters."""
     solve = study.settings.solve
-    key = f"{fingerprint(study)}:{solve.engine}:{solve.gap!r}:{solve.time_limit_s!r}"
-    return key if question == PLAN else f"{key}:{question}:{json.dumps(parameters, sort_keys=True)}"
+    return question_key(
+        f"{fingerprint(study)}:{solve.engine}:{solve.gap!r}:{solve.time_limit_s!r}", question, parameters
+    )
+
+
+def question_key(plan_key: str, question: str, parameters: Mapping[str, Any] = NOTHING) -> str:
+    """Return the key of asking something of the study whose plan has the key; the fingerprint is its first part."""
+    return plan_key if question == PLAN else f"{plan_key}:{question}:{json.dumps(parameters, sort_keys=True)}"
+
+
+def study_mark(key: str) -> str:
+    """Return the fingerprint of the study that a job's key is about."""
+    return key.partition(":")[0]
 
 
 def start_job(
@@ -239,7 +250,7 @@ def _hand_over(job: _Job) -> None:
     if job.plan is not None:
         (job.folder / PLAN_FILE).write_text(json.dumps(job.plan), encoding="utf-8")
     with _guard:
-        kept = list(_searches.get(fingerprint(job.study), {}).values())
+        kept = list(_searches.get(study_mark(job.key), {}).values())
     if kept:
         (job.folder / KEPT_FILE).write_text(json.dumps(kept), encoding="utf-8")
 
@@ -340,7 +351,7 @@ def _take(job: _Job, event: dict[str, Any]) -> None:
 
 def _keep_search(job: _Job, event: dict[str, Any]) -> None:
     """Keep a search for the questions on the same study that come after."""
-    mark = fingerprint(job.study)
+    mark = study_mark(job.key)
     told = {"key": event["key"], "resolved": event["resolved"]}
     with _guard:
         _searches.setdefault(mark, {})[told_key(told)] = told
