@@ -23,6 +23,7 @@ from siting.browse.drafts import (
     keep_draft,
 )
 from siting.browse.parcels import tables_zip
+from siting.browse.sheets_view import remember_files, show_sheets
 from siting.browse.shell import (
     DEMO_SOURCE,
     LOST,
@@ -76,6 +77,7 @@ def show() -> None:
             "behind many others). The study was opened afresh.",
             kind="stale",
         )
+    show_sheets(draft)
     _proposals(draft)
     _work(draft.checked)
     _tables(draft, draft.checked)
@@ -377,12 +379,14 @@ def _open_files(draft: Draft, files: Sequence[tuple[str, bytes]]) -> None:
     except StudyError as error:
         notices((str(fault) for fault in error.faults), kind="fault", title="These files were not opened")
         return
-    _open(draft, raw, ", ".join(name for name, _ in files))
+    _open(draft, raw, ", ".join(name for name, _ in files), files)
 
 
-def _open(draft: Draft, raw: RawStudy, source: str) -> None:
+def _open(draft: Draft, raw: RawStudy, source: str, files: Sequence[tuple[str, bytes]] = ()) -> None:
     st.session_state[LOST] = False
-    use_draft(keep_draft(raw, source, before=draft.token))
+    opened = keep_draft(raw, source, before=draft.token)
+    remember_files(opened, files)
+    use_draft(opened)
     st.rerun()
 
 

@@ -195,6 +195,19 @@ class Draft:
             self.raw = apply_mapping(self.raw, replace(mapping_from(self.raw, proposals), name=CONFIRMED))
             self.version += 1
 
+    def read_again(self, raw: RawStudy) -> None:
+        """
+        Put the same files, read in another way, in the place of what was read.
+
+        Parameters
+        ----------
+        raw
+            The study as read now.
+        """
+        with self._lock:
+            self.raw = raw
+            self.version += 1
+
     def _has(self, name: str) -> bool:
         return name in self.raw.tables
 

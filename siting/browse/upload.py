@@ -5,13 +5,15 @@ from __future__ import annotations
 import tempfile
 from collections import Counter
 from pathlib import Path, PurePosixPath, PureWindowsPath
+from types import MappingProxyType
 from typing import TYPE_CHECKING
 
 from siting.errors import Fault, StudyError
+from siting.study.mapping import ColumnMapping, Layout
 from siting.study.read import read_raw
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Mapping, Sequence
 
     from siting.study.raw import RawStudy
 
@@ -21,8 +23,10 @@ UPLOAD_TYPES = ["xlsx", "csv", "toml"]
 LONGEST_NAME = 100
 """Characters of a file name that are kept, counted from its end."""
 
+NOTHING: Mapping[str, str] = MappingProxyType({})
 
-def read_upload(files: Sequence[tuple[str, bytes]]) -> RawStudy:
+
+def read_upload(files: Sequence[tuple[str, bytes]], sources: Mapping[str, str] = NOTHING) -> RawStudy:
     """
     Return a study from files in memory.
 
@@ -31,6 +35,8 @@ def read_upload(files: Sequence[tuple[str, bytes]]) -> RawStudy:
     files
         File names with their content: one .xlsx workbook alone, or the CSV tables and study.toml of a study. No file
         at all is a study without tables.
+    sources
+        Tables by the name of the sheet, or of the file without its ending, that holds them under another name.
 
     Returns
     -------
@@ -48,7 +54,9 @@ def read_upload(files: Sequence[tuple[str, bytes]]) -> RawStudy:
         folder = Path(scratch)
         for name, (_, content) in zip(names, files, strict=True):
             (folder / name).write_bytes(content)
-        return read_raw(folder / names[0] if len(names) == 1 and _is_workbook(names[0]) else folder)
+        layouts = tuple(Layout(table=table, header="", source=source) for source, table in sources.items())
+        path = folder / names[0] if len(names) == 1 and _is_workbook(names[0]) else folder
+        return read_raw(path, ColumnMapping(layouts=layouts))
 
 
 def _refuse_doubt(names: Sequence[str]) -> None:

@@ -83,3 +83,12 @@ def test_no_file_is_an_empty_study() -> None:
     raw = read_upload([])
     assert raw.tables == {}
     assert check_raw(raw).faults
+
+
+def test_a_sheet_of_another_name_is_read_as_told() -> None:
+    """Told which table a file is, the upload is the study; untold, the file is a stranger."""
+    renamed = [("Kunden.csv" if name == "customers.csv" else name, content) for name, content in FILES]
+    assert "Kunden" in read_upload(renamed).strangers
+    told = read_upload(renamed, {"Kunden": "customers"})
+    assert told.strangers == ()
+    assert [row.customer for row in check_raw(told).sound().customers] == ["Vienna", "Munich", "Prague", "Graz"]
