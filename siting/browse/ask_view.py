@@ -65,7 +65,7 @@ def ask(  # noqa: PLR0913 - what is asked, where it is shown, and in what words
     before = _asked_before(draft, question)
     if plan_job is None or plan_job.answer is None:
         with top:
-            _plan_first(draft)
+            _plan_first(draft, what)
         _stale(before, "", show)
         return
     key = question_key(draft.key, question, parameters)
@@ -133,7 +133,7 @@ def _start(
     st.rerun()
 
 
-def _plan_first(draft: Draft) -> None:
+def _plan_first(draft: Draft, what: str) -> None:
     """Say why there is no plan to ask about, and lead to it."""
     study = draft.checked.study
     job = find_job(draft.key) if draft.key else None
@@ -147,7 +147,7 @@ def _plan_first(draft: Draft) -> None:
         answer = answer_from_json(job.answer)
         headline("There is no plan to ask about", second=plan_headline(answer, currency=study.settings.currency))
     else:
-        headline("Plan first: this question is about the plan", second="There is none of the tables as they are now.")
+        headline("Plan first: this question is about the plan", second=what)
     if st.button("Go to Plan", type="primary"):
         st.switch_page(page_path("plan"))
 
