@@ -16,7 +16,7 @@ from siting.solving.bounding.transport import SHUT_SITE, Transport
 if TYPE_CHECKING:
     from collections.abc import Callable
 
-    from siting.arrays import Floats, Positions
+    from siting.arrays import Flags, Floats, Positions
     from siting.solving.bounding.problem import Problem
     from siting.solving.bounding.relaxation import Relaxation
 
@@ -156,6 +156,31 @@ class Incumbents:
                         cost, chosen, better = price, other, True
             found |= self.offer(cost, chosen)
         return found
+
+    def descend(self, chosen: Positions, stays: Flags, *, trials: int) -> tuple[float, Positions]:
+        """
+        Return what moves make of a set while some sites stay as they are; the best plan is left alone.
+
+        Parameters
+        ----------
+        chosen
+            (S,) the option of each open site, `SHUT_SITE` elsewhere.
+        stays
+            (S,) True for sites that no move may touch.
+        trials
+            Greatest number of moves tried.
+
+        Returns
+        -------
+        cost, chosen
+            Money a year without the problem's constant, infinite where the set cannot serve everything; and the set.
+        """
+        problem = self.problem
+        cost = self._transport.cost_of(chosen, halted=self._halted)
+        if not np.isfinite(cost):
+            return cost, chosen
+        fixed = (problem.must_open | stays).astype(np.int8)
+        return self._transport.descend(cost, fixed, problem.fewest, problem.most, trials=trials, halted=self._halted)
 
     def price(self, chosen: Positions) -> float:
         """Return the exact cost of a set of open options, keeping it if best."""

@@ -23,7 +23,7 @@ from siting.solving.bounding.tree import Goal, Node, search_tree
 from siting.solving.engine import EngineResult
 
 if TYPE_CHECKING:
-    from siting.arrays import Positions
+    from siting.arrays import Flags, Floats, Positions
     from siting.listener import Listener, Stop
     from siting.network.decisions import Decisions
     from siting.network.network import Network
@@ -57,6 +57,51 @@ class _Known:
     counts: dict[int, float]
 
 
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Root:
+    """What the relaxation at the root gives, nothing split yet."""
+
+    problem: Problem
+    bound: float
+    """Money a year without the problem's constant."""
+    v: Floats
+    """(R,) the multipliers that prove it, money per load."""
+    used: Floats
+    """(O,) how far the averaged solution opens each of the problem's options."""
+    plans: Incumbents
+    """The best plan found on the way, and the moves that improve others."""
+
+    @property
+    def open_options(self) -> Positions:
+        """Return the options open in the best plan, by position in the network; empty where none was found."""
+        chosen = self.plans.chosen
+        return self.problem.option[chosen[chosen >= 0]]
+
+    def descend(self, options: Positions, stays: Flags, *, trials: int) -> tuple[float, Positions]:
+        """
+        Return what moves make of a set of open options while some sites stay as they are.
+
+        Parameters
+        ----------
+        options
+            Positions in the network.
+        stays
+            (S,) True for sites of the problem that no move may touch.
+        trials
+            Greatest number of moves tried.
+
+        Returns
+        -------
+        cost, options
+            Money a year without the problem's constant, infinite where the set cannot serve everything; and the set.
+        """
+        chosen = np.full(self.problem.sites, SHUT_SITE, dtype=np.int32)
+        place = np.flatnonzero(np.isin(self.problem.option, options))
+        chosen[self.problem.option_site[place]] = place
+        cost, chosen = self.plans.descend(chosen, stays, trials=trials)
+        return cost, self.problem.option[chosen[chosen >= 0]]
+
+
 class Run:
     """One solve: the problem, the clock and what is known."""
 
@@ -70,6 +115,7 @@ class Run:
         self._goal = Goal(gap=max(settings.gap * GAP_MARGIN, LEAST_GAP), constant=self._problem.constant)
         self._known = _Known(bound=-float("inf"), counts={})
         self._best: Incumbents | None = None
+        self._from_root: tuple[Relaxation, Incumbents, Box, Ascent] | None = None
 
     def _halted(self) -> bool:
         return self._stop.requested or time.monotonic() - self._began > self._limit_s
@@ -102,6 +148,37 @@ class Run:
             return EngineResult(decisions=None, bound=None, impossible=True)
         box = whole_box(problem)
         root = self._climb(relaxation, best, box)
+        self._deepen(relaxation, best, box, root)
+        return self._result(best)
+
+    def root(self) -> Root | None:
+        """
+        Return what the relaxation at the root gives; None where something makes the problem impossible at sight.
+
+        A requirement of the network that the problem does not state is left out: the bound holds all the same.
+        """
+        problem = self._problem
+        if bool((np.diff(problem.row_start) == 0).any()) or not problem.rows or not problem.sites:
+            return None
+        relaxation = Relaxation(problem)
+        best = self._best = Incumbents(problem, relaxation, self._halted)
+        best.try_all()
+        box = whole_box(problem)
+        found = self._climb(relaxation, best, box)
+        if not np.isfinite(found.bound):
+            return None
+        self._from_root = (relaxation, best, box, found)
+        return Root(problem=problem, bound=found.bound, v=found.v, used=found.used, plans=best)
+
+    def deepen(self) -> float:
+        """Go on from `root` to the end of the search; return the bound, money a year with the problem's constant."""
+        if self._from_root is not None:
+            self._deepen(*self._from_root)
+        return self._known.bound + self._problem.constant
+
+    def _deepen(self, relaxation: Relaxation, best: Incumbents, box: Box, root: Ascent) -> None:
+        """Bound the numbers of sites, then branch."""
+        problem = self._problem
         if not self._met(best):
             counted = bound_counts(
                 problem,
@@ -116,7 +193,6 @@ class Run:
             box = replace(box, fewest=counted.fewest, most=counted.most)
         if not self._met(best) and not self._halted():
             self._branch(relaxation, best, box, root)
-        return self._result(best)
 
     def _cutoff(self, best: Incumbents) -> float:
         return self._goal.cutoff(best.cost)

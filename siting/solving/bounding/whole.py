@@ -13,12 +13,13 @@ from __future__ import annotations
 
 import math
 import time
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 
-from siting.listener import Progress
+from siting.listener import Progress, Silent
+from siting.solving.bounding.whole_core import Until, begins_with_core, core_of
 from siting.solving.bounding.whole_levers import Levers
 from siting.solving.bounding.whole_plans import Plans
 from siting.solving.bounding.whole_problem import state
@@ -28,9 +29,13 @@ from siting.solving.bounding.whole_tree import Tree
 from siting.solving.engine import EngineResult
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from siting.listener import Listener, Stop
     from siting.network.decisions import Decisions
     from siting.network.network import Network
+    from siting.solving.bounding.whole_core import Core
+    from siting.solving.bounding.whole_problem import WholeProblem
     from siting.solving.bounding.whole_program import Relaxed
     from siting.study.settings import SolveSettings
 
@@ -42,6 +47,12 @@ MOVES = 1000
 
 LATER_MOVES = 200
 """Moves from a plan that the search finds, priced at most."""
+
+CORE_GAP = 0.25
+"""Share of the gap asked that the search over sites alone aims at: the rest is for what it leaves out."""
+
+CORE_WORK = 100_000_000
+"""Reports of the search over sites alone times lanes, at most: a report is 16 nodes, a node looks at every lane."""
 
 KEPT_LINKS = 1.3
 """Times as many links as the first relaxation ended with are loaded before old ones are forgotten."""
@@ -84,6 +95,17 @@ def whole(
     return _Run(network=network, settings=settings, listener=listener, stop=stop).solve(start)
 
 
+class _Told(Silent):
+    """A listener that passes progress to a function."""
+
+    def __init__(self, hear: Callable[[Progress], None]) -> None:
+        self._hear = hear
+
+    def update(self, progress: Progress) -> None:
+        """Pass it on."""
+        self._hear(progress)
+
+
 @dataclass(slots=True, kw_only=True)
 class _Run:
     """One run of the engine."""
@@ -98,6 +120,11 @@ class _Run:
     """Bound of the first relaxation, in the problem's money."""
     plans: Plans | None = None
     tree: Tree | None = None
+    core: Core | None = None
+    heard: int = 0
+    """Reports of the search over sites alone."""
+    most_heard: int = 0
+    """After so many it is given up."""
 
     def solve(self, start: Decisions | None) -> EngineResult:
         """Run every phase."""
@@ -105,6 +132,11 @@ class _Run:
         problem = state(self.network)
         gap = self.settings.gap * GAP_MARGIN
         lanes = first_lanes(problem)
+        core = self._core(problem)
+        if core is not None and core.bound == math.inf:
+            return EngineResult(decisions=None, bound=None, impossible=True)
+        if core is not None:
+            lanes = np.union1d(lanes, core.lanes)
         program = LaneProgram(problem, lanes, self._halt)
         levers = Levers(problem)
         self.plans = Plans(problem, LaneProgram(problem, lanes, self._halt, linked=False), levers, gap / 2, self._tell)
@@ -112,14 +144,61 @@ class _Run:
         if start is not None:
             self.plans.best = problem.binaries(start)
             self.plans.try_binaries(self.plans.best[: levers.split])
+        if core is not None:
+            self._begin(core)
+            if self.tree.closed:
+                return self._result()
         self._say("bounding the cost from below")
         relaxed = program.solve(self.tree.root_sides(), enough=math.inf)
         if relaxed.ending is Ending.EMPTY:
             return EngineResult(decisions=None, bound=None, impossible=True)
-        self.root = relaxed.bound
+        self.root = max(self.root, relaxed.bound)
         if relaxed.ending in {Ending.SOLVED, Ending.NEARLY}:
             self._search(program, relaxed)
         return self._result()
+
+    def _core(self, problem: WholeProblem) -> Core | None:
+        """Return what the search over sites alone gives, where it pays."""
+        if not begins_with_core(problem):
+            return None
+        self._say("searching over the sites alone")
+        left = self.settings.time_limit_s - (time.monotonic() - self.began)
+        asked = replace(self.settings, gap=self.settings.gap * CORE_GAP, time_limit_s=max(left, 0.0))
+        return core_of(problem, asked, _Told(self._hear), Until(self.stop, self._is_enough), self._halt)
+
+    def _hear(self, progress: Progress) -> None:
+        """Take a bound of the search over sites alone."""
+        self.heard += 1
+        if self.core is not None and self.plans is not None and progress.bound is not None:
+            self.root = max(self.root, self.core.safe(self.plans.problem, progress.bound))
+            self._tell()
+
+    def _is_enough(self) -> bool:
+        """Return whether the search over sites alone has done its part: what it can prove, or its share of the work."""
+        if self.core is None or self.tree is None:
+            return False
+        return self._bound() >= self.tree.enough or self.heard > self.most_heard
+
+    def _begin(self, core: Core) -> None:
+        """Try the sets of the search over sites alone until two of them serve everything; then prove what it can."""
+        assert self.plans is not None  # noqa: S101 - made by the caller
+        assert self.tree is not None  # noqa: S101
+        problem = self.plans.problem
+        self.root = core.bound
+        self._say("looking for a first plan")
+        found = 0
+        for held in core.sets:
+            found += math.isfinite(self.plans.try_binaries(held, quick=True).cost)
+            if found > 1 or self._halt():
+                break
+        self._say("bounding the cost over the sites alone")
+        self.core, self.heard = core, 0
+        self.most_heard = CORE_WORK // len(problem.network.outbound)
+        bound, deeper = core.deepen(problem)
+        self.root = max(self.root, bound)
+        if deeper is not None:
+            self.plans.try_binaries(deeper, self.plans.cost, quick=True)
+        self.tree.open[0].bound = self.root
 
     def _search(self, program: LaneProgram, relaxed: Relaxed) -> None:
         """Find plans, then split until the gap is closed."""

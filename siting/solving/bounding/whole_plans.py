@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from siting.solving.bounding.whole_assign import assigned
 from siting.solving.bounding.whole_finish import finish
 from siting.solving.bounding.whole_levers import WHOLE
 from siting.solving.bounding.whole_program import Ending
@@ -56,7 +57,7 @@ class Plans:
         """(binaries,)"""
         self.priced: Relaxed | None = None
 
-    def try_binaries(self, held: Floats, enough: float = math.inf) -> Tried:
+    def try_binaries(self, held: Floats, enough: float = math.inf, *, quick: bool = False) -> Tried:
         """
         Price decisions on sites and suppliers, and keep their plan if it is the best so far.
 
@@ -66,6 +67,8 @@ class Plans:
             Shape (options + suppliers,), whole.
         enough
             Cost from which on it is of no use.
+        quick
+            True gives up single-sourced customers that cannot be placed without a search.
 
         Returns
         -------
@@ -85,19 +88,41 @@ class Plans:
                 self._tried[key] = tried
             return tried
         cost, bound, values = relaxed.value, relaxed.bound, relaxed.values
-        pairs = values[held.size : self.problem.places.binaries]
-        if np.any(np.abs(pairs - np.rint(pairs)) > WHOLE):
-            done = finish(self.problem, sides, relaxed, enough=enough, gap=self._gap, halt=self._program.halt)
-            cost, bound = done.cost, done.bound
-            values = values if done.values is None else done.values
+        if self._is_torn(values[held.size : self.problem.places.binaries]):
+            cost, bound, values = self._placed(held, sides, relaxed, enough, quick=quick)
         tried = Tried(cost=cost, bound=bound)
-        if not self._program.halted:
+        if not self._program.halted and not quick:
             self._tried[key] = tried
         if cost < self.cost:
             self.cost, self.priced = cost, relaxed
             self.best = np.concatenate([held, np.rint(values[held.size : self.problem.places.binaries])])
             self._tell()
         return tried
+
+    @staticmethod
+    def _is_torn(pairs: Floats) -> bool:
+        """Return whether a customer that may not be split is."""
+        return bool(np.any(np.abs(pairs - np.rint(pairs)) > WHOLE))
+
+    def _placed(
+        self, held: Floats, sides: Sides, relaxed: Relaxed, enough: float, *, quick: bool
+    ) -> tuple[float, float, Floats]:
+        """Return cost, bound and values once single-sourced customers have one source: by hand, then by a search."""
+        cost, bound, values = math.inf, relaxed.bound, relaxed.values
+        taken = assigned(self.problem, relaxed, held)
+        if taken is not None:
+            lower, upper = self.levers.whole()
+            lower[: held.size] = upper[: held.size] = held
+            lower[held.size : held.size + taken.size] = upper[held.size : held.size + taken.size] = taken
+            solved = self._program.solve(self.levers.sides(lower, upper), enough=math.inf)
+            if solved.ending is Ending.SOLVED:
+                cost, values = solved.value, solved.values
+        if quick or (self._gap > 0 and cost - bound <= self._gap * abs(cost)):
+            return cost, bound, values
+        done = finish(self.problem, sides, relaxed, enough=min(enough, cost), gap=self._gap, halt=self._program.halt)
+        if done.values is not None and done.cost < cost:
+            cost, values = done.cost, done.values
+        return cost, done.bound, values
 
     def _held(self, held: Floats) -> Sides:
         """Return the sides with sites and suppliers held."""

@@ -88,7 +88,7 @@ class LaneProgram:
         self, problem: WholeProblem, columns: NDArray[np.intp], halt: Callable[[], bool], *, linked: bool = True
     ) -> None:
         """
-        Load the binaries and some lanes.
+        Load the options, the suppliers and some lanes; pairs are priced in as lanes are.
 
         Parameters
         ----------
@@ -108,17 +108,18 @@ class LaneProgram:
         self.halted = False
         self._linked = linked
         self._place = np.full(problem.places.count, -1, dtype=np.int32)
-        self.columns = np.unique(np.concatenate([np.arange(problem.places.binaries), columns]))
+        places = problem.places
+        self.columns = np.unique(np.concatenate([places.option, places.supplier, columns])).astype(np.intp)
         self._place[self.columns] = np.arange(self.columns.size)
         self.links: NDArray[np.int64] = np.zeros(0, dtype=np.int64)
         self._link_rows = problem.links.chosen(self.links)
         self._idle = problem.links.chosen(self.links)
         self._idle_links = self.links
+        self.at: Sides | None = None
         self.highs = self._start()
         self.iterations = 0
         self._solves = 0
         self._priced_at = np.zeros(len(problem.links), dtype=np.int64)
-        self.at: Sides | None = None
         self._refresh()
 
     def _start(self) -> highspy.Highs:
@@ -168,11 +169,12 @@ class LaneProgram:
         lengths = np.diff(start)[columns]
         first = np.cumsum(lengths) - lengths
         entry = np.arange(int(lengths.sum())) - np.repeat(first - start[columns], lengths)
+        bounds = self.problem if self.at is None else self.at
         self.highs.addCols(
             columns.size,
             self.problem.cost[columns],
-            self.problem.lower[columns],
-            self.problem.upper[columns],
+            bounds.lower[columns],
+            bounds.upper[columns],
             entry.size,
             first.astype(np.int32),
             row[entry],
@@ -263,14 +265,17 @@ class LaneProgram:
         binaries, last = self.problem.places.binaries, self.at
         old = (self.problem.lower, self.problem.upper) if last is None else (last.lower, last.upper)
         changed = (sides.lower != old[0]) | (sides.upper != old[1])
-        place = np.flatnonzero(changed[:binaries]).astype(np.int32)
-        if place.size:
-            self.highs.changeColsBounds(place.size, place, sides.lower[place], sides.upper[place])
+        column = np.flatnonzero(changed[:binaries] & (self._place[:binaries] >= 0))
+        if column.size:
+            self.highs.changeColsBounds(column.size, self._place[column], sides.lower[column], sides.upper[column])
         limits = self.problem.limits
         old = (limits.lower, limits.upper) if last is None else (last.row_lower, last.row_upper)
         for row in np.flatnonzero((sides.row_lower != old[0]) | (sides.row_upper != old[1])).tolist():
             self.highs.changeRowBounds(row, float(sides.row_lower[row]), float(sides.row_upper[row]))
         self.at = sides
+        held = np.flatnonzero((self._place < 0) & (sides.lower > 0))
+        if held.size:
+            self.load_lanes(held)
 
     def solve(self, sides: Sides, *, enough: float, rounds: int = ROUNDS) -> Relaxed:
         """

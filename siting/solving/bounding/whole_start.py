@@ -53,8 +53,8 @@ def first_lanes(problem: WholeProblem) -> NDArray[np.intp]:
         + charge[out.origin] * network.load[out.good]
     )
     outbound = np.where(problem.upper[places.outbound] > 0, outbound, np.inf)
-    chosen = _cheapest(out.destination.astype(np.int64) * goods + out.good, outbound, NEAREST)
-    feeding = _cheapest(key, inbound, FEEDERS)
+    chosen = cheapest(out.destination.astype(np.int64) * goods + out.good, outbound, NEAREST)
+    feeding = cheapest(key, inbound, FEEDERS)
     return np.unique(np.concatenate([places.outbound[chosen], places.inbound[feeding], places.direct])).astype(np.intp)
 
 
@@ -65,7 +65,7 @@ def _spread(charge: Floats, capacity: Floats) -> Floats:
     return share
 
 
-def _cheapest(key: NDArray[np.int64], cost: Floats, most: int) -> NDArray[np.intp]:
+def cheapest(key: NDArray[np.int64], cost: Floats, most: int) -> NDArray[np.intp]:
     """Return the positions of the `most` cheapest of each key."""
     order = np.lexsort((cost, key))
     ranked = key[order]
