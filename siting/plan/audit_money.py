@@ -134,7 +134,7 @@ def _customer(
     if set(line.origins) != set(load) or len(line.origins) != len(load):
         stated, right = (", ".join(origins) or "nowhere" for origins in (line.origins, load))
         yield f"customer {name}: served from {right}, stated as {stated}"
-    elif any(load[more] < load[less] - RELATIVE * whole for more, less in pairwise(line.origins)):
+    elif len(load) > 1 and any(load[more] < load[less] - RELATIVE * whole for more, less in pairwise(line.origins)):
         yield f"customer {name}: its origins are not listed most load first"
     if differs(line.cost_to_serve, cost, scale):
         stated = f"{shown(line.cost_to_serve)} {currency} a year"

@@ -169,6 +169,8 @@ def shifts(before: Plan, after: Plan, load: Mapping[str, float]) -> tuple[Shift,
     found: list[Shift] = []
     for line in before.customers:
         had, has = was.get(line.customer, {}), now.get(line.customer, {})
+        if had == has:
+            continue
         change = {origin: has.get(origin, 0.0) - had.get(origin, 0.0) for origin in dict.fromkeys((*had, *has))}
         lost = sorted(((-value, name) for name, value in change.items() if value < -noise), reverse=True)
         won = sorted(((value, name) for name, value in change.items() if value > noise), reverse=True)

@@ -18,18 +18,20 @@ from siting.network.network import build_network
 from siting.questions.pool import cores, in_processes
 from siting.questions.resolved import Resolved
 from siting.questions.restriction import Restriction, parts_of
-from siting.questions.searching import Ask, Bench, resolve_one
+from siting.questions.searching import Ask, Bench, decisions_of, resolve_one
 from siting.questions.starts import Hints, regret
 from siting.questions.store import Key, MemoryStore
-from siting.solving.solve import solve
+from siting.solving.solve import pick_engine, solve
 from siting.study.fingerprint import fingerprint
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
 
     from siting.listener import Listener
-    from siting.plan.plan import Answer
+    from siting.network.network import Network
+    from siting.plan.plan import Answer, Plan
     from siting.questions.store import Store
+    from siting.solving.bounding.again import Begun
     from siting.study.settings import SolveSettings
     from siting.study.tables import Study
 
@@ -208,14 +210,24 @@ class Resolver:
         if plan is None or plan.today is None:
             msg = "a question needs the plan of the study, and there is none to begin from. Plan the study first."
             raise PlanFileError(msg)
+        network = build_network(self.study)
         return Bench(
             study=self.study,
-            network=build_network(self.study),
+            network=network,
             settings=self.settings,
             today=plan.today,
             incumbent=plan,
             floor=resolved.bound,
+            begun=self._begun(network, plan),
         )
+
+    def _begun(self, network: Network, plan: Plan) -> Begun | None:
+        """Return what the searches begin from where the engine can share it."""
+        if pick_engine(network, self.settings)[0] != "bounding":
+            return None
+        from siting.solving.bounding.again import begin  # noqa: PLC0415 - loads the compiled loops
+
+        return begin(network, decisions_of(self.study, network, plan, parts_of(plan)))
 
     def _answers(self, todo: list[Ask]) -> Iterator[tuple[Ask, Resolved]]:
         """Resolve here while that is quick, on all cores once it is not."""

@@ -37,6 +37,8 @@ if TYPE_CHECKING:
     from siting.network.network import Network
     from siting.plan.plan import Plan, Reason, Today, Unserved
     from siting.questions.restriction import Restriction
+    from siting.solving.bounding.again import Begun
+    from siting.solving.engine import EngineResult
     from siting.study.settings import SolveSettings
     from siting.study.tables import Study
 
@@ -54,6 +56,8 @@ class Bench:
     """A plan of the study to begin from."""
     floor: float | None
     """Money a year that no plan of the study can undercut."""
+    begun: Begun | None = None
+    """What searches of the engine `bounding` begin from, where they have something in common."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -152,23 +156,17 @@ class _Search:
         """Return the best decisions: without a search where nothing is left to decide, or the start is good enough."""
         start = self._start(network)
         if start is not None and self._good_enough(start):
-            return replace(start, bound=self._floor)
+            return replace(self._with_amounts(network, start), bound=self._floor)
         if self._decided(network):
-            return replace(start, bound=start.cost) if start is not None else NOTHING
+            return NOTHING if start is None else replace(self._with_amounts(network, start), bound=start.cost)
         needed = self._needed(start)
         if needed:
             network = pinned_in(network, set(needed))
-        result = REGISTRY[self._engine](
-            network,
-            replace(self._settings, time_limit_s=max(self._left(), 0.01)),
-            listener=Silent(),
-            stop=self._stop,
-            start=None if start is None else start.decisions,
-        )
+        result = self._search(network, None if start is None else start.decisions)
         if result.impossible and start is None:
             return NOTHING
         bound = None if result.bound is None else min(result.bound, *needed.values(), math.inf)
-        found = start if result.decisions is None else self._priced(network, result.decisions)
+        found = start if result.decisions is None or _same(start, result) else self._priced(network, result.decisions)
         if found is None and result.decisions is not None:
             msg = f"the decisions of the engine `{self._engine}` cannot serve all demand. Try another engine."
             raise EngineError(msg)
@@ -176,7 +174,16 @@ class _Search:
             return _Found(decisions=None, amounts=None, cost=None, bound=_highest(bound, self._floor))
         if start is not None and start.cost is not None and found.cost is not None and start.cost < found.cost:
             found = start
-        return replace(found, bound=_highest(bound, self._floor))
+        return replace(self._with_amounts(network, found), bound=_highest(bound, self._floor))
+
+    def _search(self, network: Network, start: Decisions | None) -> EngineResult:
+        """Search with the engine, begun from what all searches share where there is such a thing."""
+        settings, begun = replace(self._settings, time_limit_s=max(self._left(), 0.01)), self._bench.begun
+        if begun is not None and start is not None and self._engine == "bounding" and begun.serves(network):
+            from siting.solving.bounding.again import search_again  # noqa: PLC0415 - loads the compiled loops
+
+            return search_again(network, settings, begun, start=start, stop=self._stop)
+        return REGISTRY[self._engine](network, settings, listener=Silent(), stop=self._stop, start=start)
 
     def _needed(self, start: _Found | None) -> dict[str, float]:
         """Return what every plan cheaper than the start has, as other searches have proved, with their bounds."""
@@ -236,7 +243,23 @@ class _Search:
         """Return the plan with these parts, where it is allowed and serves everything."""
         study, incumbent = self._bench.study, self._bench.incumbent
         decisions = self._restricted.narrow(decisions_of(study, self._bench.network, incumbent, parts))
-        return self._priced(network, decisions) if allowed(network, decisions) else None
+        if not allowed(network, decisions):
+            return None
+        known = self._hints.cost_of(parts)
+        ask = self._ask.restriction
+        if known is None or ask.held is not None or ask.idle or ask.used or network.single_source.any():
+            return self._priced(network, decisions)  # flows may differ from those of the plan that has these parts
+        return _Found(decisions=decisions, amounts=None, cost=known, bound=self._floor)
+
+    def _with_amounts(self, network: Network, found: _Found) -> _Found:
+        """Return what was found with its flows, which are left open where another search has priced them."""
+        if found.amounts is not None or found.decisions is None:
+            return found
+        priced = self._priced(network, found.decisions)
+        if priced is None:
+            msg = "a plan that another search has found cannot serve all demand. Try another engine."
+            raise EngineError(msg)
+        return replace(priced, bound=found.bound)
 
     def _cheapest_part(self, name: str) -> list[tuple[str, str]]:
         """Return the part of a site or supplier with the least charge."""
@@ -330,6 +353,18 @@ class _Search:
             msg = "the plan found failed its audit and is not shown: " + "; ".join(faults)
             raise AuditError(msg)
         return plan
+
+
+def _same(start: _Found | None, result: EngineResult) -> bool:
+    """Return whether an engine decided what it began from; sources of single-sourced customers count too."""
+    if start is None or start.decisions is None or result.decisions is None:
+        return False
+    one, other = start.decisions, result.decisions
+    return (
+        np.array_equal(one.option_open, other.option_open)
+        and np.array_equal(one.supplier_signed, other.supplier_signed)
+        and np.array_equal(one.source, other.source)
+    )
 
 
 def _cost(found: _Found) -> float:

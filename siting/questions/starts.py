@@ -48,6 +48,10 @@ class Hints:
                 return parts
         return None
 
+    def cost_of(self, parts: Parts) -> float | None:
+        """Return what the plan with exactly these parts costs, all of them usable; None where none was found."""
+        return next((cost for cost, known in self.plans if known == parts), None)
+
     def needed(self, names: AbstractSet[str], ceiling: float) -> dict[str, float]:
         """
         Return what is in every plan that costs less than `ceiling`, with the bound that says so.

@@ -17,16 +17,16 @@ if TYPE_CHECKING:
     from siting.arrays import Floats, Positions
     from siting.study.tables import LaneTable, Study
 
-_FORM = b"siting study, form 2\n"
+_FORM = b"siting study, form 3\n"
 """Changes whenever the canonical form does, so that fingerprints of two forms never agree by accident."""
 
 _known: WeakKeyDictionary[Study, str] = WeakKeyDictionary()
 """Fingerprints of studies still in use, which never change: each is asked for several times."""
 
 TABLES_KEPT = 16
-"""Tables whose lines are kept: those of two studies, the oldest forgotten first."""
+"""Tables whose digests are kept: those of two studies, the oldest forgotten first."""
 
-_tables: dict[int, tuple[tuple[object, ...], bytes]] = {}
+_tables: dict[int, tuple[object, bytes]] = {}
 """By identity, each with the table itself, so that no other can take its place in memory meanwhile."""
 
 
@@ -57,21 +57,27 @@ def _digest(study: Study) -> str:
     digest.update(_text(dataclasses.asdict(study.settings)))
     for name in TABLES:
         digest.update(f"\n{name}\n".encode())
-        if name == "lanes":
-            _add_lanes(digest, study.lanes)
-        else:
-            digest.update(_lines(getattr(study, name)))
+        digest.update(_table_digest(getattr(study, name)))
     return digest.hexdigest()
 
 
-def _lines(table: tuple[object, ...]) -> bytes:
-    """Return the rows of a table as sorted lines; studies made from one another share most of their tables."""
+def _table_digest(table: tuple[object, ...] | LaneTable) -> bytes:
+    """Return the digest of a table; studies made from one another share most of their tables."""
     kept = _tables.pop(id(table), None)
-    lines = b"".join(sorted(_text(_row(row)) for row in table)) if kept is None else kept[1]
-    _tables[id(table)] = table, lines
+    found = _digest_of(table) if kept is None else kept[1]
+    _tables[id(table)] = table, found
     while len(_tables) > TABLES_KEPT:
         _tables.pop(next(iter(_tables)), None)
-    return lines
+    return found
+
+
+def _digest_of(table: tuple[object, ...] | LaneTable) -> bytes:
+    digest = hashlib.sha256()
+    if isinstance(table, tuple):
+        digest.update(b"".join(sorted(_text(_row(row)) for row in table)))
+    else:
+        _add_lanes(digest, table)
+    return digest.digest()
 
 
 def _row(row: object) -> dict[str, object]:

@@ -28,6 +28,14 @@ def test_the_cheapest_plan_that_fits_is_begun_from() -> None:
     assert hints.fitting(Restriction(out=frozenset({"A"}))) is None
 
 
+def test_the_cost_of_a_plan_found_before_is_known() -> None:
+    """Only for exactly its parts; of two searches that ended with them, what the cheaper one says."""
+    hints = Hints(plans=((1.0, CHEAP), (2.0, DEAR), (3.0, CHEAP)))
+    assert hints.cost_of(CHEAP) == pytest.approx(1.0)
+    assert hints.cost_of(DEAR) == pytest.approx(2.0)
+    assert hints.cost_of(frozenset({("A", "")})) is None
+
+
 def test_what_costs_too_much_to_do_without_is_needed() -> None:
     """A bound at the ceiling or above makes a site needed, one below does not, nor does a name that is not there."""
     hints = Hints(without={"below": 9.999, "at": 10.0, "never": math.inf, "elsewhere": 50.0})

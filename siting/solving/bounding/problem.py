@@ -154,9 +154,33 @@ def handles(network: Network) -> str | None:
     return next((reason for applies, reason in reasons if applies), None)
 
 
-def problem_of(network: Network) -> Problem:
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class RowLanes:
+    """The lanes of every site of a network by row, cheapest first: what networks that differ in rulings share."""
+
+    demand: Floats
+    """(R,) load a year, above 0."""
+    row: NDArray[np.int64]
+    """(L,)"""
+    site: Positions
+    """(L,) positions in the network."""
+    cost: Floats
+    """(L,) money per load; ascending within a row."""
+
+    def of(self, keep: Flags) -> RowLanes:
+        """Return the lanes of the sites in `keep` (S,) alone, which are counted anew."""
+        if keep.all():
+            return self
+        stays = keep[self.site]
+        place = np.cumsum(keep, dtype=np.int32) - 1
+        return RowLanes(
+            demand=self.demand, row=self.row[stays], site=place[self.site[stays]], cost=self.cost[stays]
+        )  # fmt: skip
+
+
+def row_lanes(network: Network) -> RowLanes:
     """
-    Return the location problem of a network that `handles` has no objection to.
+    Return the lanes by row of a network that `handles` has no objection to.
 
     Parameters
     ----------
@@ -165,32 +189,55 @@ def problem_of(network: Network) -> Problem:
 
     Returns
     -------
-    problem
-        Sites pinned shut are left out.
+    lanes
+        Of all sites, those pinned shut too.
     """
     lanes = network.outbound
-    keep = ~network.site_pinned_shut
-    place = np.cumsum(keep, dtype=np.int32) - 1
     row_of = np.full(network.demand.shape, -1, dtype=np.int64)
     needed = network.demand > 0
     row_of[needed] = np.arange(int(needed.sum()))
     row = row_of[lanes.destination, lanes.good]
-    live = keep[lanes.origin] & (row >= 0)
-    row, site = row[live], place[lanes.origin[live]]
+    live = row >= 0
+    row, site = row[live], lanes.origin[live]
     cost = lanes.cost[live] / network.load[lanes.good[live]]
     order = np.lexsort((cost, row))
-    demand = (network.demand * network.load)[needed]
-    sites = int(keep.sum())
-    within = np.bincount(site, weights=demand[row], minlength=sites)
+    return RowLanes(
+        demand=(network.demand * network.load)[needed],
+        row=row[order],
+        site=np.ascontiguousarray(site[order], dtype=np.int32),
+        cost=np.ascontiguousarray(cost[order]),
+    )
+
+
+def problem_of(network: Network, lanes: RowLanes | None = None) -> Problem:
+    """
+    Return the location problem of a network that `handles` has no objection to.
+
+    Parameters
+    ----------
+    network
+        One echelon: sites and customers.
+    lanes
+        Its lanes by row, where they are at hand.
+
+    Returns
+    -------
+    problem
+        Sites pinned shut are left out.
+    """
+    keep = ~network.site_pinned_shut
+    lanes = (row_lanes(network) if lanes is None else lanes).of(keep)
+    place = np.cumsum(keep, dtype=np.int32) - 1
+    sites, rows = int(keep.sum()), lanes.demand.shape[0]
+    within = np.bincount(lanes.site, weights=lanes.demand[lanes.row], minlength=sites)
     options = _options_of(network, keep)
     option_site = place[network.option_site[options]]
     closing = np.where(network.site_running, network.site_closing, 0.0)
-    counted = np.bincount(row, minlength=demand.shape[0])
     return Problem(
-        demand=demand,
-        row_start=np.concatenate([[0], np.cumsum(counted)]).astype(np.int64),
-        lane_site=np.ascontiguousarray(site[order], dtype=np.int32),
-        lane_cost=np.ascontiguousarray(cost[order]),
+        demand=lanes.demand,
+        row_start=np.searchsorted(lanes.row, np.arange(rows + 1)).astype(np.int64),
+        lane_site=lanes.site,
+        lane_cost=lanes.cost,
         site_option=np.searchsorted(option_site, np.arange(sites + 1)).astype(np.int64),
         charge=network.option_charge[options] - closing[network.option_site[options]],
         capacity=np.minimum(network.option_capacity[options], within[option_site]),

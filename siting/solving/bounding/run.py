@@ -105,13 +105,23 @@ class Root:
 class Run:
     """One solve: the problem, the clock and what is known."""
 
-    def __init__(self, network: Network, settings: SolveSettings, listener: Listener, stop: Stop) -> None:
+    seldom = 1
+    """How many times as rarely as usual the tree looks for plans."""
+
+    def __init__(
+        self,
+        network: Network,
+        settings: SolveSettings,
+        listener: Listener,
+        stop: Stop,
+        problem: Problem | None = None,
+    ) -> None:
         self._began = time.monotonic()
         self._network = network
         self._listener = listener
         self._stop = stop
         self._limit_s = settings.time_limit_s
-        self._problem = problem_of(network)
+        self._problem = problem_of(network) if problem is None else problem
         self._goal = Goal(gap=max(settings.gap * GAP_MARGIN, LEAST_GAP), constant=self._problem.constant)
         self._known = _Known(bound=-float("inf"), counts={})
         self._best: Incumbents | None = None
@@ -142,7 +152,7 @@ class Run:
         relaxation = Relaxation(problem)
         best = self._best = Incumbents(problem, relaxation, self._halted)
         if start is not None:
-            best.start_from(_chosen(problem, start))
+            best.start_from(chosen_of(problem, start))
         serves_all = best.try_all()
         if not serves_all and not self._halted() and problem.most >= problem.sites:
             return EngineResult(decisions=None, bound=None, impossible=True)
@@ -257,7 +267,7 @@ class Run:
         options = keep[self._problem.option_site]
         inner = Incumbents(problem, Relaxation(problem), self._halted)
         if best.cost < float("inf"):
-            inner.offer(best.cost, _chosen(problem, decisions_of(self._network, self._open_options(best))))
+            inner.offer(best.cost, chosen_of(problem, decisions_of(self._network, self._open_options(best))))
         node = Node(
             box=replace(box, state=fixed.state[keep], charge=box.charge[options]),
             bound=max(self._known.bound, fixed.bound),
@@ -270,11 +280,14 @@ class Run:
                 best.offer(inner.cost, self._widened(problem, inner.chosen))
             self._report(min(bound, self._cutoff(best)), "branching")
 
-        report(search_tree(problem, node, inner, self._goal, halted=self._halted, report=report))
+        bound = search_tree(
+            problem, node, inner, self._goal, halted=self._halted, report=report, seldom=self.seldom
+        )  # fmt: skip
+        report(bound)
 
     def _widened(self, problem: Problem, chosen: Positions) -> Positions:
         """Return a set of a restricted problem as one of the whole problem."""
-        return _chosen(self._problem, decisions_of(self._network, problem.option[chosen[chosen >= 0]]))
+        return chosen_of(self._problem, decisions_of(self._network, problem.option[chosen[chosen >= 0]]))
 
     def _open_options(self, best: Incumbents) -> Positions:
         return self._problem.option[best.chosen[best.chosen >= 0]]
@@ -307,7 +320,7 @@ class Run:
         return "stopped by the time limit" if self._halted() else ""
 
 
-def _chosen(problem: Problem, decisions: Decisions) -> Positions:
+def chosen_of(problem: Problem, decisions: Decisions) -> Positions:
     """Return (S,) the option of each open site of the problem in given decisions."""
     chosen = np.full(problem.sites, SHUT_SITE, dtype=np.int32)
     is_open = decisions.option_open[problem.option]

@@ -88,11 +88,12 @@ SAFE = 1e-9
 class Worker:
     """What one thread needs: a relaxation and a search for plans of its own."""
 
-    def __init__(self, problem: Problem, halted: Callable[[], bool]) -> None:
+    def __init__(self, problem: Problem, halted: Callable[[], bool], seldom: int) -> None:
         self.relaxation = Relaxation(problem)
         self.incumbents = Incumbents(problem, self.relaxation, halted)
         self._problem = problem
         self._halted = halted
+        self._seldom = seldom
         self._nodes = 0
 
     def work(self, node: Node, cutoff: float, cost: float) -> tuple[float, list[Node]]:
@@ -145,9 +146,9 @@ class Worker:
 
     def _look_for_plans(self, box: Box, ascent: Ascent, cutoff: float, goal: float) -> None:
         self._nodes += 1
-        if self._nodes % PRICE_EVERY == 1:
+        if self._nodes % (PRICE_EVERY * self._seldom) == self._seldom:
             self.incumbents.search(ascent.used, trials=self._trials(NEAR_TRIALS), near=NEAR)
-        if self._nodes % DIVE_EVERY == 1:
+        if self._nodes % (DIVE_EVERY * self._seldom) == self._seldom:
             self.incumbents.search(self._dive(box, ascent, cutoff, goal), trials=self._trials(DIVE_TRIALS))
 
     def _trials(self, most: int) -> int:
@@ -259,6 +260,7 @@ def search_tree(  # noqa: PLR0913 - what a search starts from and reports to
     *,
     halted: Callable[[], bool],
     report: Callable[[float], None],
+    seldom: int = 1,
 ) -> float:
     """
     Search until the goal is met, nothing is left or the search is halted.
@@ -277,6 +279,8 @@ def search_tree(  # noqa: PLR0913 - what a search starts from and reports to
         Asked often; True ends the search.
     report
         Told the bound now and then.
+    seldom
+        How many times as rarely as usual to look for plans on the way: more than 1 where the best one is good already.
 
     Returns
     -------
@@ -284,7 +288,7 @@ def search_tree(  # noqa: PLR0913 - what a search starts from and reports to
         Money a year without the problem's constant that no plan can undercut; at least the goal's cutoff when nothing
         is left, infinite when no plan exists.
     """
-    workers = [Worker(problem, halted) for _ in range(THREADS)]
+    workers = [Worker(problem, halted, seldom) for _ in range(THREADS)]
     order = itertools.count()
     heap: list[tuple[float, int, Node]] = [(root.bound, next(order), root)]
     least_dropped, turns = float("inf"), 0
