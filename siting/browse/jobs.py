@@ -235,12 +235,13 @@ def _run(job: _Job) -> None:
         errors = [str(error)]
     with job.lock:
         _kill(job)
+    shutil.rmtree(job.folder, ignore_errors=True)
+    with job.lock:
         if job.answer is not None:
             job.state = JobState.DONE
         else:
             job.error = job.error or _last_words(job, errors)
             job.state = JobState.FAILED
-    shutil.rmtree(job.folder, ignore_errors=True)
 
 
 def _hand_over(job: _Job) -> None:

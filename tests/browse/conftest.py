@@ -42,7 +42,15 @@ def long_study(tmp_path_factory: pytest.TempPathFactory) -> Study:
 
 
 @pytest.fixture(autouse=True)
-def no_job_left() -> Iterator[None]:
+def scratch(tmp_path_factory: pytest.TempPathFactory, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Give each test a folder of its own for temporary files, so that tests running beside it are not seen there."""
+    folder = str(tmp_path_factory.mktemp("scratch"))
+    monkeypatch.setattr(tempfile, "tempdir", folder)
+    monkeypatch.setenv("TMPDIR", folder)
+
+
+@pytest.fixture(autouse=True)
+def no_job_left(scratch: None) -> Iterator[None]:  # noqa: ARG001 - it ends before the folder is another
     """End every job a test has started, and forget it."""
     yield
     for key in list(jobs._jobs):  # noqa: SLF001 - tests alone need to end all

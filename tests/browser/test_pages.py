@@ -8,6 +8,7 @@ from contextlib import ExitStack
 from typing import TYPE_CHECKING
 
 import pytest
+from playwright.sync_api import Error as PlaywrightError
 
 from tests.browse.running import Running, running
 from tests.browse.studies import hostile_folder, long_folder, tiny_folder
@@ -54,11 +55,21 @@ class Sitting:
 
     def is_unharmed(self) -> bool:
         """Return whether nothing was asked for outside, opened, thrown or run by a name, in any page or frame."""
-        ran = [frame.evaluate("window.ran") for page in self.context.pages for frame in page.frames]
+        ran = [_ran(frame) for page in self.context.pages for frame in page.frames]
         bad = [
             said for said in self.watched.said if said.startswith(("dialog", "error: Ref", "error: Syn", "error: Type"))
         ]
         return not self.watched.outside and not bad and not any(ran)
+
+
+def _ran(frame: Frame) -> object:
+    """Return what a hostile name left behind in a frame; a frame that its page has just replaced has nothing to say."""
+    try:
+        return frame.evaluate("window.ran")
+    except PlaywrightError:
+        if frame.is_detached():
+            return None
+        raise
 
 
 @pytest.fixture
