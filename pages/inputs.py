@@ -22,7 +22,9 @@ from siting.browse.drafts import (
     find_draft,
     keep_draft,
 )
+from siting.browse.orders_view import show_orders
 from siting.browse.parcels import tables_zip
+from siting.browse.places_view import odd_places, show_places
 from siting.browse.sheets_view import remember_files, show_sheets
 from siting.browse.shell import (
     DEMO_SOURCE,
@@ -56,6 +58,8 @@ if TYPE_CHECKING:
 EDITOR_HEIGHT_PX = 470
 MOST_LISTED = 200
 """Faults and warnings of one table that are listed; what comes after them is counted."""
+MOST_ODD = 5
+"""Odd places that are named above the map; it names them all."""
 NEW_SETTINGS = {"currency": "EUR", "unit": "t"}
 """What a new study starts with, in sight on the page, to be changed."""
 LEAST_TICKED = 0.75
@@ -81,8 +85,19 @@ def show() -> None:
     _proposals(draft)
     _work(draft.checked)
     _tables(draft, draft.checked)
+    show_orders(draft)
+    show_places(draft)
     section("Where everything is", "What was given, before anything is decided.")
-    show_given_map(draft)
+    _map(draft)
+
+
+def _map(draft: Draft) -> None:
+    """Show the map, with coordinates that do not fit their place or country named above it and on it."""
+    odd = odd_places(draft)
+    said = [str(each) for each in odd[:MOST_ODD]]
+    more = [f"And {len(odd) - MOST_ODD:,} more, on the map under Worth knowing."] if len(odd) > MOST_ODD else []
+    notices([*said, *more], kind="stale", title=f"{counted(len(odd), 'place')} worth a look")
+    show_given_map(draft, odd)
 
 
 def _opening(draft: Draft) -> None:

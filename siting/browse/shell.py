@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import html
 import os
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -19,8 +20,9 @@ from siting.study.demo import demo_folder
 from siting.study.read import read_raw
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable
+    from collections.abc import Iterable, Sequence
 
+    from siting.errors import Fault
     from siting.study.raw import RawStudy
 
 PAGES = (
@@ -102,16 +104,26 @@ def _study_given() -> tuple[RawStudy, str]:
     return (read_raw(Path(given)), Path(given).name) if given else (read_raw(demo_folder()), DEMO_SOURCE)
 
 
-def show_given_map(draft: Draft) -> None:
-    """Show the map of what was given, drawn once per edit; or say why there is none."""
+def show_given_map(draft: Draft, odd: Sequence[Fault] = ()) -> None:
+    """
+    Show the map of what was given, drawn once per edit; or say why there is none.
+
+    Parameters
+    ----------
+    draft
+        Its tables.
+    odd
+        What is worth a look about its places, beside what checking warned of.
+    """
     study = draft.checked.study
     if study is None:
         notice("The map is drawn once the tables have no fault.")
         return
-    key = (draft.token, draft.version)
+    key = (draft.token, draft.version, tuple(odd))
     kept = st.session_state.get("given_map")
     if kept is None or kept[0] != key:
-        kept = st.session_state["given_map"] = (key, draw_given(study, headline="").html)
+        noted = replace(study, warnings=(*study.warnings, *odd))
+        kept = st.session_state["given_map"] = (key, draw_given(noted, headline="").html)
     st.iframe(kept[1], height=MAP_HEIGHT_PX, alt="Map of the sites, suppliers and customers as given")
 
 

@@ -88,7 +88,7 @@ def run(arguments: argparse.Namespace) -> int:
     rollup = roll_up(arguments.orders, columns, reading, listener=progress_on_stderr(wanted=not arguments.quiet))
     study = study_of_orders(rollup, columns, currency=arguments.currency, unit=arguments.unit)
     write_new(study, out)
-    say("\n".join(rollup_lines(rollup, reading, arguments.unit)))
+    say("\n".join([*rollup_lines(rollup, reading, arguments.unit), *_month_lines(rollup, arguments.unit)]))
     say(f"{out}: add sites or suppliers, what customers lack and the settings, then: siting check {out}")
     return FOUND
 
@@ -135,7 +135,7 @@ def rollup_lines(rollup: Rollup, reading: OrderReading, unit: str) -> list[str]:
     """
 
     def amount(quantity: float) -> str:
-        return f"{quantity:{',.0f' if abs(quantity) >= WHOLE_FROM else ',.6g'}} {unit}".rstrip()
+        return _amount(quantity, unit)
 
     total = sum(rollup.demand.values())
     customers = len({customer for customer, _ in rollup.demand})
@@ -150,7 +150,7 @@ def rollup_lines(rollup: Rollup, reading: OrderReading, unit: str) -> list[str]:
     lines += _far_out_lines(rollup, reading, amount)
     lines += [f"{name} differs between lines of {count:,} customers: the first in order is kept."
               for name, count in rollup.differing.items()]  # fmt: skip
-    return [*lines, *_period_lines(rollup, amount)]
+    return [*lines, *_period_lines(rollup)]
 
 
 def _far_out_lines(rollup: Rollup, reading: OrderReading, amount: Callable[[float], str]) -> list[str]:
@@ -165,25 +165,51 @@ def _far_out_lines(rollup: Rollup, reading: OrderReading, amount: Callable[[floa
     return [f"Far above the other lines of their good: {what}. The largest: {shown}."]
 
 
-def _period_lines(rollup: Rollup, amount: Callable[[float], str]) -> list[str]:
-    """Return how the period became a year, and how its months differ."""
+def _period_lines(rollup: Rollup) -> list[str]:
+    """Return how the period became a year, and which of its months is the strongest."""
     if rollup.first is None:
         return ["No dates: the lines are taken as one year's."]
     how = "a year" if math.isclose(rollup.yearly, 1.0) else f"made a year by x {rollup.yearly:.4g}"
     lines = [f"Period: {rollup.first} to {rollup.last}, {rollup.days:,} days, {how}."]
-    if len(rollup.months) > 1:
-        mean = sum(quantity for _, quantity in rollup.months) / len(rollup.months)
-        most = max(rollup.months, key=lambda month: month[1])
-        if mean > 0:
-            lines.append(
-                f"Season: the strongest month, {most[0]}, moves {most[1] / mean:.0%} of an average month; capacities "
-                "are yearly, so check that a site can move it."
-            )
-            shown = rollup.months[-SHOWN_MONTHS:]
-            lines += [f"  {month}  {amount(quantity)}  {quantity / mean:.0%}" for month, quantity in shown]
+    shares = month_shares(rollup)
+    if shares:
+        most, share = max(shares, key=lambda month: month[1])
+        lines.append(
+            f"Season: the strongest month, {most}, moves {share:.0%} of an average month; capacities are yearly, so "
+            "check that a site can move it."
+        )
     if rollup.yearly > 1:
         lines.append("Less than a year: what the missing months would move is not in these lines.")
     return lines
+
+
+def month_shares(rollup: Rollup) -> tuple[tuple[str, float], ...]:
+    """
+    Return how the months of the period differ.
+
+    Parameters
+    ----------
+    rollup
+        What was added up.
+
+    Returns
+    -------
+    shares
+        Each month, and its quantity over that of an average month; empty with one month or none.
+    """
+    mean = sum(quantity for _, quantity in rollup.months) / max(1, len(rollup.months))
+    if len(rollup.months) <= 1 or mean <= 0:
+        return ()
+    return tuple((month, quantity / mean) for month, quantity in rollup.months)
+
+
+def _month_lines(rollup: Rollup, unit: str) -> list[str]:
+    shown = list(zip(rollup.months, month_shares(rollup), strict=False))[-SHOWN_MONTHS:]
+    return [f"  {month}  {_amount(quantity, unit)}  {share:.0%}" for (month, quantity), (_, share) in shown]
+
+
+def _amount(quantity: float, unit: str) -> str:
+    return f"{quantity:{',.0f' if abs(quantity) >= WHOLE_FROM else ',.6g'}} {unit}".rstrip()
 
 
 def _day(text: str) -> dt.date:

@@ -95,6 +95,14 @@ class OrderFile:
             raise
         return self
 
+    def header(self) -> tuple[str, ...]:
+        """Return the columns of the file; for use instead of the context, since the file is let go of."""
+        try:
+            self._source()
+            return tuple(self._types)
+        finally:
+            self._close()
+
     def __exit__(
         self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
     ) -> None:
@@ -191,7 +199,7 @@ class OrderFile:
             msg = (
                 f"{self._path}: {marked[0]!r} in column {self._columns.quantity} can be read with a decimal point and "
             )
-            msg += "with a decimal comma. Say which: --decimal . or --decimal ,"
+            msg += "with a decimal comma. Say which (on the command line: --decimal . or --decimal ,)"
             raise DataFileError(msg)
         return max(fits, key=fits.__getitem__)
 
@@ -209,7 +217,8 @@ class OrderFile:
                 return best  # the few others are counted as unreadable
             how = "is no date in a form that is known"
         shown = texts[0] if texts else ""
-        msg = f"{self._path}: {shown!r} in column {self._columns.date} {how}. Say how, as in --date-format %d.%m.%Y"
+        msg = f"{self._path}: {shown!r} in column {self._columns.date} {how}. "
+        msg += "Say how (on the command line: --date-format %d.%m.%Y)"
         raise DataFileError(msg)
 
     def _fetch(self, statement: str, phase: str) -> list[tuple[Any, ...]]:

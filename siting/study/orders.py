@@ -134,6 +134,28 @@ def yearly_factor(days: int) -> float:
     return 1.0 if days in {YEAR_DAYS, YEAR_DAYS + 1} else YEAR_DAYS / days
 
 
+def columns_of(path: Path | str) -> tuple[str, ...]:
+    """
+    Return the columns of a file of order lines.
+
+    Parameters
+    ----------
+    path
+        As for `roll_up`.
+
+    Returns
+    -------
+    columns
+        As the file calls them, in its order.
+
+    Raises
+    ------
+    DataFileError
+        If the file is not there or cannot be read.
+    """
+    return OrderFile(path, OrderColumns(customer="", quantity=""), OrderReading(), None).header()
+
+
 def roll_up(
     path: Path | str, columns: OrderColumns, reading: OrderReading | None = None, *, listener: Listener | None = None
 ) -> Rollup:
@@ -226,7 +248,7 @@ def _period(
         last = month_end
     first, last = reading.first or first, reading.last or last
     if last < first:
-        msg = f"the period from {first} to {last} ends before it begins. Correct --from and --to."
+        msg = f"the period from {first} to {last} ends before it begins. Correct its first or last day."
         raise DataFileError(msg)
     return first, last
 
