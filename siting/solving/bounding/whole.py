@@ -161,10 +161,23 @@ class _Run:
         """Return what the search over sites alone gives, where it pays."""
         if not begins_with_core(problem):
             return None
+        from siting.solving.bounding.compiled import is_compiled  # noqa: PLC0415 - loads the compiler
+
+        if not is_compiled():
+            self._compile()
         self._say("searching over the sites alone")
         left = self.settings.time_limit_s - (time.monotonic() - self.began)
         asked = replace(self.settings, gap=self.settings.gap * CORE_GAP, time_limit_s=max(left, 0.0))
         return core_of(problem, asked, _Told(self._hear), Until(self.stop, self._is_enough), self._halt)
+
+    def _compile(self) -> None:
+        """Compile the loops of the search over sites alone; it does not count as time."""
+        from siting.solving.bounding.warm import compile_loops  # noqa: PLC0415 - only once a machine
+
+        self._say("compiling the search, once on this machine")
+        began = time.monotonic()
+        compile_loops()
+        self.began += time.monotonic() - began
 
     def _hear(self, progress: Progress) -> None:
         """Take a bound of the search over sites alone."""
