@@ -84,9 +84,11 @@ def show() -> None:
     show_sheets(draft)
     _proposals(draft)
     _work(draft.checked)
+    places = st.container()
     _tables(draft, draft.checked)
+    with places:  # above the tables, yet after them: they need not wait for the towns
+        show_places(draft)
     show_orders(draft)
-    show_places(draft)
     section("Where everything is", "What was given, before anything is decided.")
     _map(draft)
 

@@ -40,6 +40,8 @@ ADDED_UP, COLUMNS = "orders_added_up", "orders_columns"
 """Names in the session of what the last file came to, and of its columns."""
 
 FILE_TYPES = ["csv", "txt", "tsv", "parquet", "pq"]
+MOST_MONTHS, ROW_PX = 12, 35
+"""Months shown at once, and the height of the row of each."""
 NONE, FOUND_OUT = "(none)", "found out"
 MARKS = {FOUND_OUT: "", "decimal point": ".", "decimal comma": ","}
 DATE_WORDS = ("date", "day", "datum", "tag", "order date", "ship date", "delivery date", "lieferdatum", "fecha", "data")
@@ -204,15 +206,16 @@ def _season(rollup: Rollup, shares: Sequence[tuple[str, float]]) -> None:
         {
             "month": [month for month, _ in shares],
             "quantity": [quantity for _, quantity in rollup.months],
-            "of an average month": [share for _, share in shares],
+            "of an average month": [round(100 * share) for _, share in shares],
         }
     )
-    most = max(1.0, frame["of an average month"].max())
+    most = max(100, int(frame["of an average month"].max()))
     st.dataframe(
         frame,
         hide_index=True,
+        height=ROW_PX * (1 + min(len(frame), MOST_MONTHS)) + 3,
         column_config={
-            "quantity": st.column_config.NumberColumn(format="%.6g"),
-            "of an average month": st.column_config.ProgressColumn(format="percent", min_value=0.0, max_value=most),
+            "quantity": st.column_config.NumberColumn(format="localized"),
+            "of an average month": st.column_config.ProgressColumn(format="%d %%", min_value=0, max_value=most),
         },
     )

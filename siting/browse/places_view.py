@@ -76,7 +76,9 @@ def show_places(draft: Draft) -> None:
                 st.session_state[WANTED] = (draft.token, draft.version)
                 st.rerun()
     elif looked_up.rows:
-        with st.expander(f"Places to coordinates: {counted(len(looked_up.rows), 'row')} without", expanded=True):
+        proposed = sum(row.found.town is not None or bool(row.found.candidates) for row in looked_up.rows)
+        blank = counted(len(looked_up.rows), "row")
+        with st.expander(f"Places to coordinates: {blank} without any, proposals for {proposed:,} of them"):
             _show(draft, looked_up.rows)
 
 

@@ -133,22 +133,25 @@ def rollup_lines(rollup: Rollup, reading: OrderReading, unit: str) -> list[str]:
     lines
         Sentences, one each.
     """
+    from siting.study.words import counted
 
     def amount(quantity: float) -> str:
         return _amount(quantity, unit)
 
     total = sum(rollup.demand.values())
     customers = len({customer for customer, _ in rollup.demand})
-    used = f"{rollup.lines:,} lines, {rollup.used.lines:,} of them added up"
-    lines = [f"{used}: {amount(total)} a year for {customers:,} customers."]
-    lines += [f"Left out: {count:,} lines {reason}." for reason, count in rollup.skipped.items() if count]
+    used = f"{counted(rollup.lines, 'line')}, {rollup.used.lines:,} of them added up"
+    lines = [f"{used}: {amount(total)} a year for {counted(customers, 'customer')}."]
+    lines += [f"Left out: {counted(count, 'line')} {reason}." for reason, count in rollup.skipped.items() if count]
     if rollup.returned.lines:
         how = "taken off" if reading.returns else "left out"
-        lines.append(f"Returns: {rollup.returned.lines:,} negative lines, {amount(-rollup.returned.quantity)}, {how}.")
+        negative = counted(rollup.returned.lines, "negative line")
+        lines.append(f"Returns: {negative}, {amount(-rollup.returned.quantity)}, {how}.")
     if rollup.emptied:
-        lines.append(f"No demand is left of {rollup.emptied:,} customers and goods, whose returns reach their orders.")
+        emptied = counted(rollup.emptied, "pair")
+        lines.append(f"No demand is left of {emptied} of customer and good, whose returns reach their orders.")
     lines += _far_out_lines(rollup, reading, amount)
-    lines += [f"{name} differs between lines of {count:,} customers: the first in order is kept."
+    lines += [f"{name} differs between lines of {counted(count, 'customer')}: the first in order is kept."
               for name, count in rollup.differing.items()]  # fmt: skip
     return [*lines, *_period_lines(rollup)]
 
@@ -156,12 +159,14 @@ def rollup_lines(rollup: Rollup, reading: OrderReading, unit: str) -> list[str]:
 def _far_out_lines(rollup: Rollup, reading: OrderReading, amount: Callable[[float], str]) -> list[str]:
     if not rollup.far_out.lines:
         return []
+    from siting.study.words import counted
+
     how = "kept" if reading.far_out else "left out"
     shown = "; ".join(
         f"{line.customer}{f' {line.good}' if line.good else ''} {amount(line.quantity)} (above {amount(line.limit)})"
         for line in rollup.largest
     )
-    what = f"{rollup.far_out.lines:,} lines, {amount(rollup.far_out.quantity)}, {how}"
+    what = f"{counted(rollup.far_out.lines, 'line')}, {amount(rollup.far_out.quantity)}, {how}"
     return [f"Far above the other lines of their good: {what}. The largest: {shown}."]
 
 

@@ -67,8 +67,8 @@ def test_order_lines_become_demand(app: AppTest) -> None:
     app = press(select(app, "Good", 0), "Add up")
     text = said(app)
     assert "5 lines, 4 of them added up: 1.6505 t a year for 3 customers." in text
-    assert "Left out: 1 lines without a customer." in text
-    assert "Returns: 1 negative lines, 0.1 t, taken off." in text
+    assert "Left out: 1 line without a customer." in text
+    assert "Returns: 1 negative line, 0.1 t, taken off." in text
     assert "3 customers in the lines, 1 of them not in the table yet." in text
     [season] = [table.value for table in app.dataframe if "of an average month" in table.value]
     assert len(season) == 12
