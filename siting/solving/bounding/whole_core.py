@@ -19,6 +19,7 @@ Operational Research 50(3): 280-297.
 
 from __future__ import annotations
 
+import itertools
 import math
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Any
@@ -33,7 +34,7 @@ from siting.solving.highs import TOLERANCE, QuietHighs, has_solution, is_impossi
 from siting.solving.tightest import is_near
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
+    from collections.abc import Callable, Iterator
 
     from numpy.typing import NDArray
 
@@ -79,8 +80,9 @@ class Core:
 
     bound: float
     """In the problem's money, its constant included; what no plan can undercut."""
-    sets: tuple[Floats, ...]
-    """(options,) sets of open options that keep the rows about sites, best first; they may not serve all demand."""
+    sets: Iterator[Floats]
+    """(options,) sets of open options that keep the rows about sites, most promising first, each found when asked for;
+    they may not serve all demand."""
     lanes: NDArray[np.intp]
     """Columns of lanes to begin with."""
     run: Run
@@ -151,7 +153,7 @@ def core_of(
 
     bound = deepest = -math.inf
     best: tuple[Run, Root, SiteProgram, float] | None = None
-    sets: list[Floats] = []
+    sets: list[Iterator[Floats]] = []
     lanes: list[NDArray[np.intp]] = []
     fines = Fines(problem.network)
     while (fine := fines.next()) is not None and not halt():
@@ -162,25 +164,33 @@ def core_of(
         program = SiteProgram(problem, root, fines.forgiven(fine), halt)
         bound = max(bound, program.bound)
         fines.learn(fine, met=fines.is_met(_opened(problem, root.open_options)))
-        proved, found = _sets(problem, root, program, halt)
+        first, proved = program.solve(ROOM[0])
         bound = max(bound, proved)
         if program.bound > deepest:
             deepest, best = program.bound, (run, root, program, fines.forgiven(fine))
-        sets = [opened for opened in found if fines.is_met(opened)] + sets
+        sets.insert(0, filter(fines.is_met, _sets(problem, root, program, first, halt)))
         lanes.append(_lanes(problem, root))
     if best is None:
         return None
     run, root, program, forgiven = best
-    different = {opened.tobytes(): opened for opened in sets}
     return Core(
         bound=bound,
-        sets=tuple(different.values()),
+        sets=_different(itertools.chain.from_iterable(sets)),
         lanes=np.unique(np.concatenate(lanes)),
         run=run,
         root=root,
         allows=lambda opened: program.allows(opened) and fines.is_met(opened),
         forgiven=forgiven,
     )
+
+
+def _different(sets: Iterator[Floats]) -> Iterator[Floats]:
+    """Yield each set once."""
+    seen: set[bytes] = set()
+    for opened in sets:
+        if opened.tobytes() not in seen:
+            seen.add(opened.tobytes())
+            yield opened
 
 
 def _opened(problem: WholeProblem, options: NDArray[np.int32]) -> Floats:
@@ -190,32 +200,26 @@ def _opened(problem: WholeProblem, options: NDArray[np.int32]) -> Floats:
 
 
 def _sets(
-    problem: WholeProblem, root: Root, program: SiteProgram, halt: Callable[[], bool]
-) -> tuple[float, list[Floats]]:
-    """Return the bound of the site program, and sets of options that keep its rows: those improved by moves first."""
-    network, bound = problem.network, -math.inf
+    problem: WholeProblem, root: Root, program: SiteProgram, first: Floats | None, halt: Callable[[], bool]
+) -> Iterator[Floats]:
+    """Yield sets of options that keep the rows of sites: the best plan's, then those of the program, moved and not."""
+    network = problem.network
     stays = np.isin(network.option_site[root.problem.option], _ruled(network))
     stays = stays[root.problem.site_option[:-1]]
-    moved: list[tuple[float, Floats]] = []
-    plain: list[Floats] = []
     known = _opened(problem, root.open_options)
     if root.open_options.size and program.allows(known):
-        moved.append((root.plans.cost, known))
+        yield known
     for room in ROOM:
         if halt():
-            break
-        opened, proved = program.solve(room)
-        if room == ROOM[0]:
-            bound = proved
+            return
+        opened = first if room == ROOM[0] else program.solve(room)[0]
         if opened is None:
-            break
-        plain.append(opened)
+            return
         cost, options = root.descend(np.flatnonzero(opened).astype(np.int32), stays, trials=TRIALS)
         better = _opened(problem, options)
         if math.isfinite(cost) and program.allows(better):
-            moved.append((cost, better))
-    moved.sort(key=lambda both: both[0])
-    return bound, [opened for _, opened in moved] + plain
+            yield better
+        yield opened
 
 
 def _ruled(network: Network) -> list[int]:
