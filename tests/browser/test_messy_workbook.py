@@ -12,7 +12,7 @@ from openpyxl import Workbook
 from siting.study.read import read_study
 from tests.browse.running import running
 from tests.browser.chromium import Watched, chromium, chromium_path
-from tests.browser.test_pages import goes_to, heading, press, says, type_into_cell
+from tests.browser.test_pages import goes_to, heading, map_of, press, says, type_into_cell
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
@@ -78,9 +78,9 @@ def test_from_upload_to_a_plan(browser: Browser, tmp_path: Path) -> None:
         watched = Watched(context, server=server.url)
         page = context.new_page()
         page.goto(server.url)
-        heading(page).wait_for()
+        map_of(page)
         press(page, "Open another study")
-        page.locator('input[type="file"]').first.set_input_files(
+        page.get_by_test_id("stPopoverBody").locator('input[type="file"]').set_input_files(
             {
                 "name": "Daten 2026.xlsx",
                 "mimeType": "application/vnd.openxmlformats-officedocument.spreadsheetml.sheet",
