@@ -29,6 +29,9 @@ if TYPE_CHECKING:
 TINY = 1e-9
 """Shares below this are noise of the solver: taken away, and the rest scaled so that every demand is met exactly."""
 
+PRIMAL = 4
+"""HiGHS's number for the primal simplex method, in its option `simplex_strategy`."""
+
 SHORT = 1e-6
 """Share of all load by which capacity must fall short to be too little at sight: well above every tolerance."""
 
@@ -110,7 +113,7 @@ def unserved_by(network: Network, decisions: Decisions) -> Floats:
     lower = np.array(problem.row_lower_)
     lower[: np.count_nonzero(held.asked)] = 0.0
     problem.row_lower_ = lower
-    highs = _run(problem)
+    highs = _run(problem, primal=True)  # nothing moved is a solution, so that the primal simplex need not look for one
     if highs.getModelStatus() != highspy.HighsModelStatus.kOptimal:
         msg = f"HiGHS could not find what is unserved: {highs.modelStatusToString(highs.getModelStatus())}."
         raise EngineError(msg)
@@ -312,12 +315,14 @@ def _solve(held: _Held, rows: FlowRows) -> tuple[Floats, Floats] | None:
     return np.array(solution.col_value), np.array(solution.row_dual)[:count] * money
 
 
-def _run(problem: highspy.HighsLp) -> highspy.Highs:
+def _run(problem: highspy.HighsLp, *, primal: bool = False) -> highspy.Highs:
     highs = QuietHighs()  # type: ignore[no-untyped-call] # highspy types only part of its methods
     highs.setOptionValue("output_flag", False)  # noqa: FBT003 - highspy takes it by position
     highs.setOptionValue("primal_feasibility_tolerance", FEASIBLE)
     highs.setOptionValue("dual_feasibility_tolerance", TINY)
     highs.setOptionValue("presolve", "off")  # next to nothing falls away here, and it takes half of the time
+    if primal:
+        highs.setOptionValue("simplex_strategy", PRIMAL)
     highs.passModel(problem)
     highs.run()
     return highs

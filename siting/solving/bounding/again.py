@@ -28,11 +28,11 @@ if TYPE_CHECKING:
     from siting.solving.engine import EngineResult
     from siting.study.settings import SolveSettings
 
-FIRST_STEPS = 600
+FIRST_STEPS = 400
 """Greatest number of steps for the multipliers that all searches begin from."""
-STEPS = 100
-"""Greatest number of steps at the root of each search."""
-TRIALS = 300
+STEPS = 50
+"""Greatest number of steps at the root of each search, and of those in which sites are fixed after them."""
+TRIALS = 60
 """Moves tried on the plan that a search begins from, and on the first one read off its relaxation."""
 
 
@@ -121,7 +121,8 @@ def search_again(  # noqa: PLR0913 - an engine's inputs, and what is shared
 class _Again(Run):
     """One of many solves."""
 
-    seldom = 8
+    seldom = 256
+    fixing_steps = STEPS
 
     def __init__(self, network: Network, settings: SolveSettings, listener: Listener, stop: Stop, begun: Begun) -> None:
         super().__init__(network, settings, listener, stop, problem_of(network, begun.lanes))

@@ -107,6 +107,8 @@ class Run:
 
     seldom = 1
     """How many times as rarely as usual the tree looks for plans."""
+    fixing_steps = ROUND_STEPS
+    """Steps in which sites are fixed before the tree."""
 
     def __init__(
         self,
@@ -256,7 +258,7 @@ class Run:
         """Fix sites, leave out those that are shut for good, and search the tree of what is left."""
         cutoff = self._cutoff(best)
         fixed = relaxation.ascend(
-            box, root.v, steps=ROUND_STEPS, target=self._target(best), cutoff=cutoff, factor=0.1, mu=root.mu,
+            box, root.v, steps=self.fixing_steps, target=self._target(best), cutoff=cutoff, factor=0.1, mu=root.mu,
             patience=20, fix=cutoff < float("inf"), halted=self._halted,
         )  # fmt: skip
         self._report(min(fixed.bound, cutoff), "branching")
