@@ -64,8 +64,10 @@ def flows_for(network: Network, decisions: Decisions) -> Amounts | None:
     EngineError
         If HiGHS gives up for a reason of its own.
     """
+    if _too_little(network, decisions):
+        return None
     held = _Held(network, decisions)
-    if held.broken or held.too_little(network):
+    if held.broken:
         return None
     rows = _rows(network, decisions, held)
     answer = _solve(held, rows)
@@ -152,6 +154,14 @@ def price(network: Network, decisions: Decisions, amounts: Amounts) -> float:
     return float(charges)
 
 
+def _too_little(network: Network, decisions: Decisions) -> bool:
+    """Return whether the open sites cannot hold all demand by far, which is seen without a linear program."""
+    if len(network.direct):
+        return False
+    asked = float((network.demand @ network.load).sum())
+    return float(network.option_capacity[decisions.option_open].sum()) < asked * (1.0 - SHORT)
+
+
 class _Held:
     """What the decisions fix: capacities, the lanes that may be used, the flows of single-sourced customers."""
 
@@ -199,13 +209,6 @@ class _Held:
             [out.cost[self.outbound], straight.cost[self.direct], into.cost[self.inbound]]
         )
         self.broken = not self._whole(network)
-
-    def too_little(self, network: Network) -> bool:
-        """Return whether the open sites cannot hold all demand by far, which is seen without a linear program."""
-        if self.direct.size or self.fixed_direct.any():
-            return False
-        asked = float((network.demand @ network.load).sum())
-        return float(self.capacity.sum()) < asked * (1.0 - SHORT)
 
     def _whole(self, network: Network) -> bool:
         """Return whether every single-sourced customer gets all it needs from its source."""
