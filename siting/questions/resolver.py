@@ -35,6 +35,9 @@ if TYPE_CHECKING:
     from siting.study.settings import SolveSettings
     from siting.study.tables import Study
 
+PLAN_SHARE = 1 / 6
+"""Share of the plan's time that a search is expected to take at first; most begin near their end."""
+
 POOL_START_S = 3.0
 """Seconds of work from which processes are worth starting: each takes about one to be there."""
 
@@ -234,7 +237,7 @@ class Resolver:
         if not todo:
             return
         bench, left, began = self.bench(), list(todo), time.monotonic()
-        expected = bench.incumbent.proof.seconds if bench.incumbent else 0.0
+        expected = bench.incumbent.proof.seconds * PLAN_SHARE if bench.incumbent else 0.0
         workers = min(cores(), len(left))
         while left and not self.stop.requested:
             if workers > 1 and len(left) > 1 and expected * len(left) > POOL_START_S:
