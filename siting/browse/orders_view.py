@@ -15,10 +15,10 @@ import streamlit as st
 from siting.browse.filling import missing_customers, put_demand
 from siting.browse.serve import LARGEST_UPLOAD_MB
 from siting.browse.shell import notice, notices
-from siting.commands.rollup import month_shares, rollup_lines
 from siting.errors import DataFileError
 from siting.study.order_file import DATE_FORMATS
 from siting.study.order_study import CARRIED, study_of_orders
+from siting.study.order_words import month_shares, rollup_lines
 from siting.study.orders import OrderColumns, OrderReading, columns_of, roll_up
 from siting.study.propose import fold
 from siting.study.synonyms import SYNONYMS

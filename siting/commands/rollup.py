@@ -11,15 +11,11 @@ from siting.commands.command import FOUND, say
 from siting.commands.new_study import add_out, refuse_taken, write_new
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
-
     from siting.commands.command import Commands
-    from siting.study.orders import OrderColumns, OrderReading, Rollup
+    from siting.study.orders import OrderColumns, Rollup
 
 SHOWN_MONTHS = 24
 """The last months of a long period are listed."""
-WHOLE_FROM = 1000.0
-"""Quantities from which whole numbers do."""
 
 
 def add(commands: Commands) -> None:
@@ -72,6 +68,7 @@ def run(arguments: argparse.Namespace) -> int:
     """
     from siting.commands.progress import progress_on_stderr
     from siting.study.order_study import study_of_orders
+    from siting.study.order_words import rollup_lines
     from siting.study.orders import OrderReading, roll_up
 
     out = refuse_taken(arguments.out)
@@ -115,106 +112,11 @@ def _columns(arguments: argparse.Namespace) -> OrderColumns:
     )
 
 
-def rollup_lines(rollup: Rollup, reading: OrderReading, unit: str) -> list[str]:
-    """
-    Return how demand came about.
-
-    Parameters
-    ----------
-    rollup
-        What was added up.
-    reading
-        How it was asked for.
-    unit
-        Of the quantities; may be "".
-
-    Returns
-    -------
-    lines
-        Sentences, one each.
-    """
-    from siting.study.words import counted
-
-    def amount(quantity: float) -> str:
-        return _amount(quantity, unit)
-
-    total = sum(rollup.demand.values())
-    customers = len({customer for customer, _ in rollup.demand})
-    used = f"{counted(rollup.lines, 'line')}, {rollup.used.lines:,} of them added up"
-    lines = [f"{used}: {amount(total)} a year for {counted(customers, 'customer')}."]
-    lines += [f"Left out: {counted(count, 'line')} {reason}." for reason, count in rollup.skipped.items() if count]
-    if rollup.returned.lines:
-        how = "taken off" if reading.returns else "left out"
-        negative = counted(rollup.returned.lines, "negative line")
-        lines.append(f"Returns: {negative}, {amount(-rollup.returned.quantity)}, {how}.")
-    if rollup.emptied:
-        emptied = counted(rollup.emptied, "pair")
-        lines.append(f"No demand is left of {emptied} of customer and good, whose returns reach their orders.")
-    lines += _far_out_lines(rollup, reading, amount)
-    lines += [f"{name} differs between lines of {counted(count, 'customer')}: the first in order is kept."
-              for name, count in rollup.differing.items()]  # fmt: skip
-    return [*lines, *_period_lines(rollup)]
-
-
-def _far_out_lines(rollup: Rollup, reading: OrderReading, amount: Callable[[float], str]) -> list[str]:
-    if not rollup.far_out.lines:
-        return []
-    from siting.study.words import counted
-
-    how = "kept" if reading.far_out else "left out"
-    shown = "; ".join(
-        f"{line.customer}{f' {line.good}' if line.good else ''} {amount(line.quantity)} (above {amount(line.limit)})"
-        for line in rollup.largest
-    )
-    what = f"{counted(rollup.far_out.lines, 'line')}, {amount(rollup.far_out.quantity)}, {how}"
-    return [f"Far above the other lines of their good: {what}. The largest: {shown}."]
-
-
-def _period_lines(rollup: Rollup) -> list[str]:
-    """Return how the period became a year, and which of its months is the strongest."""
-    if rollup.first is None:
-        return ["No dates: the lines are taken as one year's."]
-    how = "a year" if math.isclose(rollup.yearly, 1.0) else f"made a year by x {rollup.yearly:.4g}"
-    lines = [f"Period: {rollup.first} to {rollup.last}, {rollup.days:,} days, {how}."]
-    shares = month_shares(rollup)
-    if shares:
-        most, share = max(shares, key=lambda month: month[1])
-        lines.append(
-            f"Season: the strongest month, {most}, moves {share:.0%} of an average month; capacities are yearly, so "
-            "check that a site can move it."
-        )
-    if rollup.yearly > 1:
-        lines.append("Less than a year: what the missing months would move is not in these lines.")
-    return lines
-
-
-def month_shares(rollup: Rollup) -> tuple[tuple[str, float], ...]:
-    """
-    Return how the months of the period differ.
-
-    Parameters
-    ----------
-    rollup
-        What was added up.
-
-    Returns
-    -------
-    shares
-        Each month, and its quantity over that of an average month; empty with one month or none.
-    """
-    mean = sum(quantity for _, quantity in rollup.months) / max(1, len(rollup.months))
-    if len(rollup.months) <= 1 or mean <= 0:
-        return ()
-    return tuple((month, quantity / mean) for month, quantity in rollup.months)
-
-
 def _month_lines(rollup: Rollup, unit: str) -> list[str]:
+    from siting.study.order_words import month_shares, quantity_text
+
     shown = list(zip(rollup.months, month_shares(rollup), strict=False))[-SHOWN_MONTHS:]
-    return [f"  {month}  {_amount(quantity, unit)}  {share:.0%}" for (month, quantity), (_, share) in shown]
-
-
-def _amount(quantity: float, unit: str) -> str:
-    return f"{quantity:{',.0f' if abs(quantity) >= WHOLE_FROM else ',.6g'}} {unit}".rstrip()
+    return [f"  {month}  {quantity_text(quantity, unit)}  {share:.0%}" for (month, quantity), (_, share) in shown]
 
 
 def _day(text: str) -> dt.date:

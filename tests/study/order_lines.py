@@ -14,7 +14,8 @@ if TYPE_CHECKING:
 def order_lines(count: int, seed: int = 1) -> pd.DataFrame:
     """Return lines of a year: some returns, some blanks, a few far out."""
     draw = np.random.default_rng(seed)
-    quantity: Floats = np.round(np.exp(1 + 0.8 * np.clip(draw.standard_normal(count), -4, 4)), 3)
+    logarithm: Floats = np.clip(draw.standard_normal(count), -4, 4)
+    quantity: Floats = np.exp(1 + 0.8 * logarithm).round(3)
     quantity[draw.random(count) < 0.02] *= -1
     quantity[:3] = 1e6
     frame = pd.DataFrame(
