@@ -57,7 +57,7 @@ def test_marks_are_images_before_the_first_cell() -> None:
 def test_a_wide_cell_takes_the_rest_of_its_row() -> None:
     """The second cell spans what follows it, which is not shown."""
     html = report_table(HEADINGS, [Line(cells=("leave 2", "Graz, Wels", ""), wide=True, kind="faint")])
-    assert '<tr class="faint"><td class="verdict">leave 2</td><td class="name" colspan="2">Graz, Wels</td></tr>' in html
+    assert '<tr class="faint"><td class="verdict">leave 2</td><td colspan="2">Graz, Wels</td></tr>' in html
 
 
 @pytest.mark.parametrize(("rows", "framed"), [(MOST_WHOLE - 1, False), (MOST_WHOLE, False), (MOST_WHOLE + 1, True)])

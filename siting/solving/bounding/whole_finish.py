@@ -1,9 +1,10 @@
 """
 The finishing program: sources of single-sourced customers, found by HiGHS with sites and suppliers held.
 
-Only columns that can be part of a plan below `enough` are given to it: by the prices of the relaxation, any solution
-that uses another costs at least the bound plus that column's reduced cost. What is left out therefore costs `enough` or
-more, and min(bound of HiGHS, `enough`) is a bound on everything.
+Only columns that can be part of a plan below `enough` are given to it: by the prices of the relaxation, any solution in
+which a yes-or-no column is 1 costs at least the bound plus that column's reduced cost. What is left out therefore costs
+`enough` or more, and min(bound of HiGHS, `enough`) is a bound on everything. Shares are never left out: a small share
+costs but that share of the reduced cost.
 """
 
 from __future__ import annotations
@@ -75,7 +76,7 @@ def finish(  # noqa: PLR0913 - what a run needs, each named
     EngineError
         If HiGHS gives up for a reason of its own.
     """
-    columns, left_out = _columns(sides, relaxed, enough)
+    columns, left_out = _columns(problem, sides, relaxed, enough)
     highs = _highs(problem, sides, columns, enough, gap)
     halted = False
 
@@ -104,13 +105,14 @@ def finish(  # noqa: PLR0913 - what a run needs, each named
     return Finished(values=values, cost=info.objective_function_value + problem.constant, bound=bound)
 
 
-def _columns(sides: Sides, relaxed: Relaxed, enough: float) -> tuple[np.ndarray, bool]:
+def _columns(problem: WholeProblem, sides: Sides, relaxed: Relaxed, enough: float) -> tuple[np.ndarray, bool]:
     """Return the columns that a solution below `enough` may use, and whether any was left out."""
     usable = sides.upper > 0
     if relaxed.priced is None or not math.isfinite(enough):
         return np.flatnonzero(usable), False
     slack = enough - relaxed.priced.bound + SAFE * abs(enough)
-    kept = usable & ((relaxed.priced.reduced <= slack) | (sides.lower > 0))
+    is_share = np.arange(problem.places.count) >= problem.places.binaries
+    kept = usable & (is_share | (relaxed.priced.reduced <= slack) | (sides.lower > 0))
     return np.flatnonzero(kept), bool(np.any(usable & ~kept))
 
 

@@ -23,9 +23,9 @@ from siting.solving.flows import flows_for, price
 from siting.study.demo import demo_folder
 from siting.study.read import read_study
 from siting.study.settings import SolveSettings
-from siting.study.tables import CustomerRow, SiteRow, Study, SupplierRow
+from siting.study.tables import CustomerRow, SiteRow, SizeRow, Study, SupplierRow
 from tests.benchmarks.two_echelons import two_echelons
-from tests.building import one_echelon
+from tests.building import one_echelon, settings_of
 from tests.whole.full_size import full_size
 from tests.whole.generator import studies
 
@@ -289,3 +289,27 @@ def test_any_prices_give_a_bound(study: Study, seed: int, scale: float) -> None:
     if not expected.impossible:
         optimum = cost_of(network, expected)
         assert bound.bound * problem.money <= optimum + 1e-9 * max(1.0, abs(optimum))
+
+
+def test_a_share_of_a_lane_costs_but_a_share_of_its_reduced_cost() -> None:
+    """A lane that only a sliver of a split customer needs stays in the finishing program beside a single-sourced one."""
+    study = Study(
+        settings=settings_of("sliver", circuity=1.0, outbound_rate=0.0078125),
+        sites=(
+            SiteRow(site="S1", latitude=46.0, longitude=10.0),
+            SiteRow(site="S2", latitude=46.0, longitude=11.5),
+            SiteRow(site="S3", latitude=46.0, longitude=10.0, capacity=13.0),
+        ),
+        sizes=(SizeRow(site="S1", size="only", yearly_charge=1.0, capacity=4.0),),
+        customers=(
+            CustomerRow(customer="C1", latitude=46.0, longitude=10.0, demand=5.0),
+            CustomerRow(customer="C2", latitude=46.0, longitude=10.5, demand=9.0, single_source=True),
+        ),
+    )
+    network = build_network(study)
+    result = whole(network, SolveSettings(gap=0.0), listener=Silent(), stop=Stop())
+    expected = direct(network, SolveSettings(gap=0.0), listener=Silent(), stop=Stop())
+    assert result.decisions is not None
+    assert expected.decisions is not None
+    assert (result.decisions.option_open == expected.decisions.option_open).all()
+    assert result.bound == pytest.approx(expected.bound, rel=1e-9)
