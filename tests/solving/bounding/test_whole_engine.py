@@ -292,7 +292,7 @@ def test_any_prices_give_a_bound(study: Study, seed: int, scale: float) -> None:
 
 
 def test_a_share_of_a_lane_costs_but_a_share_of_its_reduced_cost() -> None:
-    """A lane that only a sliver of a split customer needs stays in the finishing program beside a single-sourced one."""
+    """A lane that a split customer needs but a sliver of stays in the program that settles a single-sourced one."""
     study = Study(
         settings=settings_of("sliver", circuity=1.0, outbound_rate=0.0078125),
         sites=(
