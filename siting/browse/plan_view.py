@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import pandas as pd
@@ -26,7 +27,7 @@ if TYPE_CHECKING:
     from streamlit.elements.lib.column_types import ColumnConfig
 
     from siting.browse.kept import Kept
-    from siting.plan.plan import Plan, SiteLine, SupplierLine
+    from siting.plan.plan import Plan
     from siting.study.tables import Study
 
 MOST_NAMED = 120
@@ -34,6 +35,9 @@ MOST_NAMED = 120
 
 SITE_ORDER = (SiteVerdict.OPEN, SiteVerdict.KEEP, SiteVerdict.CLOSE, SiteVerdict.LEAVE)
 SUPPLIER_ORDER = (SupplierVerdict.SIGN, SupplierVerdict.STAY, SupplierVerdict.DROP, SupplierVerdict.LEAVE)
+LEAVE = str(SiteVerdict.LEAVE)
+"""The same word for sites and suppliers."""
+IN_USE = frozenset({str(SiteVerdict.KEEP), str(SiteVerdict.OPEN), str(SupplierVerdict.STAY), str(SupplierVerdict.SIGN)})
 
 
 def show_answer(kept: Kept, top: DeltaGenerator) -> None:
@@ -87,85 +91,102 @@ def _no_plan(kept: Kept) -> None:
 
 def site_table(plan: Plan, formats: Formats) -> str:
     """Return the sites with their verdicts, what opens first, as an HTML table."""
-    if not plan.sites:
-        return ""
-    headings = (
-        Heading(text="Verdict", verdict=True),
-        Heading(text="Site", name=True),
-        Heading(text=f"Throughput, {formats.unit} a year", number=True),
-        Heading(text="Full", number=True),
-        Heading(text=f"Charge, {formats.currency} a year", number=True),
-        Heading(text=f"One-off, {formats.currency}", number=True),
-    )
-    taken = [line for line in plan.sites if line.verdict is not SiteVerdict.LEAVE or line.note]
-    ordered = sorted(taken, key=lambda line: SITE_ORDER.index(line.verdict))
-    left = [line.site for line in plan.sites if line.verdict is SiteVerdict.LEAVE and not line.note]
-    lines = [_site_line(line, formats) for line in ordered]
-    lines += _left_alone(SiteVerdict.LEAVE, symbol_svg(SITE_SYMBOLS[SiteVerdict.LEAVE]), left)
-    return report_table(headings, lines, caption="Sites")
-
-
-def _left_alone(verdict: str, mark: str, names: Sequence[str]) -> list[Line]:
-    """Return one row for all that the plan leaves alone, none where there is nothing."""
-    if not names:
-        return []
-    more = f" and {len(names) - MOST_NAMED:,} more" if len(names) > MOST_NAMED else ""
-    listed = ", ".join(names[:MOST_NAMED]) + more
-    return [Line(mark=mark, kind="faint", cells=(f"{verdict} {len(names):,}", listed, "", "", "", ""), wide=True)]
-
-
-def _site_line(line: SiteLine, formats: Formats) -> Line:
-    is_open = line.verdict in {SiteVerdict.KEEP, SiteVerdict.OPEN}
-    size = f" ({line.size})" if line.size else ""
-    note = f" \N{EN DASH} {line.note}" if line.note else ""
-    return Line(
-        mark=symbol_svg(SITE_SYMBOLS[line.verdict], fill=line.utilisation),
-        kind="faint" if line.verdict is SiteVerdict.LEAVE else "",
-        cells=(
-            str(line.verdict),
-            f"{line.site}{size}{note}",
-            formats.number(line.throughput) if is_open else "",
-            formats.share(line.utilisation) if line.utilisation is not None else "",
-            formats.number(line.charge) if line.charge else "",
-            formats.number(line.one_off) if line.one_off else "",
-        ),
-    )
+    rows = [
+        _Row(
+            verdict=str(line.verdict),
+            name=f"{line.site} ({line.size})" if line.size else line.site,
+            mark=symbol_svg(SITE_SYMBOLS[line.verdict], fill=line.utilisation),
+            moved=line.throughput,
+            full=line.utilisation,
+            charge=line.charge,
+            one_off=line.one_off,
+            note=line.note,
+        )
+        for line in plan.sites
+    ]
+    return _verdict_table(rows, SITE_ORDER, ("Site", "Throughput"), formats)
 
 
 def supplier_table(plan: Plan, formats: Formats) -> str:
     """Return the suppliers with their verdicts, what is signed first, as an HTML table."""
-    if not plan.suppliers:
+    rows = [
+        _Row(
+            verdict=str(line.verdict),
+            name=line.supplier,
+            mark=symbol_svg(SUPPLIER_SYMBOLS[line.verdict]),
+            moved=line.volume,
+            full=line.utilisation,
+            charge=line.charge,
+            one_off=line.one_off,
+            note=line.note,
+        )
+        for line in plan.suppliers
+    ]
+    return _verdict_table(rows, SUPPLIER_ORDER, ("Supplier", "Volume"), formats)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Row:
+    """A site or a supplier with its verdict."""
+
+    verdict: str
+    name: str
+    mark: str
+    moved: float
+    full: float | None
+    charge: float
+    one_off: float
+    note: str
+
+
+def _verdict_table(
+    rows: Sequence[_Row],
+    order: Sequence[str],
+    words: tuple[str, str],
+    formats: Formats,
+) -> str:
+    """Return rows by verdict, those left alone in one row at the end; empty without any."""
+    if not rows:
         return ""
+    name, moved = words
     headings = (
         Heading(text="Verdict", verdict=True),
-        Heading(text="Supplier", name=True),
-        Heading(text=f"Volume, {formats.unit} a year", number=True),
+        Heading(text=name, name=True),
+        Heading(text=f"{moved}, {formats.unit} a year", number=True),
         Heading(text="Full", number=True),
         Heading(text=f"Charge, {formats.currency} a year", number=True),
         Heading(text=f"One-off, {formats.currency}", number=True),
     )
-    taken = [line for line in plan.suppliers if line.verdict is not SupplierVerdict.LEAVE or line.note]
-    ordered = sorted(taken, key=lambda line: SUPPLIER_ORDER.index(line.verdict))
-    left = [line.supplier for line in plan.suppliers if line.verdict is SupplierVerdict.LEAVE and not line.note]
-    lines = [_supplier_line(line, formats) for line in ordered]
-    lines += _left_alone(SupplierVerdict.LEAVE, symbol_svg(SUPPLIER_SYMBOLS[SupplierVerdict.LEAVE]), left)
-    return report_table(headings, lines, caption="Suppliers")
+    left = [row for row in rows if row.verdict == LEAVE and not row.note]
+    taken = [row for row in rows if row.verdict != LEAVE or row.note]
+    taken.sort(key=lambda row: order.index(row.verdict))
+    lines = [*(_line(row, formats) for row in taken), *_left_alone(left)]
+    return report_table(headings, lines, caption=f"{name}s")
 
 
-def _supplier_line(line: SupplierLine, formats: Formats) -> Line:
-    is_signed = line.verdict in {SupplierVerdict.STAY, SupplierVerdict.SIGN}
-    note = f" \N{EN DASH} {line.note}" if line.note else ""
-    full = line.utilisation if is_signed else None
+def _left_alone(rows: Sequence[_Row]) -> list[Line]:
+    """Return one row for all that the plan leaves alone, none where there is nothing."""
+    if not rows:
+        return []
+    more = f" and {len(rows) - MOST_NAMED:,} more" if len(rows) > MOST_NAMED else ""
+    listed = ", ".join(row.name for row in rows[:MOST_NAMED]) + more
+    cells = (f"{LEAVE} {len(rows):,}", listed, "", "", "", "")
+    return [Line(mark=rows[0].mark, kind="faint", cells=cells, wide=True)]
+
+
+def _line(row: _Row, formats: Formats) -> Line:
+    """Return the row as the table shows it; what moves is blank where nothing can."""
+    in_use = row.verdict in IN_USE
     return Line(
-        mark=symbol_svg(SUPPLIER_SYMBOLS[line.verdict]),
-        kind="faint" if line.verdict is SupplierVerdict.LEAVE else "",
+        mark=row.mark,
+        kind="faint" if row.verdict == LEAVE else "",
         cells=(
-            str(line.verdict),
-            f"{line.supplier}{note}",
-            formats.number(line.volume) if is_signed else "",
-            formats.share(full) if full is not None else "",
-            formats.number(line.charge) if line.charge else "",
-            formats.number(line.one_off) if line.one_off else "",
+            row.verdict,
+            f"{row.name} \N{EN DASH} {row.note}" if row.note else row.name,
+            formats.number(row.moved) if in_use else "",
+            formats.share(row.full) if in_use and row.full is not None else "",
+            formats.number(row.charge) if row.charge else "",
+            formats.number(row.one_off) if row.one_off else "",
         ),
     )
 
